@@ -1,0 +1,133 @@
+"""Answers on standard output, everything else on standard error, files whole or not at all."""
+
+from __future__ import annotations
+
+import json
+import math
+import os
+import shutil
+import sys
+from collections.abc import Iterable, Iterator, Sequence
+from pathlib import Path
+from typing import Any, TextIO, TypeVar
+
+import click
+
+from flicker.errors import InputError
+
+Item = TypeVar("Item")
+STANDARD_OUTPUT = "-"
+WIDTH_OF_A_FILE = 100  # columns, where no terminal states its own
+
+
+def _plain(value: Any) -> Any:
+    """Turn tuples, arrays and array scalars into what JSON knows; a number that is not finite becomes null."""
+    if isinstance(value, dict):
+        return {str(key): _plain(inner) for key, inner in value.items()}
+    if isinstance(value, list | tuple):
+        return [_plain(inner) for inner in value]
+    if isinstance(value, float):
+        return float(value) if math.isfinite(value) else None
+    if hasattr(value, "tolist"):
+        return _plain(value.tolist())
+    return value
+
+
+def json_text(data: Any) -> str:
+    """Give the JSON text of plain data, arrays included, with a line break at its end."""
+    return json.dumps(_plain(data), ensure_ascii=False, allow_nan=False, indent=2) + "\n"
+
+
+def write_json(data: Any, target: str | None) -> None:
+    """
+    Write data as JSON, UTF-8.
+
+    Parameters
+    ----------
+    data : Any
+        Dictionaries, lists, numbers, texts, arrays. NaN and infinity become null.
+    target : str or None
+        File, written whole or not at all; `-` for standard output; None writes nothing.
+
+    Raises
+    ------
+    UnreadableFileError
+        If the file cannot be written.
+    """
+    if target is None:
+        return
+    text = json_text(data)
+    if target == STANDARD_OUTPUT:
+        click.echo(text.encode("utf-8"), nl=False)
+        return
+    from flicker.files import write_text
+
+    write_text(target, text)
+
+
+def print_words(text: str, json_target: str | None = None) -> None:
+    """Print an answer for people on standard output, unless the JSON goes there."""
+    if json_target == STANDARD_OUTPUT:
+        return
+    encoding = getattr(sys.stdout, "encoding", None) or "utf-8"
+    click.echo(text.encode(encoding, errors="replace").decode(encoding), color=True)
+
+
+def complain(error: Exception | str) -> None:
+    """Print the one sentence of an error on standard error, in the form that every command uses."""
+    click.echo(f"flicker: {error}", err=True)
+
+
+def terminal_width(stream: TextIO | None = None) -> int:
+    """Columns that a line may fill: those of the terminal, of `COLUMNS`, or 100 where the stream is a file."""
+    stream = stream or sys.stdout
+    if not _is_terminal(stream) and not os.environ.get("COLUMNS"):
+        return WIDTH_OF_A_FILE
+    return max(40, shutil.get_terminal_size((WIDTH_OF_A_FILE, 24)).columns)
+
+
+def colour_wanted(stream: TextIO | None = None) -> bool:
+    """Tell whether the stream is a terminal that may show colour; `NO_COLOR` and `TERM=dumb` say no."""
+    if os.environ.get("NO_COLOR") or os.environ.get("TERM") == "dumb":
+        return False
+    return _is_terminal(stream or sys.stdout)
+
+
+def _is_terminal(stream: TextIO) -> bool:
+    try:
+        return stream.isatty()
+    except ValueError:  # closed
+        return False
+
+
+def with_progress(items: Sequence[Item], what: str, *, quiet: bool = False) -> Iterator[Item]:
+    """Go through items; on a terminal, standard error counts them in one line that is wiped at the end."""
+    if quiet or len(items) < 2 or not _is_terminal(sys.stderr):
+        yield from items
+        return
+    try:
+        for number, item in enumerate(items, 1):
+            click.echo(f"\r\x1b[K{what} {number} of {len(items)}", nl=False, err=True)
+            yield item
+    finally:
+        click.echo("\r\x1b[K", nl=False, err=True)
+
+
+def spare_the_captures(captures: Iterable[str | Path], outputs: Iterable[str | None]) -> None:
+    """Refuse to write an answer over a capture; `InputError` names it."""
+    read = {Path(capture).resolve() for capture in captures}
+    for output in outputs:
+        if output not in (None, STANDARD_OUTPUT) and Path(str(output)).resolve() in read:
+            raise InputError(f"{output} is one of the captures: name another file for the answer")
+
+
+def make_folder(path: str) -> Path:
+    """Make a folder for answers, with its parents; `InputError` if it cannot be had."""
+    folder = Path(path)
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+    except FileExistsError:
+        raise InputError(f"{path} is a file: name a folder") from None
+    except OSError as error:
+        raise InputError(f"{path}: no folder can be made there: {error.strerror or error}") from error
+    return folder
