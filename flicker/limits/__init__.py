@@ -1,1 +1,24 @@
-"""."""
+"""Measures held against limits: sheets of limits, verdicts, the risk region."""
+
+from flicker.limits.known import Limits, all_rows, chosen_limits, default_limits, known_limits
+from flicker.limits.limit import Band, Curve, Limit
+from flicker.limits.region import RiskRegion, risk_curves, risk_region
+from flicker.limits.verdict import DECISIONS, Conditions, Verdict, judge
+
+__all__ = [
+    "DECISIONS",
+    "Band",
+    "Conditions",
+    "Curve",
+    "Limit",
+    "Limits",
+    "RiskRegion",
+    "Verdict",
+    "all_rows",
+    "chosen_limits",
+    "default_limits",
+    "judge",
+    "known_limits",
+    "risk_curves",
+    "risk_region",
+]
