@@ -8,6 +8,20 @@ from typing import Any, Literal
 
 Severity = Literal["info", "warning", "error"]
 
+# measures relative to the mean level: without a true zero and a true mean they have no meaning
+DEPTH_MEASURES = (
+    "percent_flicker",
+    "flicker_index",
+    "rms_modulation",
+    "svm",
+    "pst_lm",
+    "percent_flicker_below_40hz",
+    "percent_flicker_below_90hz",
+    "percent_flicker_below_200hz",
+    "percent_flicker_below_400hz",
+    "percent_flicker_below_1000hz",
+)
+
 
 @dataclass(frozen=True, slots=True)
 class Measure:

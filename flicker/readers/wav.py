@@ -1,0 +1,174 @@
+"""WAV and whatever else the sound library opens: full scale is 1."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Literal
+
+import numpy as np
+import numpy.typing as npt
+
+from flicker.errors import InputError, UnreadableFileError
+from flicker.readers import ReadOptions, reader
+from flicker.trace import Capture, FloatArray, Trace
+
+if TYPE_CHECKING:
+    import soundfile
+
+_BLOCK = 1 << 18  # frames
+_SUBTYPES = {
+    "PCM_S8": "8-bit",
+    "PCM_U8": "8-bit",
+    "PCM_16": "16-bit",
+    "PCM_24": "24-bit",
+    "PCM_32": "32-bit",
+    "FLOAT": "32-bit floating point",
+    "DOUBLE": "64-bit floating point",
+}
+
+
+def _is_sound(head: bytes) -> bool:
+    form, kind = head[:4], head[8:12]
+    return (
+        (form in (b"RIFF", b"RIFX", b"RF64", b"BW64") and kind == b"WAVE")
+        or (form == b"FORM" and kind in (b"AIFF", b"AIFC"))
+        or form in (b"fLaC", b"caff", b".snd")
+        or head[:16] == b"riff\x2e\x91\xcf\x11\xa5\xd6\x28\xdb\x04\xc1\x00\x00"
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class SoundFacts:
+    """What the head of a sound file states."""
+
+    sample_rate: float  # [Hz]
+    frames: int
+    channels: int
+    sample_format: str
+
+
+@contextmanager
+def _opened(path: Path) -> Iterator[soundfile.SoundFile]:
+    import soundfile
+
+    try:
+        with soundfile.SoundFile(str(path)) as sound:
+            yield sound
+    except soundfile.LibsndfileError as error:
+        reason = str(error.error_string).strip().rstrip(".")
+        raise UnreadableFileError(
+            f"{path}: is no sound file that can be read ({reason}); record or copy it again"
+        ) from error
+
+
+def _facts(sound: Any) -> SoundFacts:
+    return SoundFacts(
+        float(sound.samplerate), int(sound.frames), int(sound.channels), _SUBTYPES.get(sound.subtype, sound.subtype)
+    )
+
+
+def facts(path: str | Path) -> SoundFacts:
+    """Give sample rate, length and channels of a sound file; `UnreadableFileError` if it is none."""
+    with _opened(Path(path)) as sound:
+        return _facts(sound)
+
+
+def _chosen(path: Path, channels: Sequence[int], available: int) -> list[int]:
+    """Give indices from 0 of the wanted channels; all if none is named."""
+    for number in channels:
+        if not 1 <= number <= available:
+            raise InputError(f"{path}: has no channel {number}; --channel takes 1 to {available}")
+    return [number - 1 for number in dict.fromkeys(channels)] or list(range(available))
+
+
+def blocks(
+    path: str | Path,
+    *,
+    channels: Sequence[int] = (),
+    frames: int = _BLOCK,
+    dtype: Literal["float32", "float64"] = "float64",
+) -> Iterator[npt.NDArray[Any]]:
+    """
+    Read a sound file of any length piece by piece.
+
+    Parameters
+    ----------
+    path : str or Path
+        The file.
+    channels : sequence of int
+        Channels from 1; all if empty.
+    frames : int
+        Length of a block; the last one may be shorter.
+    dtype : {"float64", "float32"}
+        Of the blocks; float32 holds up to 24 bits exactly and reads faster.
+
+    Yields
+    ------
+    ndarray
+        The next samples, shape (n, c), full scale 1. Each block is the caller's own.
+
+    Raises
+    ------
+    UnreadableFileError
+        If it is no sound file, or ends before its head says.
+    InputError
+        If it has no such channel.
+    """
+    path = Path(path)
+    with _opened(path) as sound:
+        chosen = _chosen(path, channels, sound.channels)
+        everything = chosen == list(range(sound.channels))
+        missing = sound.frames
+        while missing > 0:
+            block = sound.read(min(frames, missing), dtype=dtype, always_2d=True)
+            if len(block) == 0:
+                raise _cut_short(path, sound.frames, sound.frames - missing)
+            missing -= len(block)
+            yield block if everything else block[:, chosen]
+
+
+def _cut_short(path: Path, promised: int, found: int) -> UnreadableFileError:
+    return UnreadableFileError(
+        f"{path}: its head promises {promised} samples, but it ends after {found}; copy it again"
+    )
+
+
+@reader(
+    "wav",
+    suffixes=(".wav", ".flac", ".aiff", ".caf"),
+    recognises=_is_sound,
+)
+def read_wav(path: Path, options: ReadOptions) -> Capture:
+    """Read the channels of a sound file; full scale is 1."""
+    known = facts(path)
+    if known.frames == 0:
+        raise UnreadableFileError(f"{path}: holds no samples; record it again")
+    chosen = _chosen(path, options.channels, known.channels)
+    light = _all_samples(path, chosen, known)
+    read_as = f"{known.sample_format} samples, full scale is 1, {known.sample_rate:g} Hz from the file's head"
+    traces = tuple(
+        Trace(
+            readings,
+            known.sample_rate,
+            name=f"channel {number + 1}",
+            history=(f"channel {number + 1} of {known.channels}: {known.frames} {read_as}",),
+        )
+        for number, readings in zip(chosen, light, strict=True)
+    )
+    return Capture(traces, kind="wav")
+
+
+def _all_samples(path: Path, chosen: list[int], known: SoundFacts) -> list[FloatArray]:
+    light = [np.empty(known.frames) for _ in chosen]
+    first = 0
+    for block in blocks(path, channels=[number + 1 for number in chosen]):
+        after = first + len(block)
+        for readings, column in zip(light, block.T, strict=True):
+            readings[first:after] = column
+        first = after
+    if not all(np.isfinite(readings.sum()) or np.isfinite(readings).all() for readings in light):
+        raise UnreadableFileError(f"{path}: holds samples that are no numbers; record or export it again")
+    return light
