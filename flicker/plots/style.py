@@ -51,6 +51,15 @@ def dress(axes: Axes) -> None:
     axes.set_axisbelow(True)
 
 
+def plain_logarithms(axes: Axes) -> None:
+    """Write the numbers of logarithmic axes as numbers, not as powers."""
+    from matplotlib.ticker import FuncFormatter, LogLocator
+
+    for axis in (axes.xaxis, axes.yaxis):
+        axis.set_major_locator(LogLocator())
+        axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:,.6g}".replace(",", " ")))
+
+
 def save_figure(figure: Figure, path: Path) -> None:
     """Write a figure, whole or not at all; the suffix tells the format, and the same figure gives the same bytes."""
     from flicker.files import whole_file
