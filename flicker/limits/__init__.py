@@ -3,15 +3,17 @@
 from flicker.limits.known import Limits, all_rows, chosen_limits, default_limits, known_limits
 from flicker.limits.limit import Band, Curve, Limit
 from flicker.limits.region import RiskRegion, risk_curves, risk_region
-from flicker.limits.verdict import DECISIONS, Conditions, Verdict, judge
+from flicker.limits.verdict import DECISIONS, OUTCOMES, Conditions, Outcome, Verdict, judge, overall
 
 __all__ = [
     "DECISIONS",
+    "OUTCOMES",
     "Band",
     "Conditions",
     "Curve",
     "Limit",
     "Limits",
+    "Outcome",
     "RiskRegion",
     "Verdict",
     "all_rows",
@@ -19,6 +21,7 @@ __all__ = [
     "default_limits",
     "judge",
     "known_limits",
+    "overall",
     "risk_curves",
     "risk_region",
 ]

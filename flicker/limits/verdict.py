@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any, Literal
 
@@ -12,7 +12,9 @@ from flicker.limits.limit import MODULATION, Curve, Limit
 from flicker.results import Component, Family, Measure
 
 Outcome = Literal["pass", "fail", "undecided", "not-applicable"]
+OUTCOMES: tuple[Outcome, ...] = ("fail", "undecided", "pass", "not-applicable")  # from the one that weighs most
 DECISIONS = ("guarded", "simple")
+LEVEL_TOLERANCE = 0.5  # points by which a dimming level may miss the one that a limit names
 COVERAGE = 1.959963984540054  # standard errors on either side of a 95 % interval (normal distribution)
 
 
@@ -58,6 +60,12 @@ class Verdict:
             "reason": self.reason,
             "source": f"{self.limit.source}: {self.limit.clause}",
         }
+
+
+def overall(verdicts: Iterable[Verdict]) -> Outcome:
+    """Give the outcome that weighs most: one fail breaks all, nothing undecided passes."""
+    found = {verdict.verdict for verdict in verdicts}
+    return next((outcome for outcome in OUTCOMES if outcome in found), "not-applicable")
 
 
 @dataclass(frozen=True, slots=True)
@@ -141,9 +149,10 @@ def judge(
 
 def _out_of_scope(limit: Limit, conditions: Conditions) -> str:
     """Say why the limit does not apply here; empty where it does or where nothing tells."""
-    if limit.levels and conditions.level is not None and conditions.level not in limit.levels:
+    level = conditions.level
+    if limit.levels and level is not None and all(abs(level - one) > LEVEL_TOLERANCE for one in limit.levels):
         levels = " and ".join(f"{level:g} %" for level in limit.levels)
-        return f"it holds at {levels} light output, and this capture was taken at {conditions.level:g} %"
+        return f"it holds at {levels} light output, and this capture was taken at {level:g} %"
     supply = (conditions.supply or "").lower()
     if limit.mains_only and any(word in supply.replace("/", " ").split() for word in ("dc", "battery")):
         return f"it holds for light sources on the mains, and this one is supplied by {conditions.supply}"
