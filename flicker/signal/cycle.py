@@ -1,0 +1,175 @@
+"""The mean cycle: every sample folded on the period, with what one cycle differs from the next."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from flicker.errors import NotMeasurable
+from flicker.signal.harmonics import Series, longest_gap
+from flicker.signal.intervals import student_quantile
+from flicker.trace import FloatArray
+
+_MOST_BINS = 1024
+_MOST_GROUPS = 24
+_FINE = 1 << 14
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Cycle:
+    """
+    The mean cycle of a periodic light in equal bins of phase, kept apart in groups of neighbouring cycles.
+
+    Rows of `sums` and `counts` are the groups, columns the bins; the spread between groups is what intervals rest on.
+    """
+
+    frequency: float  # [Hz]
+    sums: FloatArray  # shape (groups, m)
+    counts: FloatArray  # shape (groups, m)
+    noise: float  # standard deviation of single samples about the mean cycle
+    first_phase: float  # phase of the first bin's centre at time 0 [cycles]
+
+    @property
+    def groups(self) -> int:
+        """How many groups of cycles."""
+        return int(self.sums.shape[0])
+
+    @property
+    def size(self) -> int:
+        """Number of bins m."""
+        return int(self.sums.shape[1])
+
+    @property
+    def phase(self) -> FloatArray:
+        """Phases of the bins' centres, from 0, shape (m,). [cycles]"""
+        return np.arange(self.size) / self.size
+
+    @property
+    def levels(self) -> FloatArray:
+        """Mean cycle in the unit of the trace, shape (m,)."""
+        return np.asarray(self.sums.sum(axis=0) / self.counts.sum(axis=0))
+
+    @property
+    def mean(self) -> float:
+        """Mean level over whole cycles, in the unit of the trace."""
+        return float(self.levels.mean())
+
+    @property
+    def light(self) -> FloatArray:
+        """Mean cycle over its mean level, shape (m,); `NotMeasurable` where nothing is above dark."""
+        if not self.mean > 0:
+            raise NotMeasurable("the mean level is not above dark: check --dark-level and --inverted")
+        return np.asarray(self.levels / self.mean)
+
+    @property
+    def standard_error(self) -> FloatArray:
+        """Standard error of `levels` for white noise, shape (m,)."""
+        return np.asarray(self.noise / np.sqrt(self.counts.sum(axis=0)))
+
+    def part(self, groups: slice) -> Cycle:
+        """Cycle of some of the groups; every second one, say."""
+        return Cycle(self.frequency, self.sums[groups], self.counts[groups], self.noise, self.first_phase)
+
+    def interval(self, figure: Callable[[FloatArray], float], degrees_of_freedom: float | None = None) -> tuple[float, float]:
+        """
+        Value of a smooth figure of the mean cycle, and its standard error times Student's t for 95 %.
+
+        Parameters
+        ----------
+        figure : callable
+            Maps levels, shape (m,), to a number.
+
+        Returns
+        -------
+        (float, float)
+            The value and half the width of its 95 % interval.
+
+        Notes
+        -----
+        Jackknife over groups of neighbouring cycles (Tukey 1958): each group is left out once. A group's bin that no
+        sample fell into keeps the mean of the others.
+        """
+        total, number = self.sums.sum(axis=0), self.counts.sum(axis=0)
+        value = figure(total / number)
+        if self.groups < 2:
+            return value, float("nan")
+        left = [figure((total - s) / np.where(number > n, number - n, np.inf)) for s, n in self._leave_out(total, number)]
+        spread = (self.groups - 1) / self.groups * float(np.sum((np.array(left) - np.mean(left)) ** 2))
+        return value, student_quantile(degrees_of_freedom or self.groups - 1) * spread**0.5
+
+    def _leave_out(self, total: FloatArray, number: FloatArray) -> list[tuple[FloatArray, FloatArray]]:
+        pairs = []
+        for sums, counts in zip(self.sums, self.counts, strict=True):
+            alone = counts >= number  # only this group saw the bin: leave it in
+            pairs.append((np.where(alone, 0.0, sums), np.where(alone, 0.0, counts)))
+        return pairs
+
+
+def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cycle:
+    """
+    Fold a signal on its period.
+
+    Parameters
+    ----------
+    series : Series
+        Readings above dark.
+    frequency : float
+        Of the cycle. [Hz]
+    most_bins : int
+        Bins of phase at the most; fewer where samples are few, or where a sample rate that is nearly a multiple
+        of the frequency leaves phases that no sample has seen.
+
+    Returns
+    -------
+    Cycle
+        No bin is empty in either half of the groups.
+
+    Raises
+    ------
+    NotMeasurable
+        If less than one and a half cycles are there.
+    """
+    cycles = series.span * frequency
+    if cycles < 1.5:
+        raise NotMeasurable(f"the capture holds {cycles:.2g} cycles: record at least two, better ten")
+    groups = max(2, min(_MOST_GROUPS, int(cycles)))
+    fine = np.zeros(_FINE)
+    for _, times in series.chunks():
+        fine += np.bincount(_index(times, frequency, 0.0, _FINE), minlength=_FINE)
+    gap = longest_gap(fine)
+    bins = int(min(most_bins, max(2, series.values.size // 8), 1.0 / max(gap, 1.0 / most_bins)))
+    first = float((series.segments[0].start - series.centre) * frequency) - 0.5 / bins
+    while True:
+        sums, counts, square = _group_sums(series, frequency, first, groups, bins)
+        if bins <= 2 or (counts[::2].sum(axis=0).min() > 0 and counts[1::2].sum(axis=0).min() > 0):
+            break
+        bins = max(2, min(bins - 1, int(bins * 0.93)))
+        first = float((series.segments[0].start - series.centre) * frequency) - 0.5 / bins
+    levels = sums.sum(axis=0) / np.maximum(counts.sum(axis=0), 1)
+    left = square - float(np.sum(levels**2 * counts.sum(axis=0)))
+    noise = (max(left, 0.0) / max(series.values.size - bins, 1)) ** 0.5
+    offset = (0.5 / bins + first + series.centre * -frequency) % 1.0
+    return Cycle(frequency, sums, counts, noise, offset)
+
+
+def _index(times: FloatArray, frequency: float, first: float, bins: int) -> np.ndarray:
+    phase = times * frequency - first
+    return np.minimum(((phase - np.floor(phase)) * bins).astype(np.intp), bins - 1)
+
+
+def _group_sums(
+    series: Series, frequency: float, first: float, groups: int, bins: int
+) -> tuple[FloatArray, FloatArray, float]:
+    sums, counts, square = np.zeros(groups * bins), np.zeros(groups * bins), 0.0
+    begin = series.segments[0].start - series.centre
+    per_second = groups / series.span
+    for part, times in series.chunks():
+        values = series.values[part]
+        group = np.minimum(((times - begin) * per_second).astype(np.intp), groups - 1)
+        cell = group * bins + _index(times, frequency, first, bins)
+        sums += np.bincount(cell, values, minlength=groups * bins)
+        counts += np.bincount(cell, minlength=groups * bins)
+        square += float(np.dot(values, values))
+    return sums.reshape(groups, bins), counts.reshape(groups, bins), square

@@ -1,0 +1,157 @@
+"""Several periodic lights in one signal, told apart."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from fractions import Fraction
+
+import numpy as np
+
+from flicker.signal.harmonics import HarmonicFit, Series, fit_harmonics
+from flicker.signal.spectrum import Spectrum, spectrum
+from flicker.trace import FloatArray
+
+_MOST_FAMILIES = 6
+_MOST_DIVISOR = 8
+_FEWEST_CYCLES = 1.5
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Search:
+    """What the search found: families of lines, strongest first, and the quietest line that it could have seen."""
+
+    families: tuple[HarmonicFit, ...]
+    floor: float  # amplitude that a line must exceed to be found, in the unit of the signal
+    spectrum: Spectrum  # of the whole signal
+
+
+def find_families(series: Series) -> Search:
+    """
+    Tell apart the periodic lights in a signal.
+
+    Parameters
+    ----------
+    series : Series
+        The signal, mean and all.
+
+    Returns
+    -------
+    Search
+        No families for a signal that is steady to the noise.
+
+    Notes
+    -----
+    The strongest line of the spectrum is fitted with all its harmonics and taken off; so on with what is left, until no
+    line rises above the noise. Two families whose fundamentals stand in a ratio of small whole numbers, to within
+    their errors, are one when at least half of the places that the common fundamental offers below the upper one
+    are filled: light with every second pulse weaker is one light, a ripple at 100 Hz beside a PWM at 20 kHz is two.
+    At the end each family is fitted once more beside the others. The rule of one half is this program's own.
+    """
+    whole = _longest_run(series)
+    first = spectrum(whole, series.sample_rate)
+    lowest = _FEWEST_CYCLES * first.resolution
+    families: list[HarmonicFit] = []
+    left, now = series, first
+    floor = float(np.sqrt(np.median(first.noise_power()) * np.log(first.amplitudes.size * 1e3)))
+    while len(families) < _MOST_FAMILIES:
+        line = _next_line(now, lowest, series.sample_rate / 2, families)
+        if line is None:
+            break
+        fit = _settle_octave(left, fit_harmonics(left, line[0]), now)
+        families.append(fit)
+        families = _merge_related(series, families)
+        left = _without(series, families)
+        now = spectrum(_longest_run(left), series.sample_rate)
+        floor = float(np.sqrt(np.median(now.noise_power()) * np.log(now.amplitudes.size * 1e3)))
+    if len(families) > 1:
+        families = [
+            fit_harmonics(_without(series, families[:place] + families[place + 1 :]), fit.frequency)
+            for place, fit in enumerate(families)
+        ]
+    families.sort(key=lambda fit: -_strength(fit))
+    return Search(tuple(families), floor, first)
+
+
+def _longest_run(series: Series) -> FloatArray:
+    starts = [segment.first for segment in series.segments] + [series.values.size]
+    longest = int(np.argmax(np.diff(starts)))
+    return series.values[starts[longest] : starts[longest + 1]]
+
+
+def _strength(fit: HarmonicFit) -> float:
+    return float(np.sqrt(np.square(np.abs(fit.amplitudes)).sum()))
+
+
+def _without(series: Series, families: list[HarmonicFit]) -> Series:
+    """Take the families off, but for their means."""
+    values = series.values.copy()
+    for part, times in series.chunks():
+        for fit in families:
+            values[part] -= fit.at(times + series.centre) - fit.mean
+    return replace(series, values=values)
+
+
+def _next_line(
+    now: Spectrum, lowest: float, highest: float, families: list[HarmonicFit]
+) -> tuple[float, float] | None:
+    """Find the strongest line that is neither left over from a family's harmonics nor lost among their aliases."""
+    amplitudes, noise = now.amplitudes.copy(), now.noise_power()
+    for fit in families:
+        reach = 3.0 * now.resolution + 3.0 * fit.frequency_error
+        for number in range(1, min(int(highest / fit.frequency), 200) + 1):
+            middle = number * fit.frequency
+            a, b = int((middle - reach) / now.spacing), int((middle + reach) / now.spacing) + 2
+            amplitudes[max(a, 0) : b] = 0.0
+    line = replace(now, amplitudes=amplitudes).strongest_line(lowest, highest, noise)
+    unmodelled = max((_tail(fit) for fit in families), default=0.0)
+    return line if line is not None and line[1] > unmodelled else None
+
+
+def _tail(fit: HarmonicFit) -> float:
+    """Amplitude that the harmonics beyond the fitted ones may have: three times the last quarter's root mean square."""
+    if fit.amplitudes.size < 16:
+        return 0.0
+    last = fit.amplitudes[-fit.amplitudes.size // 4 :]
+    return 3.0 * float(np.sqrt(np.mean(np.abs(last) ** 2)))
+
+
+def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicFit:
+    """Where the strongest line is a harmonic, go down to the fundamental that fills the places between."""
+    for divisor in (2, 3, 4, 5):
+        fundamental = fit.frequency / divisor
+        if fundamental < _FEWEST_CYCLES * now.resolution:
+            break
+        places = [n for n in range(1, 2 * divisor) if n % divisor]
+        places = [n for n in places if n * fundamental < series.sample_rate / 2]
+        lower = fit_harmonics(series, fundamental, harmonics=2 * divisor)
+        if abs(lower.frequency - fundamental) > 4 * (lower.frequency_error + fit.frequency_error / divisor):
+            continue
+        if lower.amplitudes.size < 2 * divisor:
+            continue
+        heights = np.abs(lower.amplitudes[np.array(places) - 1])
+        least = max(4.0 * lower.amplitude_error, _tail(fit))
+        if np.count_nonzero(heights > least) * 2 >= len(places):
+            whole = fit_harmonics(series, lower.frequency)
+            if whole.noise < fit.noise:
+                return whole
+    return fit
+
+
+def _merge_related(series: Series, families: list[HarmonicFit]) -> list[HarmonicFit]:
+    """Join the newest family with an earlier one where both are harmonics of one light."""
+    *earlier, newest = families
+    for place, other in enumerate(earlier):
+        ratio = Fraction(newest.frequency / other.frequency).limit_denominator(_MOST_DIVISOR)
+        if ratio.numerator == 0 or ratio.numerator > _MOST_DIVISOR:
+            continue
+        fundamental = other.frequency / ratio.denominator
+        error = np.hypot(newest.frequency_error / ratio.numerator, other.frequency_error / ratio.denominator)
+        if abs(newest.frequency / ratio.numerator - fundamental) > 4 * error:
+            continue
+        rest = earlier[:place] + earlier[place + 1 :]
+        joined = fit_harmonics(_without(series, rest), fundamental)
+        upper = max(ratio.numerator, ratio.denominator)
+        heights = np.abs(joined.amplitudes[: upper - 1])
+        if np.count_nonzero(heights > 4 * joined.amplitude_error) * 2 >= upper - 1:
+            return [*rest, joined]
+    return families

@@ -1,0 +1,287 @@
+"""Frequency and harmonics of a periodic signal: least squares on every sample at its true time."""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.fft
+
+from flicker.light import ComplexArray
+from flicker.trace import FloatArray, Segment
+
+_BINS = 1 << 15  # of phase; a harmonic k then loses 1 - sinc(k / bins), under 1e-3 at k = 2048
+_MOST_HARMONICS = 2048
+_CHUNK = 1 << 18
+_BLOCKS = 64  # of time, for the spread of the residuals
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Series:
+    """Readings at their true times: an array, its sample rate and its segments; `centre` is the mid time [s]."""
+
+    values: FloatArray  # shape (n,)
+    sample_rate: float  # [Hz]
+    segments: Sequence[Segment]
+    centre: float  # [s]
+
+    @classmethod
+    def of(cls, values: FloatArray, sample_rate: float, segments: Sequence[Segment] = (Segment(0, 0.0),)) -> Series:
+        """Make a series; its centre is the mean time of all samples."""
+        weighted = 0.0
+        for first, last, start in _runs(values.size, segments):
+            weighted += (last - first) * (start + 0.5 * (last - first - 1) / sample_rate)
+        return cls(values, sample_rate, segments, weighted / values.size)
+
+    def chunks(self) -> Iterator[tuple[slice, FloatArray]]:
+        """Pieces of at most 2**18 samples: where they lie, and their times from the centre [s]."""
+        for first, last, start in _runs(self.values.size, self.segments):
+            for begin in range(first, last, _CHUNK):
+                end = min(begin + _CHUNK, last)
+                yield slice(begin, end), np.arange(begin - first, end - first) / self.sample_rate + (start - self.centre)
+
+    @property
+    def span(self) -> float:
+        """From the first to the last sample. [s]"""
+        *_, (first, last, start) = _runs(self.values.size, self.segments)
+        return start + (last - first) / self.sample_rate - self.segments[0].start
+
+
+def _runs(samples: int, segments: Sequence[Segment]) -> Iterator[tuple[int, int, float]]:
+    for here, after in zip(segments, (*segments[1:], None), strict=True):
+        yield here.first, after.first if after else samples, here.start
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Binned:
+    """Sums over the samples that fall into each bin of phase, all of shape (bins,)."""
+
+    count: FloatArray
+    value: FloatArray
+    time: FloatArray
+    time_squared: FloatArray
+    value_time: FloatArray
+
+
+def _bin_by_phase(series: Series, frequency: float, offset: float, bins: int) -> _Binned:
+    sums = np.zeros((5, bins))
+    for part, times in series.chunks():
+        values = series.values[part] - offset
+        phase = times * frequency
+        phase -= np.floor(phase)
+        index = np.minimum((phase * bins).astype(np.intp), bins - 1)
+        for row, weights in zip(sums, (None, values, times, times * times, values * times), strict=True):
+            row += np.bincount(index, weights, minlength=bins)
+    return _Binned(*sums)
+
+
+def longest_gap(count: FloatArray) -> float:
+    """Longest run of empty bins around the circle, as a share of the cycle."""
+    filled = np.flatnonzero(count)
+    if filled.size == 0:
+        return 1.0
+    gaps = np.diff(np.concatenate([filled, [filled[0] + count.size]])) - 1
+    return float(gaps.max()) / count.size
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class HarmonicFit:
+    """
+    A periodic signal: frequency and complex amplitudes of its harmonics, as least squares finds them.
+
+    The signal is `mean + sum Re(amplitudes[k - 1] * exp(2j pi k frequency (t - centre)))`.
+    """
+
+    frequency: float  # [Hz]
+    frequency_error: float  # standard error [Hz]
+    mean: float
+    amplitudes: ComplexArray  # peak, shape (k,)
+    noise: float  # standard deviation of what the harmonics leave
+    samples: int
+    centre: float  # [s]
+    longest_gap: float  # longest stretch of phase that no sample has seen [cycles]
+
+    @property
+    def amplitude_error(self) -> float:
+        """Standard error of the modulus of one amplitude, sqrt(2 / n) times the noise (Kay 1993, example 3.14)."""
+        return self.noise * (2.0 / self.samples) ** 0.5
+
+    def at(self, times: FloatArray) -> FloatArray:
+        """Evaluate the fit at times, shape (n,), through a table of its cycle."""
+        table = self.table(_BINS)
+        phase = (times - self.centre) * self.frequency
+        return table[np.minimum(((phase - np.floor(phase)) * _BINS).astype(np.intp), _BINS - 1)]
+
+    def table(self, size: int) -> FloatArray:
+        """One cycle of the fit at phases (b + 0.5) / size from the centre, shape (size,)."""
+        return _evaluate(np.concatenate([[self.mean + 0j], 0.5 * self.amplitudes]), size)
+
+
+def _evaluate(coefficients: ComplexArray, bins: int) -> FloatArray:
+    """Signal at bin centres from its coefficients of harmonics 0..k, shape (bins,)."""
+    number = np.arange(coefficients.size)
+    return np.asarray(scipy.fft.irfft(coefficients * np.exp(1j * np.pi * number / bins) * bins, bins))
+
+
+def _project(sums: FloatArray, harmonics: int) -> ComplexArray:
+    """Sums of bins times exp(-2j pi k phase) for k = 0..harmonics, shape (harmonics + 1,)."""
+    number = np.arange(harmonics + 1)
+    return np.asarray(scipy.fft.rfft(sums)[: harmonics + 1] * np.exp(-1j * np.pi * number / sums.size))
+
+
+def _solve(count: FloatArray, sums: FloatArray, harmonics: int, tolerance: float = 1e-10) -> ComplexArray:
+    """
+    Least-squares coefficients 0..harmonics of binned data, by conjugate gradients on the normal equations.
+
+    The normal matrix is Toeplitz (it holds the transform of the counts), so that a product costs two transforms; it is
+    close to a multiple of the identity where the phases are spread evenly, and few steps are enough.
+    """
+    bins, total = count.size, count.sum()
+
+    def product(coefficients: ComplexArray) -> ComplexArray:
+        return _project(count * _evaluate(coefficients, bins), harmonics) / total
+
+    def dot(a: ComplexArray, b: ComplexArray) -> float:
+        return float(2.0 * np.vdot(a, b).real - (a[0].conjugate() * b[0]).real)
+
+    right = _project(sums, harmonics) / total
+    solution = right.copy()
+    residual = right - product(solution)
+    direction = residual
+    power, goal = dot(residual, residual), tolerance**2 * max(dot(right, right), 1e-300)
+    for _ in range(60):
+        if power <= goal:
+            break
+        image = product(direction)
+        step = power / dot(direction, image)
+        solution = solution + step * direction
+        residual = residual - step * image
+        power, before = dot(residual, residual), power
+        direction = residual + (power / before) * direction
+    return solution
+
+
+def fit_harmonics(
+    series: Series, frequency: float, *, harmonics: int | None = None, most: int = _MOST_HARMONICS
+) -> HarmonicFit:
+    """
+    Refine the frequency of a periodic signal, using every harmonic that rises above the noise and every sample.
+
+    Parameters
+    ----------
+    series : Series
+        The signal.
+    frequency : float
+        Starting value, within a third of 1 / span of the truth. [Hz]
+    harmonics : int, optional
+        Fit just so many; otherwise their number doubles as long as the added ones carry significant energy.
+    most : int
+        Never more than so many, nor than reach the Nyquist frequency or 128.
+
+    Returns
+    -------
+    HarmonicFit
+
+    Notes
+    -----
+    Gauss-Newton on the frequency with the amplitudes solved for at each step (variable projection, Golub and Pereyra,
+    SIAM J. Numer. Anal. 10 (1973) 413): the residual is regressed on the model's own time derivative times centred time.
+    For white noise this is the maximum-likelihood estimate, whose variance meets the bound of Rife and Boorstyn
+    (IEEE Trans. Inf. Theory 20 (1974) 591). Harmonics above the Nyquist frequency count too: sampled light holds them as
+    aliases, at places that the phase of each sample tells.
+    """
+    offset = float(series.values.mean())
+    total_power = float(np.square(series.values - offset).sum()) if series.values.size < _CHUNK else _power(series, offset)
+    most = min(most, max(128, int(series.sample_rate / (2 * frequency))))
+    best = latest = _fit(series, frequency, harmonics or 1, offset, total_power)
+    wanted, idle = 3, 0
+    while harmonics is None and idle < 2:
+        latest = _fit(series, latest.frequency, min(wanted, most), offset, total_power)
+        if latest.amplitudes.size <= best.amplitudes.size:
+            break
+        if _worth_it(best, latest):
+            best, idle = latest, 0
+        else:
+            idle += 1
+        if latest.amplitudes.size < wanted:
+            break
+        wanted *= 2
+    return _with_robust_error(series, best)
+
+
+def _fit(series: Series, frequency: float, harmonics: int, offset: float, total_power: float) -> HarmonicFit:
+    """Gauss-Newton with a fixed number of harmonics, fewer where the phases that were seen cannot tell so many."""
+    bins = _BINS if harmonics > 32 else 1 << 13
+    for _ in range(6 if harmonics < 3 else 4):
+        binned = _bin_by_phase(series, frequency, offset, bins)
+        gap = longest_gap(binned.count)
+        allowed = max(1, min(harmonics, int(0.45 / gap) if gap > 0 else harmonics, series.values.size // 4))
+        coefficients = _solve(binned.count, binned.value, allowed)
+        step, error, left = _newton_step(binned, coefficients, total_power)
+        noise = (max(left, 0.0) / max(series.values.size - 2 * allowed - 2, 1)) ** 0.5
+        frequency += float(np.clip(step, -0.5 / series.span, 0.5 / series.span) / max(1.0, allowed / 32))
+        if abs(step) < 0.02 * error * noise or abs(step) * series.span < 1e-9:
+            break
+    return HarmonicFit(
+        frequency,
+        error * noise,
+        offset + float(coefficients[0].real),
+        2.0 * coefficients[1:],
+        noise,
+        series.values.size,
+        series.centre,
+        gap,
+    )
+
+
+def _with_robust_error(series: Series, fit: HarmonicFit) -> HarmonicFit:
+    """
+    Let the standard error of the frequency be no smaller than what the residuals show, block of time by block.
+
+    White residuals give the error of the fit; steps between samples, wander and other lights leave residuals that hang
+    together, and the spread of the blocks' scores says how much that costs (cluster-robust variance, White 1984).
+    """
+    blocks = int(min(_BLOCKS, series.span * fit.frequency))
+    if blocks < 8:
+        return fit
+    table = fit.table(_BINS)
+    number = np.arange(fit.amplitudes.size + 1)
+    slope = _evaluate(np.concatenate([[0j], 0.5 * fit.amplitudes]) * 2j * np.pi * number, _BINS)
+    scores, information = np.zeros(blocks), 0.0
+    first = series.segments[0].start - series.centre
+    for part, times in series.chunks():
+        phase = times * fit.frequency
+        index = np.minimum(((phase - np.floor(phase)) * _BINS).astype(np.intp), _BINS - 1)
+        along = slope[index] * times
+        information += float(np.dot(along, along))
+        block = np.minimum(((times - first) * (blocks / series.span)).astype(np.intp), blocks - 1)
+        scores += np.bincount(block, along * (series.values[part] - table[index]), minlength=blocks)
+    robust = float(np.sqrt(np.square(scores).sum() * blocks / (blocks - 1))) / max(information, 1e-300)
+    return dataclasses.replace(fit, frequency_error=max(fit.frequency_error, robust))
+
+
+def _worth_it(before: HarmonicFit, after: HarmonicFit) -> bool:
+    """Whether the added harmonics carry more energy than noise would give them (mean plus five deviations)."""
+    added = after.amplitudes.size - before.amplitudes.size
+    energy = float(np.square(np.abs(after.amplitudes[-added:])).sum()) if added > 0 else 0.0
+    return energy > after.amplitude_error**2 * (2 * added + 10 * (2 * added) ** 0.5)
+
+
+def _power(series: Series, offset: float) -> float:
+    return float(sum(np.square(series.values[part] - offset).sum() for part, _ in series.chunks()))
+
+
+def _newton_step(binned: _Binned, coefficients: ComplexArray, total_power: float) -> tuple[float, float, float]:
+    """Step of the frequency [Hz], its standard error for unit noise [Hz], and the residual sum of squares."""
+    bins = binned.count.size
+    harmonics = coefficients.size - 1
+    model = _evaluate(coefficients, bins)
+    slope = _evaluate(coefficients * 2j * np.pi * np.arange(harmonics + 1), bins)
+    gradient = float(np.sum(slope * (binned.value_time - model * binned.time)))
+    explained = _solve(binned.count, slope * binned.time, harmonics, 1e-4)
+    along = float(np.sum(slope * binned.time * _evaluate(explained, bins)))
+    information = max(float(np.sum(slope**2 * binned.time_squared)) - along, 1e-300)
+    left = total_power - 2 * float(np.sum(model * binned.value)) + float(np.sum(model**2 * binned.count))
+    return gradient / information, information**-0.5, left
