@@ -12,8 +12,8 @@ from flicker.results import Measure
 
 OUTCOME_WORDS = {"fail": "FAIL", "undecided": "UNDECIDED", "pass": "pass", "not-applicable": "not applicable"}
 _LEGEND = (
-    "f is the frequency in Hz. A limit on modulation holds for the depth of every family at its fundamental and for every "
-    "line at its own frequency; one on percent flicker over frequency holds for every family."
+    "f is the frequency in Hz. A limit on modulation holds for the depth of every family at its fundamental and for "
+    "every line at its own frequency; one on percent flicker over frequency holds for every family."
 )
 _RULES = {
     "guarded": "guarded: pass only where the whole 95 % interval keeps the limit, fail only where all of it breaks it",
@@ -122,22 +122,51 @@ def _margin(verdict: Verdict) -> str:
 # ---- the limits themselves ---------------------------------------------------------------------------------------
 
 
-def limits_words(limits: Sequence[Limit], *, width: int = 100) -> str:
-    """Say what each limit allows, on what authority, and how far its source was seen; grouped by sheet."""
+def limits_words(limits: Sequence[Limit], *, detailed: bool = False, width: int = 100) -> str:
+    """
+    Say what each limit allows, on what authority, and how far its source was seen.
+
+    Parameters
+    ----------
+    limits : sequence of Limit
+        In the order of their sheets.
+    detailed : bool
+        Whether to add what each holds for, and its notes.
+    width : int
+        Columns that a line may fill.
+
+    Returns
+    -------
+    str
+        The limits, grouped by sheet.
+    """
     lines: list[str] = []
     sheet = None
+    column = max((len(limit.id) for limit in limits), default=0) + 4
     for limit in limits:
         if limit.title != sheet:
             sheet = limit.title
-            lines += ["", *_wrapped(f"{limit.title} (source: {limit.source})", width, "")]
-        begins = f"since {limit.begins.isoformat()}" if limit.begins else "without a date"
-        until = f" until {limit.until.isoformat()}" if limit.until else ""
-        lines += [f"  {limit.id}: {limit.name}", *_wrapped(allowance_words(limit), width, "      ")]
-        lines += _wrapped(f"{limit.clause}; {begins}{until}; basis: {limit.basis}", width, "      ")
-        lines += _wrapped(f"holds for {limit.applies}", width, "      ")
+            lines += ["", *_wrapped(limit.title, width, "")]
+            lines += _wrapped(f"Source: {limit.source}; seen: {limit.basis}", width, "  ")
+        parts = [allowance_words(limit), f"{limit.clause}; {_span(limit)}"]
+        if detailed:
+            parts += [f"holds for {limit.applies}", *_notes(limit)]
+        first, *rest = [line for part in parts for line in _wrapped(part, width, " " * column)]
+        lines += [f"  {limit.id}".ljust(column) + first.lstrip(), *rest]
     if any(isinstance(limit.bound, Curve) for limit in limits):
         lines += ["", *_wrapped(_LEGEND, width, "")]
+    if not detailed:
+        lines += ["Name a limit to see what it holds for: flicker limits ID"]
     return "\n".join(lines).strip("\n")
+
+
+def _span(limit: Limit) -> str:
+    begins = f"since {limit.begins.isoformat()}" if limit.begins else "without a date"
+    return f"{begins} until {limit.until.isoformat()}" if limit.until else begins
+
+
+def _notes(limit: Limit) -> list[str]:
+    return [band.note for band in limit.bound.bands if band.note] if isinstance(limit.bound, Curve) else []
 
 
 def allowance_words(limit: Limit) -> str:
@@ -151,8 +180,7 @@ def allowance_words(limit: Limit) -> str:
         start = f" from {band.start:g} Hz" if band.start > 0 else ""
         end = "" if math.isinf(band.end) else f" to {band.end:g} Hz" if start else f" below {band.end:g} Hz"
         spans.append(amount + start + end)
-    notes = "".join(f"; {band.note}" for band in limit.bound.bands if band.note)
-    return f"{name} ≤ {', '.join(spans)}{notes}"
+    return f"{name} ≤ {', '.join(spans)}"
 
 
 def _wrapped(text: str, width: int, indent: str) -> list[str]:
