@@ -15,8 +15,8 @@ from flicker.cli.output import print_words, terminal_width, write_json
 def command(names: tuple[str, ...], on_date: str | None, limits_file: str | None, json_target: str | None) -> None:
     """List the limits that `flicker check` knows, or only those named.
 
-    Each comes with what it allows, whom it concerns, since when, its clause, and how far its source was seen. Without
-    a date the list holds what is in force and, marked with its last day, what has been replaced.
+    Each comes with what it allows, since when, its clause, its source and how far that source was seen; named, also with what
+    it holds for. Without a date the list holds what is in force and, with its last day, what has been replaced.
 
     Example:
 
@@ -27,4 +27,4 @@ def command(names: tuple[str, ...], on_date: str | None, limits_file: str | None
 
     rows = chosen_limits(names, limits_file, on_date) if names or on_date else all_rows(limits_file)
     write_json({"limits": [row.to_dict() for row in rows]}, json_target)
-    print_words(limits_words(rows, width=terminal_width()), json_target)
+    print_words(limits_words(rows, detailed=bool(names), width=terminal_width()), json_target)

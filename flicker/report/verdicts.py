@@ -147,7 +147,7 @@ def limits_words(limits: Sequence[Limit], *, detailed: bool = False, width: int 
         if limit.title != sheet:
             sheet = limit.title
             lines += ["", *_wrapped(limit.title, width, "")]
-            lines += _wrapped(f"Source: {limit.source}; seen: {limit.basis}", width, "  ")
+            lines += _wrapped(f"Source: {limit.source}; basis: {limit.basis}", width, "  ")
         parts = [allowance_words(limit), f"{limit.clause}; {_span(limit)}"]
         if detailed:
             parts += [f"holds for {limit.applies}", *_notes(limit)]
