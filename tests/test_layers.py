@@ -22,6 +22,7 @@ FLOORS = (
     ("signal",),
     ("waveforms",),
     ("light",),
+    ("footage",),
     ("trace",),
     ("results",),
     ("registry", "quantities", "files"),
