@@ -70,8 +70,10 @@ def measured(measure: Measure) -> tuple[str, str]:
     factor, unit = _scale(value or high, measure.unit)
     value, low, high = value / factor, low / factor, high / factor
     half = (high - low) / 2
-    decimals = _decimals(half) if half > 0 else _decimals(abs(value), _DIGITS_WITHOUT_INTERVAL)
+    if half <= 0:
+        return quantity(measure.value, measure.unit), "± 0"
+    decimals = _decimals(half)
     number = _join(f"{value:.{decimals}f}", unit)
-    if half > 0 and abs((high - value) - (value - low)) > 0.2 * half:
+    if abs((high - value) - (value - low)) > 0.2 * half:
         return number, f"{low:.{decimals}f} to {high:.{decimals}f}"
     return number, f"± {half:.{decimals}f}"
