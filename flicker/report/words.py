@@ -85,7 +85,7 @@ def _channel_block(
     capture: CaptureReport, channel: ChannelReport, width: int, paint: Paint, verbose: bool
 ) -> Iterable[str]:
     yield paint.bold(channel_title(capture, channel))
-    yield from _wrap(_recording(channel), width, "")
+    yield from wrap(_recording(channel), width, "")
     yield ""
     answers = {
         "What": what(channel),
@@ -95,7 +95,7 @@ def _channel_block(
     }
     region = channel.risk_region.region if channel.risk_region else None
     for label, text in answers.items():
-        first, *rest = _wrap(text, width - 9, "")
+        first, *rest = wrap(text, width - 9, "")
         weight = ("1", _COLOURS[region]) if label == "Risk" and region else ("1",) if label != "Next" else ("0",)
         yield f"{_INDENT}{paint.faint(f'{label:<5}')}  {paint(first, *weight)}"
         yield from (f"{_INDENT}{'':<5}  {paint(line, *weight)}" for line in rest)
@@ -140,7 +140,7 @@ def _measure_table(channel: ChannelReport, width: int, paint: Paint, verbose: bo
     for name, value, interval, method in rows:
         yield f"{_INDENT}{name:<{first}}  {value:>{second}}  {interval}".rstrip()
         if verbose and method:
-            yield from (paint.faint(line) for line in _wrap(method, width, _INDENT * 3))
+            yield from (paint.faint(line) for line in wrap(method, width, _INDENT * 3))
 
 
 def _missing(channel: ChannelReport, width: int) -> Iterable[str]:
@@ -152,7 +152,7 @@ def _missing(channel: ChannelReport, width: int) -> Iterable[str]:
         yield ""
         yield f"{_INDENT}not measured"
     for reason, names in reasons.items():
-        yield from _wrap(f"{', '.join(names)}: {reason}", width, _INDENT * 2, hang=2)
+        yield from wrap(f"{', '.join(names)}: {reason}", width, _INDENT * 2, hang=2)
 
 
 def _notes(notes: Iterable[Note], width: int) -> Iterable[str]:
@@ -160,7 +160,7 @@ def _notes(notes: Iterable[Note], width: int) -> Iterable[str]:
     if notes:
         yield ""
     for note in notes:
-        yield from _wrap(f"{_NOTE_MARKS[note.severity]} {note.code}: {note.message}", width, _INDENT, hang=3)
+        yield from wrap(f"{_NOTE_MARKS[note.severity]} {note.code}: {note.message}", width, _INDENT, hang=3)
 
 
 def _details(channel: ChannelReport, width: int, paint: Paint) -> Iterable[str]:
@@ -175,7 +175,7 @@ def _details(channel: ChannelReport, width: int, paint: Paint) -> Iterable[str]:
         yield ""
         yield _INDENT + paint.faint("what was done to the readings")
     for step in channel.trace.history:
-        yield from _wrap(step, width, _INDENT * 2)
+        yield from wrap(step, width, _INDENT * 2)
 
 
 def _overview(report: Report, width: int, paint: Paint) -> Iterable[str]:
@@ -193,7 +193,7 @@ def _overview(report: Report, width: int, paint: Paint) -> Iterable[str]:
     if len(judged) > 1:
         capture, channel = max(judged, key=lambda pair: severity(pair[1]))
         yield ""
-        yield from _wrap(f"riskiest: {channel_title(capture, channel)}: {risk(channel)}", width, _INDENT, hang=2)
+        yield from wrap(f"riskiest: {channel_title(capture, channel)}: {risk(channel)}", width, _INDENT, hang=2)
 
 
 def _overview_line(row: tuple[str, ...], columns: list[int]) -> str:
@@ -213,7 +213,7 @@ def _overview_row(capture: CaptureReport, channel: ChannelReport) -> tuple[str, 
     return (channel_title(capture, channel), *texts, region)
 
 
-def _wrap(text: str, width: int, indent: str, hang: int = 0) -> list[str]:
+def wrap(text: str, width: int, indent: str, hang: int = 0) -> list[str]:
     """Break text into lines, never between a number and its unit."""
     kept = re.sub(r"(?<=\d) (?=%|[kMmµn]?(?:Hz|s|V)\b)", "\N{NO-BREAK SPACE}", text)
     lines = textwrap.wrap(kept, width, initial_indent=indent, subsequent_indent=indent + " " * hang)
