@@ -2,15 +2,91 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from pathlib import Path
 from typing import Any
 
-from flicker import __version__
+from flicker import __version__, readers
+from flicker.conditioning import condition
 from flicker.light import ChannelLight, Light
-from flicker.limits import RiskRegion, Verdict
-from flicker.metrics import Observation
+from flicker.limits import RiskRegion, Verdict, risk_region
+from flicker.metrics import Observation, evaluate
 from flicker.results import Component, Family, Measure, Note
 from flicker.trace import Capture, Trace
+
+_CONDITIONS = ("dark_level", "dark_capture", "mean", "dc_coupled", "inverted", "start", "duration", "coupling_corner")
+
+
+def read(path: str | Path, **options: Any) -> Capture:
+    """
+    Read a capture and condition it: sign, dark level, mean, part.
+
+    Parameters
+    ----------
+    path : path
+        WAV, CSV or video; recognised by its content.
+    **options
+        The options of the command line as keywords: those of `flicker.readers.read` (`sample_rate`, `columns`,
+        `time_column`, `channels`, `frame_rate`, ...) and of `flicker.conditioning.condition` (`dark_level`,
+        `dark_capture` as a path, `mean`, `dc_coupled`, `inverted`, `start`, `duration`).
+
+    Returns
+    -------
+    Capture
+        Its traces carry notes on every doubt and a history of what was done.
+
+    Raises
+    ------
+    InputError, UnreadableFileError
+        If the file or an option cannot be right; one sentence with the cure.
+    """
+    conditions = {name: options.pop(name) for name in _CONDITIONS if name in options}
+    if isinstance(conditions.get("dark_capture"), str | Path):
+        conditions["dark_capture"] = readers.read(conditions["dark_capture"], **options)
+    return condition(readers.read(path, **options), **conditions)
+
+
+def measure(*captures: Capture, clock_ppm: float = 0.0, dark_uncertainty: float = 0.0) -> Report:
+    """
+    Measure every channel of one or several captures.
+
+    Parameters
+    ----------
+    *captures : Capture
+        From `read`, or made from traces.
+    clock_ppm : float
+        Standard uncertainty of the sample clock, which no capture can show. [1e-6]
+    dark_uncertainty : float
+        Standard uncertainty of the dark level, in the unit of the capture.
+
+    Returns
+    -------
+    Report
+        One entry a capture, in order.
+    """
+    return Report(
+        tuple(
+            CaptureReport(
+                str(capture.path) if capture.path else None,
+                capture,
+                tuple(_measure_trace(trace, clock_ppm, dark_uncertainty) for trace in capture.traces),
+            )
+            for capture in captures
+        )
+    )
+
+
+def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float) -> ChannelReport:
+    observation = Observation(trace, clock=clock_ppm * 1e-6, dark_uncertainty=dark_uncertainty)
+    measures = evaluate(observation)
+    depth_known = measures["percent_flicker"].value is not None
+    components = observation.components if depth_known else ()
+    families = observation.families
+    if not depth_known:
+        reason = measures["percent_flicker"].reason
+        families = tuple(replace(family, percent_flicker=Measure.missing("%", reason)) for family in families)
+    region = risk_region(components, families) if depth_known else None
+    return ChannelReport(observation, measures, trace.notes, components, families, region)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
@@ -23,6 +24,10 @@ class Search:
     families: tuple[HarmonicFit, ...]
     floor: float  # amplitude that a line must exceed to be found, in the unit of the signal
     spectrum: Spectrum  # of the whole signal
+
+    def without(self, series: Series, families: Sequence[HarmonicFit]) -> Series:
+        """Take some families off a series, but for their means."""
+        return _without(series, families) if families else series
 
 
 def find_families(series: Series) -> Search:
@@ -82,7 +87,7 @@ def _strength(fit: HarmonicFit) -> float:
     return float(np.sqrt(np.square(np.abs(fit.amplitudes)).sum()))
 
 
-def _without(series: Series, families: list[HarmonicFit]) -> Series:
+def _without(series: Series, families: Sequence[HarmonicFit]) -> Series:
     """Take the families off, but for their means."""
     values = series.values.copy()
     for part, times in series.chunks():
@@ -91,9 +96,7 @@ def _without(series: Series, families: list[HarmonicFit]) -> Series:
     return replace(series, values=values)
 
 
-def _next_line(
-    now: Spectrum, lowest: float, highest: float, families: list[HarmonicFit]
-) -> tuple[float, float] | None:
+def _next_line(now: Spectrum, lowest: float, highest: float, families: list[HarmonicFit]) -> tuple[float, float] | None:
     """Find the strongest line that is neither left over from a family's harmonics nor lost among their aliases."""
     amplitudes, noise = now.amplitudes.copy(), now.noise_power()
     for fit in families:

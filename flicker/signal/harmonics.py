@@ -40,7 +40,10 @@ class Series:
         for first, last, start in _runs(self.values.size, self.segments):
             for begin in range(first, last, _CHUNK):
                 end = min(begin + _CHUNK, last)
-                yield slice(begin, end), np.arange(begin - first, end - first) / self.sample_rate + (start - self.centre)
+                yield (
+                    slice(begin, end),
+                    np.arange(begin - first, end - first) / self.sample_rate + (start - self.centre),
+                )
 
     @property
     def span(self) -> float:
@@ -106,7 +109,7 @@ class HarmonicFit:
     @property
     def amplitude_error(self) -> float:
         """Standard error of the modulus of one amplitude, sqrt(2 / n) times the noise (Kay 1993, example 3.14)."""
-        return self.noise * (2.0 / self.samples) ** 0.5
+        return float(self.noise * (2.0 / self.samples) ** 0.5)
 
     def at(self, times: FloatArray) -> FloatArray:
         """Evaluate the fit at times, shape (n,), through a table of its cycle."""
@@ -138,15 +141,15 @@ def _solve(count: FloatArray, sums: FloatArray, harmonics: int, tolerance: float
     The normal matrix is Toeplitz (it holds the transform of the counts), so that a product costs two transforms; it is
     close to a multiple of the identity where the phases are spread evenly, and few steps are enough.
     """
-    bins, total = count.size, count.sum()
+    bins, total = count.size, float(count.sum())
 
     def product(coefficients: ComplexArray) -> ComplexArray:
-        return _project(count * _evaluate(coefficients, bins), harmonics) / total
+        return np.asarray(_project(count * _evaluate(coefficients, bins), harmonics) / total)
 
     def dot(a: ComplexArray, b: ComplexArray) -> float:
         return float(2.0 * np.vdot(a, b).real - (a[0].conjugate() * b[0]).real)
 
-    right = _project(sums, harmonics) / total
+    right = np.asarray(_project(sums, harmonics) / total)
     solution = right.copy()
     residual = right - product(solution)
     direction = residual
@@ -187,13 +190,13 @@ def fit_harmonics(
     Notes
     -----
     Gauss-Newton on the frequency with the amplitudes solved for at each step (variable projection, Golub and Pereyra,
-    SIAM J. Numer. Anal. 10 (1973) 413): the residual is regressed on the model's own time derivative times centred time.
-    For white noise this is the maximum-likelihood estimate, whose variance meets the bound of Rife and Boorstyn
-    (IEEE Trans. Inf. Theory 20 (1974) 591). Harmonics above the Nyquist frequency count too: sampled light holds them as
-    aliases, at places that the phase of each sample tells.
+    SIAM J. Numer. Anal. 10 (1973) 413): the residual is regressed on the model's own time derivative times centred
+    time. For white noise this is the maximum-likelihood estimate, whose variance meets the bound of Rife and Boorstyn
+    (IEEE Trans. Inf. Theory 20 (1974) 591). Harmonics above the Nyquist frequency count too: sampled light holds them
+    as aliases, at places that the phase of each sample tells.
     """
     offset = float(series.values.mean())
-    total_power = float(np.square(series.values - offset).sum()) if series.values.size < _CHUNK else _power(series, offset)
+    total_power = float(sum(np.square(series.values[part] - offset).sum() for part, _ in series.chunks()))
     most = min(most, max(128, int(series.sample_rate / (2 * frequency))))
     best = latest = _fit(series, frequency, harmonics or 1, offset, total_power)
     wanted, idle = 3, 0
@@ -266,11 +269,7 @@ def _worth_it(before: HarmonicFit, after: HarmonicFit) -> bool:
     """Whether the added harmonics carry more energy than noise would give them (mean plus five deviations)."""
     added = after.amplitudes.size - before.amplitudes.size
     energy = float(np.square(np.abs(after.amplitudes[-added:])).sum()) if added > 0 else 0.0
-    return energy > after.amplitude_error**2 * (2 * added + 10 * (2 * added) ** 0.5)
-
-
-def _power(series: Series, offset: float) -> float:
-    return float(sum(np.square(series.values[part] - offset).sum() for part, _ in series.chunks()))
+    return bool(energy > after.amplitude_error**2 * (2 * added + 10 * (2 * added) ** 0.5))
 
 
 def _newton_step(binned: _Binned, coefficients: ComplexArray, total_power: float) -> tuple[float, float, float]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 
 import numpy as np
@@ -26,7 +27,7 @@ class Spectrum:
     @property
     def frequencies(self) -> FloatArray:
         """Frequencies of the bins, shape (bins,). [Hz]"""
-        return np.arange(self.amplitudes.size) * self.spacing
+        return np.arange(self.amplitudes.size, dtype=float) * self.spacing
 
     def noise_power(self) -> FloatArray:
         """
@@ -37,8 +38,8 @@ class Spectrum:
         power = self.amplitudes**2
         edges = _band_edges(power.size, least=int(128 * self.resolution / self.spacing))
         centres = 0.5 * (edges[:-1] + edges[1:])
-        levels = np.array([np.median(power[a:b]) for a, b in zip(edges[:-1], edges[1:], strict=True)]) / np.log(2)
-        return np.interp(np.arange(power.size), centres, levels)
+        levels = np.array([np.median(power[a:b]) for a, b in itertools.pairwise(edges)]) / np.log(2)
+        return np.asarray(np.interp(np.arange(power.size), centres, levels))
 
     def strongest_line(self, above: float, below: float, noise: FloatArray | None = None) -> tuple[float, float] | None:
         """
