@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -9,7 +10,7 @@ from typing import Any
 from flicker import __version__, readers
 from flicker.conditioning import condition
 from flicker.light import ChannelLight, Light
-from flicker.limits import RiskRegion, Verdict, risk_region
+from flicker.limits import Conditions, Limit, RiskRegion, Verdict, chosen_limits, judge, risk_region
 from flicker.metrics import Observation, evaluate
 from flicker.results import Component, Family, Measure, Note
 from flicker.trace import Capture, Trace
@@ -87,6 +88,50 @@ def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float) -> C
         families = tuple(replace(family, percent_flicker=Measure.missing("%", reason)) for family in families)
     region = risk_region(components, families) if depth_known else None
     return ChannelReport(observation, measures, trace.notes, components, families, region)
+
+
+def check(
+    report: Report,
+    limits: Sequence[Limit | str] = (),
+    *,
+    decision: str = "guarded",
+    level: float | None = None,
+    supply: str | None = None,
+) -> Report:
+    """
+    Hold every channel of a report against limits.
+
+    Parameters
+    ----------
+    report : Report
+        From `measure`.
+    limits : sequence of Limit or str
+        Limits, or ids of those built in; all that are in force if none is given.
+    decision : {"guarded", "simple"}
+        Whether the 95 % interval counts, or the value alone.
+    level : float, optional
+        Dimming level at which the captures were taken, for limits that hold at some levels only. [%]
+    supply : str, optional
+        What the light was supplied by, such as `24 V DC`, for limits that hold on the mains only.
+
+    Returns
+    -------
+    Report
+        The same report with its verdicts.
+
+    Raises
+    ------
+    InputError
+        If no limit or no decision rule has that name.
+    """
+    rows = tuple(one if isinstance(one, Limit) else chosen_limits([one])[0] for one in limits) or chosen_limits(())
+
+    def judged(channel: ChannelReport) -> ChannelReport:
+        conditions = Conditions(channel.trace.sample_rate, channel.trace.duration, level, supply)
+        found = (channel.measures, channel.components, channel.families)
+        return replace(channel, verdicts=tuple(judge(row, *found, decision, conditions) for row in rows))
+
+    return Report(tuple(replace(capture, channels=tuple(map(judged, capture.channels))) for capture in report.captures))
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -17,6 +17,8 @@ FLOORS = (
     ("demo",),
     ("report",),
     ("plots",),
+    ("sweep",),
+    ("tunable",),
     ("analysis",),
     ("readers", "camera", "limits", "metrics", "conditioning"),
     ("signal",),
