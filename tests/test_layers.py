@@ -27,7 +27,7 @@ FLOORS = (
     ("footage",),
     ("trace",),
     ("results",),
-    ("registry", "quantities", "files"),
+    ("registry", "quantities", "files", "workers"),
     ("errors",),
     ("__init__",),
 )

@@ -3,12 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar
 
 import click
 
 from flicker.errors import InputError
 from flicker.quantities import parse_quantity
+
+if TYPE_CHECKING:
+    from flicker.camera import Camera
+    from flicker.light import Light
 
 Function = TypeVar("Function", bound=Callable[..., Any])
 
@@ -32,9 +36,43 @@ class Quantity(click.ParamType[float]):
         return quantity
 
 
+class Times(click.ParamType[tuple[float, ...]]):
+    """Several times in one word, with a separator between."""
+
+    def __init__(self, name: str, separator: str, *, positive: bool = True) -> None:
+        self.name = name
+        self._separator = separator
+        self._one = Quantity("time", positive=positive)
+
+    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> tuple[float, ...]:
+        """Parse each of them."""
+        if isinstance(value, tuple):
+            return value
+        return tuple(self._one.convert(one, param, ctx) for one in str(value).split(self._separator))
+
+
+class Percent(click.ParamType[float]):
+    """A share in per cent, with or without the sign; inside the program it is a share of 1."""
+
+    name = "PERCENT"
+
+    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> float:
+        """Parse, and refuse what is below zero."""
+        try:
+            percent = float(str(value).removesuffix("%"))
+        except ValueError:
+            self.fail(f"'{value}' is no number of per cent", param, ctx)
+        if not 0 <= percent < float("inf"):
+            self.fail(f"'{value}' must be 0 % or above", param, ctx)
+        return percent / 100.0
+
+
 TIME = Quantity("time")
 FREQUENCY = Quantity("frequency")
 MOMENT = Quantity("time", positive=False)
+STAGGERED = Times("S", "+")
+DECAYS = Times("S[,S,S]", ",", positive=False)
+PERCENT = Percent()
 
 
 def several(*options: Callable[[Function], Function]) -> Callable[[Function], Function]:
@@ -48,9 +86,12 @@ def several(*options: Callable[[Function], Function]) -> Callable[[Function], Fu
     return decorate
 
 
-reading_options = several(
+_READING = (
+    *("sample_rate", "columns", "time_column", "channels", "dark_level", "dark_capture", "mean", "dc_coupled"),
+    *("inverted", "detector_bandwidth", "start", "duration"),
+)
+_photodiode_options = several(
     click.option("--sample-rate", type=FREQUENCY, help="Sample rate of a CSV that does not state it."),
-    click.option("--frame-rate", type=FREQUENCY, help="Frame rate at which a video was really shot."),
     click.option(
         "--column", "columns", multiple=True, metavar="NAME_OR_NUMBER", help="CSV column; numbers count from 1."
     ),
@@ -65,3 +106,101 @@ reading_options = several(
     click.option("--start", type=MOMENT, help="Where to begin in the capture."),
     click.option("--duration", type=TIME, help="How much of the capture to use."),
 )
+
+reading_options = several(
+    click.option("--frame-rate", type=FREQUENCY, help="Frame rate at which a video was really shot."),
+    _photodiode_options,
+)
+
+light_options = several(
+    click.option("--frequency", type=FREQUENCY, help="PWM frequency of a light typed in."),
+    click.option("--duty", type=float, metavar="SHARE", help="Share of the period that it is on, 0 to 1."),
+    click.option("--low-level", type=float, metavar="RATIO", help="Its off level over its on level; 0 if left out."),
+    click.option(
+        "--decay",
+        type=DECAYS,
+        help="Its decay time (1/e), or three with commas for red, green and blue; 0 if left out.",
+    ),
+    _photodiode_options,
+)
+
+camera_options = several(
+    click.option("--camera", "camera_file", metavar="FILE.toml", help="Camera file; the options below override it."),
+    click.option("--lines", type=click.IntRange(min=1), help="Lines of a frame."),
+    click.option("--line-time", type=TIME, help="From the start of one line to that of the next."),
+    click.option("--line-rate", type=FREQUENCY, help="Its inverse, in place of it."),
+    click.option(
+        "--readout-time", type=TIME, help="Of all lines of a frame, or the travel of a curtain, in place of it."
+    ),
+    click.option("--frame-rate", type=FREQUENCY, help="Frame rate of the camera; 24000/1001 is understood."),
+    click.option("--shutter", metavar="rolling|global", help="How lines are exposed; rolling if left out."),
+    click.option(
+        "--read-direction",
+        metavar="down|up|left|right",
+        help="The way the lines are read in the picture as stored; down if left out.",
+    ),
+    click.option("--line-binning", type=click.IntRange(min=1), help="Sensor lines that make one line of the picture."),
+)
+
+
+uncertainty_options = several(
+    click.option("--clock-ppm", type=float, metavar="PPM", help="Standard uncertainty of the sample clock."),
+    click.option(
+        "--dark-uncertainty", type=float, metavar="LEVEL", help="Standard uncertainty of the dark level, in its unit."
+    ),
+)
+
+many_options = several(
+    click.option("--manifest", metavar="FILE.csv", help="Captures with their conditions: capture, unit, level, ..."),
+    click.option("--workers", type=click.IntRange(min=1), default=1, metavar="N", help="Captures side by side."),
+)
+
+output_options = several(
+    click.option("--json", "json_target", metavar="FILE|-", help="Write the results as JSON; - for standard output."),
+    click.option("--quiet", is_flag=True, help="No progress on standard error."),
+)
+
+
+def given(**options: Any) -> dict[str, Any]:
+    """Keep the options that were given, to be passed on as keywords."""
+    return {name: value for name, value in options.items() if value is not None and value is not False and value != ()}
+
+
+def camera_from_options(options: dict[str, Any]) -> Camera:
+    """Take the camera options out of `options` and make a camera of them."""
+    from flicker.camera import Camera
+
+    names = (
+        "lines",
+        "line_time",
+        "line_rate",
+        "readout_time",
+        "frame_rate",
+        "shutter",
+        "read_direction",
+        "line_binning",
+    )
+    file = options.pop("camera_file")
+    camera = Camera() if file is None else Camera.load(file)
+    return camera.changed(**{name: options.pop(name) for name in names})
+
+
+def light_from_options(capture: str | None, options: dict[str, Any]) -> Light:
+    """Take the light and reading options out of `options`: a light typed in, or that of a capture."""
+    from flicker.light import pwm_light
+
+    typed = {name: options.pop(name) for name in ("frequency", "duty", "low_level", "decay")}
+    how = {name: options.pop(name) for name in _READING}
+    if capture is not None:
+        given = next((name for name, value in typed.items() if value is not None), None)
+        if given:
+            raise InputError(
+                f"--{given.replace('_', '-')} types a light in: give it, or the capture {capture}, not both"
+            )
+        from flicker.analysis import measure, read
+
+        return measure(read(capture, **how)).light
+    for name in ("frequency", "duty"):
+        if typed[name] is None:
+            raise InputError(f"no light: give a capture, or --frequency and --duty (--{name} is missing)")
+    return pwm_light(typed["frequency"], typed["duty"], typed["low_level"] or 0.0, typed["decay"] or 0.0)

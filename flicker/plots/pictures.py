@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -16,7 +16,7 @@ from flicker.plots.waveform import draw_waveform
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-    from flicker.analysis import CaptureReport, ChannelReport, Report
+    from flicker.analysis import CaptureReport, ChannelReport
 
 PICTURES: dict[str, tuple[str, Callable[[ChannelReport, str], Figure]]] = {
     "waveform": ("light over time, and its mean cycle", draw_waveform),
@@ -33,22 +33,22 @@ class Pictures:
     missing: dict[str, str]
 
 
-def write_pictures(report: Report, folder: Path) -> Pictures:
+def write_pictures(capture: CaptureReport, folder: Path, name: str) -> Pictures:
     """
-    Write every picture of every channel as PNG.
+    Write every picture of every channel of a capture as PNG.
 
     Parameters
     ----------
-    report : Report
+    capture : CaptureReport
         What was measured.
     folder : Path
         Where the files go; it must be there.
+    name : str
+        What their names begin with: `NAME-PICTURE.png`, with the channel's name in between where there are several.
 
     Returns
     -------
     Pictures
-        Files `CAPTURE-PICTURE.png`, with the channel's name in between where a capture has several; a second
-        capture of the same name gets its number in front.
 
     Raises
     ------
@@ -57,29 +57,32 @@ def write_pictures(report: Report, folder: Path) -> Pictures:
     """
     written: list[Path] = []
     missing: dict[str, str] = {}
-    for capture in report.captures:
-        for channel in capture.channels:
-            name = _free_name(capture, channel, written)
-            for kind, (about, draw) in PICTURES.items():
-                try:
-                    figure = draw(channel, f"{name}: {about}")
-                except NotMeasurable as reason:
-                    missing[f"{name}-{kind}"] = str(reason)
-                    continue
-                written.append(folder / f"{name}-{kind}.png")
-                save_figure(figure, written[-1])
+    for channel in capture.channels:
+        title = name if len(capture.channels) == 1 else f"{name}-{_plain(channel.trace.name)}"
+        for kind, (about, draw) in PICTURES.items():
+            try:
+                figure = draw(channel, f"{title}: {about}")
+            except NotMeasurable as reason:
+                missing[f"{title}-{kind}"] = str(reason)
+                continue
+            written.append(folder / f"{title}-{kind}.png")
+            save_figure(figure, written[-1])
     return Pictures(tuple(written), missing)
 
 
-def _free_name(capture: CaptureReport, channel: ChannelReport, written: list[Path]) -> str:
-    """Name a channel's pictures after its capture, so that no two channels of a report share a name."""
-    stem = Path(capture.path).stem if capture.path else "capture"
-    if len(capture.channels) > 1:
-        stem += f"-{channel.trace.name}"
-    stem = "".join(sign if sign.isalnum() or sign in "-_." else "-" for sign in stem)
-    taken = {path.name for path in written}
-    name, number = stem, 1
-    while any(f"{name}-{kind}.png" in taken for kind in PICTURES):
-        number += 1
-        name = f"{number}-{stem}"
-    return name
+def picture_names(paths: Sequence[str]) -> list[str]:
+    """Name the pictures of captures after their files; one that would share its name gets a number behind."""
+    names: list[str] = []
+    for path in paths:
+        name = stem = _plain(Path(path).stem)
+        number = 1
+        while name in names:
+            number += 1
+            name = f"{stem}-{number}"
+        names.append(name)
+    return names
+
+
+def _plain(text: str) -> str:
+    """Keep what every file system takes in a name."""
+    return "".join(sign if sign.isalnum() or sign in "-_." else "-" for sign in text)

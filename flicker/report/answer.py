@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterable
 from typing import TYPE_CHECKING
 
 from flicker.limits import risk_curves
 from flicker.limits.region import STANDARD
-from flicker.report.figures import measured, quantity
+from flicker.report.figures import quantity
 
 if TYPE_CHECKING:
     from flicker.analysis import ChannelReport
     from flicker.limits import Curve, RiskRegion
+    from flicker.results import Measure, Note
 
 REGION_WORDS = {
     "no-observable-effect": "no observable effect",
@@ -26,12 +28,12 @@ def what(channel: ChannelReport) -> str:
     """Name the light: its frequency, its origin, its duty cycle."""
     frequency = channel.measures["fundamental_frequency"]
     if frequency.value is None:
-        return f"no frequency: {frequency.reason}"
-    words = measured(frequency)[0]
-    if channel.families and channel.families[0].origin:
-        words += f", {channel.families[0].origin}"
+        return f"no frequency: {short_reason(frequency, channel.notes)}"
+    words = quantity(frequency.value, "Hz", 6)
+    origin = channel.families[0].origin if channel.families else ""
+    words += f" ({origin})" if origin else ""
     duty = channel.measures.get("duty_cycle")
-    if duty is not None and duty.value is not None:
+    if duty is not None and duty.value is not None and "PWM" in origin:
         words += f", bright for {quantity(100 * duty.value, '%', 3)} of each period"
     return words
 
@@ -40,14 +42,19 @@ def depth(channel: ChannelReport) -> str:
     """Tell how deep the light is modulated, and what that means."""
     measure = channel.measures["percent_flicker"]
     if measure.value is None:
-        return f"not known: {measure.reason}"
-    words = f"percent flicker {measured(measure)[0]}"
-    if measure.low == 0 or measure.value == 0:
+        return f"not known: {short_reason(measure, channel.notes)}"
+    words = f"percent flicker {quantity(measure.value, '%')}"
+    if measure.value == 0:
         return f"{words}: steady within {quantity(measure.high or 0.0, '%', 2)}"
     if (measure.high or measure.value) >= _GOES_OUT:
         return f"{words}: the light goes out in every cycle"
     darkest = (100 - measure.value) / (100 + measure.value)
     return f"{words}: the darkest moment keeps {quantity(100 * darkest, '%', 3)} of the brightest"
+
+
+def short_reason(measure: Measure, notes: Iterable[Note]) -> str:
+    """Say why a measure could not be had; where a note says it at length, by the code of that note."""
+    return next((f"see {note.code} below" for note in notes if note.message == measure.reason), measure.reason)
 
 
 def risk(channel: ChannelReport) -> str:
@@ -64,7 +71,7 @@ def risk(channel: ChannelReport) -> str:
         if place.region == "no-observable-effect"
         else ("low risk", place.low_risk_bound)
     )
-    words += f"{name} ends at {quantity(bound, '%', 3)}" if bound is not None else f"where {name} has no bound"
+    words += f"{name} ends at {quantity(bound, '%', 3)}" if bound is not None else "where the standard sets no bound"
     if place.other:
         words += f"; the interval of the frequency also reaches {REGION_WORDS[place.other]}"
     return f"{words} ({STANDARD})"
@@ -77,7 +84,7 @@ def next_step(channel: ChannelReport) -> str:
         return f"mend the capture first: {broken.message}"
     place = channel.risk_region
     if place is None:
-        return "give the capture what the depth needs, then measure again"
+        return "give the capture what its depth needs, then measure again"
     if place.modulation is None or place.region == "no-observable-effect":
         return "nothing: the strictest practice of this standard is kept"
     low_risk, no_effect = risk_curves()

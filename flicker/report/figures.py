@@ -9,6 +9,7 @@ from flicker.results import Measure
 _PREFIXES = ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"))
 _DIGITS_WITHOUT_INTERVAL = 4
 _MOST_DECIMALS = 6
+_MOST_DECIMALS_OF = {"%": 3, "1": 4}  # finer is never asked for
 _WORDS = {"svm": "SVM", "pst_lm": "Pst LM", "rms_modulation": "RMS modulation"}
 
 
@@ -72,8 +73,10 @@ def measured(measure: Measure) -> tuple[str, str]:
     half = (high - low) / 2
     if half <= 0:
         return quantity(measure.value, measure.unit), "± 0"
-    decimals = _decimals(half)
+    decimals = min(_decimals(half), _MOST_DECIMALS_OF.get(unit, _MOST_DECIMALS))
     number = _join(f"{value:.{decimals}f}", unit)
-    if abs((high - value) - (value - low)) > 0.2 * half:
+    step = 10.0**-decimals
+    if abs((high - value) - (value - low)) > max(0.2 * half, step):
+        low, high = math.floor(low / step + 1e-6) * step, math.ceil(high / step - 1e-6) * step
         return number, f"{low:.{decimals}f} to {high:.{decimals}f}"
-    return number, f"± {half:.{decimals}f}"
+    return number, f"± {max(half, step):.{decimals}f}"

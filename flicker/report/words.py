@@ -2,15 +2,13 @@
 
 from __future__ import annotations
 
-import re
-import textwrap
-from collections.abc import Iterable
-from pathlib import Path
+from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING
 
-from flicker.limits.region import STANDARD
-from flicker.report.answer import REGION_MARKS, REGION_WORDS, depth, next_step, risk, severity, what
+from flicker.report.answer import depth, next_step, risk, short_reason, what
 from flicker.report.figures import measure_name, measured, quantity
+from flicker.report.overview import OverviewEntry, channel_title, overview, overview_entries
+from flicker.report.typesetting import Paint, wrap
 
 if TYPE_CHECKING:
     from flicker.analysis import CaptureReport, ChannelReport, Report
@@ -21,25 +19,6 @@ _NOTE_MARKS = {"error": "!!", "warning": "! ", "info": "i "}
 _COLOURS = {"no-observable-effect": "36", "low-risk": "34", "above-low-risk": "35"}  # beside marks and words
 _LINES_SHOWN = 20
 _CAMERA_HINT = f"{_INDENT}what a camera will record of it: flicker bands CAPTURE --camera CAMERA.toml"
-
-
-class Paint:
-    """Bold, faint and coloured text where that is wanted, plain text elsewhere."""
-
-    def __init__(self, *, colour: bool) -> None:
-        self._colour = colour
-
-    def __call__(self, text: str, *codes: str) -> str:
-        """Give the text in these terminal codes."""
-        return f"\x1b[{';'.join(codes)}m{text}\x1b[0m" if self._colour and text else text
-
-    def bold(self, text: str) -> str:
-        """Give the text in bold."""
-        return self(text, "1")
-
-    def faint(self, text: str) -> str:
-        """Give the text faint."""
-        return self(text, "2")
 
 
 def report_words(report: Report, *, width: int = 100, colour: bool = False, verbose: bool = False) -> str:
@@ -62,23 +41,25 @@ def report_words(report: Report, *, width: int = 100, colour: bool = False, verb
     str
         One block a channel; after several, a table that holds them side by side.
     """
+    blocks = [capture_words(capture, width=width, colour=colour, verbose=verbose) for capture in report.captures]
+    entries = [entry for capture in report.captures for entry in overview_entries(capture)]
+    return "\n\n".join([*filter(None, blocks), *closing_words(entries, width=width, colour=colour)])
+
+
+def capture_words(capture: CaptureReport, *, width: int = 100, colour: bool = False, verbose: bool = False) -> str:
+    """Put one capture into words: a block a channel, empty for a capture that was not read."""
     paint = Paint(colour=colour)
-    blocks = [
-        "\n".join(_channel_block(capture, channel, width, paint, verbose))
-        for capture in report.captures
-        for channel in capture.channels
-    ]
-    if len(blocks) != 1 or len(report.captures) > 1:
-        blocks.append("\n".join(_overview(report, width, paint)))
-    if any(channel.families for capture in report.captures for channel in capture.channels):
-        blocks.append(paint.faint(_CAMERA_HINT))
+    blocks = ("\n".join(_channel_block(capture, channel, width, paint, verbose)) for channel in capture.channels)
     return "\n\n".join(blocks)
 
 
-def channel_title(capture: CaptureReport, channel: ChannelReport) -> str:
-    """Name a channel: its file, and its own name where the file holds several."""
-    file = Path(capture.path).name if capture.path else "capture"
-    return file if len(capture.channels) == 1 else f"{file}, {channel.trace.name}"
+def closing_words(entries: Sequence[OverviewEntry], *, width: int = 100, colour: bool = False) -> list[str]:
+    """Give what stands at the end of a report: several channels side by side, and where a camera comes in."""
+    paint = Paint(colour=colour)
+    blocks = ["\n".join(overview(entries, width, paint))] if len(entries) > 1 else []
+    if any(entry.flickers for entry in entries):
+        blocks.append(paint.faint(_CAMERA_HINT))
+    return blocks
 
 
 def _channel_block(
@@ -147,7 +128,7 @@ def _missing(channel: ChannelReport, width: int) -> Iterable[str]:
     reasons: dict[str, list[str]] = {}
     for name, measure in channel.measures.items():
         if measure.value is None:
-            reasons.setdefault(measure.reason, []).append(measure_name(name))
+            reasons.setdefault(short_reason(measure, channel.notes), []).append(measure_name(name))
     if reasons:
         yield ""
         yield f"{_INDENT}not measured"
@@ -176,45 +157,3 @@ def _details(channel: ChannelReport, width: int, paint: Paint) -> Iterable[str]:
         yield _INDENT + paint.faint("what was done to the readings")
     for step in channel.trace.history:
         yield from wrap(step, width, _INDENT * 2)
-
-
-def _overview(report: Report, width: int, paint: Paint) -> Iterable[str]:
-    """Hold all channels side by side, the riskiest named below."""
-    pairs = [(capture, channel) for capture in report.captures for channel in capture.channels]
-    rows = [_overview_row(capture, channel) for capture, channel in pairs]
-    head = ("capture", "frequency", "flicker", "index", f"risk ({STANDARD})")
-    columns = [max(len(row[column]) for row in [head, *rows]) for column in range(5)]
-    columns[0] = max(12, min(columns[0], width - sum(columns[1:]) - 10))
-    yield _INDENT + paint.faint(_overview_line(head, columns))
-    for row in rows:
-        yield _INDENT + _overview_line(row, columns)
-    yield from (f"{_INDENT}{Path(capture.path or '').name}: not read" for capture in report.captures if capture.error)
-    judged = [pair for pair in pairs if pair[1].risk_region]
-    if len(judged) > 1:
-        capture, channel = max(judged, key=lambda pair: severity(pair[1]))
-        yield ""
-        yield from wrap(f"riskiest: {channel_title(capture, channel)}: {risk(channel)}", width, _INDENT, hang=2)
-
-
-def _overview_line(row: tuple[str, ...], columns: list[int]) -> str:
-    name = row[0] if len(row[0]) <= columns[0] else "…" + row[0][1 - columns[0] :]
-    numbers = "  ".join(f"{text:>{size}}" for text, size in zip(row[1:4], columns[1:4], strict=True))
-    return f"{name:<{columns[0]}}  {numbers}  {row[4]}".rstrip()
-
-
-def _overview_row(capture: CaptureReport, channel: ChannelReport) -> tuple[str, ...]:
-    figures = [channel.measures[name] for name in ("fundamental_frequency", "percent_flicker", "flicker_index")]
-    texts = [
-        "–" if one.value is None else quantity(one.value, one.unit, digits)
-        for one, digits in zip(figures, (5, 3, 3), strict=True)
-    ]
-    place = channel.risk_region
-    region = f"{REGION_MARKS[place.region]} {REGION_WORDS[place.region]}" if place else "not known"
-    return (channel_title(capture, channel), *texts, region)
-
-
-def wrap(text: str, width: int, indent: str, hang: int = 0) -> list[str]:
-    """Break text into lines, never between a number and its unit."""
-    kept = re.sub(r"(?<=\d) (?=%|[kMmµn]?(?:Hz|s|V)\b)", "\N{NO-BREAK SPACE}", text)
-    lines = textwrap.wrap(kept, width, initial_indent=indent, subsequent_indent=indent + " " * hang)
-    return [line.replace("\N{NO-BREAK SPACE}", " ") for line in lines]

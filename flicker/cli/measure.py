@@ -1,0 +1,91 @@
+"""`flicker measure`: what a light is, how deep it flickers, how risky that is."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import click
+
+from flicker.cli.options import given, many_options, output_options, reading_options, uncertainty_options
+from flicker.cli.output import (
+    colour_wanted,
+    complain,
+    make_folder,
+    print_words,
+    spare_the_captures,
+    terminal_width,
+    with_progress,
+    write_json,
+)
+from flicker.errors import ExitStatus, UnreadableFileError
+
+
+@click.command()
+@click.argument("captures", nargs=-1, metavar="CAPTURE...")
+@reading_options
+@uncertainty_options
+@many_options
+@output_options
+@click.option("--figures", metavar="DIR", help="Write the waveform, the spectrum and the risk plane as pictures.")
+@click.option("--verbose", is_flag=True, help="Add how each figure was obtained, the lines, the history.")
+def command(
+    captures: tuple[str, ...],
+    clock_ppm: float | None,
+    dark_uncertainty: float | None,
+    manifest: str | None,
+    workers: int,
+    json_target: str | None,
+    quiet: bool,
+    figures: str | None,
+    verbose: bool,
+    **reading: Any,
+) -> None:
+    """Measure every CAPTURE and print all measures with their intervals and the risk region.
+
+    A capture is a file from a photodiode (WAV, CSV) or a video. The answer comes first: what the light is, how deep it
+    flickers, how that stands against IEEE 1789-2015, what to do next.
+
+    Example:
+
+        flicker measure bridge-display-night.csv --dark-level 0.012
+    """
+    from functools import partial
+
+    from flicker.analysis import Report
+    from flicker.report.captures import Task, measure_capture
+    from flicker.report.words import closing_words
+    from flicker.sweep.manifest import Step, read_manifest
+    from flicker.workers import side_by_side
+
+    steps = (*(read_manifest(manifest) if manifest else ()), *(Step(capture) for capture in captures))
+    if not steps:
+        raise click.UsageError("no capture: name one, or a table of them with --manifest")
+    paths = [step.capture for step in steps]
+    spare_the_captures([*paths, *filter(None, [manifest, reading["dark_capture"]])], [json_target])
+    folder = make_folder(figures) if figures else None
+    names = [""] * len(paths)
+    if folder:
+        from flicker.plots.pictures import picture_names
+
+        names = picture_names(paths)
+    width, colour = terminal_width(), colour_wanted()
+    measuring = given(clock_ppm=clock_ppm, dark_uncertainty=dark_uncertainty)
+    task = Task(given(**reading), measuring, width, colour, verbose, folder)
+    results = []
+    found = side_by_side(partial(measure_capture, task=task), list(zip(steps, names, strict=True)), workers)
+    for _, result in zip(with_progress(paths, "capture", quiet=quiet), found, strict=False):
+        if result.error and len(steps) == 1:
+            raise UnreadableFileError(result.error)
+        if result.error:
+            complain(result.error)
+        for picture, reason in result.no_picture.items():
+            complain(f"no picture {picture}: {reason}")
+        if result.words:
+            print_words(result.words + "\n", json_target)
+        results.append(result)
+    write_json({**Report(()).to_dict(), "captures": [result.data for result in results]}, json_target)
+    entries = [entry for result in results for entry in result.entries]
+    for block in closing_words(entries, width=width, colour=colour):
+        print_words(block + "\n", json_target)
+    if any(result.error for result in results):
+        raise SystemExit(int(ExitStatus.UNUSABLE_INPUT))

@@ -1,0 +1,80 @@
+"""Captures measured one by one: each becomes data, words and pictures, and its samples are let go."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from flicker.errors import FlickerError
+from flicker.report.overview import OverviewEntry
+
+if TYPE_CHECKING:
+    from flicker.sweep.manifest import Step
+
+
+@dataclass(frozen=True)
+class Task:
+    """What is done to every capture of a run."""
+
+    reading: Mapping[str, Any]  # keywords of `flicker.read`
+    measuring: Mapping[str, Any]  # keywords of `flicker.measure`
+    width: int = 100
+    colour: bool = False
+    verbose: bool = False
+    figures: Path | None = None  # folder for pictures
+
+
+@dataclass(frozen=True)
+class Measured:
+    """What came of one capture; a capture that could not be read has an error and no words."""
+
+    data: dict[str, Any]  # its entry in the JSON
+    entries: tuple[OverviewEntry, ...]
+    words: str = ""
+    error: str = ""
+    no_picture: dict[str, str] = field(default_factory=dict)  # pictures that could not be drawn, and why
+
+
+def measure_capture(item: tuple[Step, str], task: Task) -> Measured:
+    """
+    Read and measure one capture, put it into words, draw its pictures.
+
+    Parameters
+    ----------
+    item : (Step, str)
+        The capture with what its manifest says of it, and the name for its pictures.
+    task : Task
+        What is done.
+
+    Returns
+    -------
+    Measured
+        Plain data that travels between processes.
+    """
+    from flicker.analysis import CaptureReport, measure, read
+    from flicker.report.overview import overview_entries
+    from flicker.report.words import capture_words
+
+    step, name = item
+    reading = dict(task.reading)
+    if step.dark_level is not None:
+        reading["dark_level"] = step.dark_level
+    try:
+        (capture,) = measure(read(step.capture, **reading), **task.measuring).captures
+    except FlickerError as error:
+        capture = CaptureReport(step.capture, None, error=str(error))
+        return Measured(_data(capture, step), tuple(overview_entries(capture)), error=str(error))
+    no_picture: dict[str, str] = {}
+    if task.figures is not None:
+        from flicker.plots.pictures import write_pictures
+
+        no_picture = write_pictures(capture, task.figures, name).missing
+    words = capture_words(capture, width=task.width, colour=task.colour, verbose=task.verbose)
+    return Measured(_data(capture, step), tuple(overview_entries(capture)), words, no_picture=no_picture)
+
+
+def _data(capture: Any, step: Step) -> dict[str, Any]:
+    conditions = step.to_dict()
+    return {**capture.to_dict(), **({"conditions": conditions} if conditions else {})}

@@ -1,0 +1,66 @@
+"""Work done side by side in several processes, its results in order."""
+
+from __future__ import annotations
+
+import multiprocessing
+import os
+from collections import deque
+from collections.abc import Callable, Iterator, Sequence
+from concurrent.futures import Future, ProcessPoolExecutor
+from typing import TypeVar
+
+from flicker.errors import InputError
+
+Item = TypeVar("Item")
+Result = TypeVar("Result")
+
+_AHEAD = 4  # items that wait for each worker
+_ONE_THREAD = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
+
+
+def side_by_side(function: Callable[[Item], Result], items: Sequence[Item], workers: int = 1) -> Iterator[Result]:
+    """
+    Apply a function to items, several at a time, and give the results in the order of the items.
+
+    Parameters
+    ----------
+    function : callable
+        A function of a module, or a `functools.partial` of one: it travels to other processes.
+    items : sequence
+        What it is applied to.
+    workers : int
+        Processes; with 1 the work is done in this one.
+
+    Yields
+    ------
+    object
+        Results. Only a few wait in memory at any time.
+
+    Raises
+    ------
+    InputError
+        If the number of workers is below 1.
+    """
+    if workers < 1:
+        raise InputError(f"--workers must be at least 1, not {workers}")
+    if workers == 1 or len(items) < 2:
+        yield from map(function, items)
+        return
+    before = {name: os.environ.get(name) for name in _ONE_THREAD}
+    os.environ.update(dict.fromkeys(_ONE_THREAD, "1"))  # the items are the parallel part
+    pool = ProcessPoolExecutor(min(workers, len(items)), mp_context=multiprocessing.get_context("spawn"))
+    waiting: deque[Future[Result]] = deque()
+    try:
+        for item in items:
+            waiting.append(pool.submit(function, item))
+            if len(waiting) > _AHEAD * workers:
+                yield waiting.popleft().result()
+        while waiting:
+            yield waiting.popleft().result()
+    finally:
+        pool.shutdown(wait=True, cancel_futures=True)
+        for name, value in before.items():
+            if value is None:
+                os.environ.pop(name, None)
+            else:
+                os.environ[name] = value
