@@ -41,8 +41,10 @@ class Prediction:
     aliased: bool | None
     worst_contrast_percent: float
     visible: bool
+    worst_frame_flicker_percent: float | None = None
     beat_frequency_hz: float | None = None
     visibility: str = "invisible"
+    worst_visibility: str = "invisible"
     threshold_percent: float = 0.0
     wander_contrast_percent: float | None = None
     colours: BandColours | None = None
@@ -155,13 +157,16 @@ def predict_bands(
     drift, seconds, standing = _movement(pattern, camera, reasons)
     limit = visibility.band_threshold(bands, viewing_distance)
     flickers = [value for value in frames.values() if value is not None]
-    strongest = gain * max(found.values())
-    pulsing = gain * max(flickers, default=0.0)
-    words = max(
-        visibility.in_words(strongest, limit),
-        visibility.in_words(pulsing, visibility.FLICKER_THRESHOLD),
-        key=visibility.WORDS.index,
-    )
+    over_all = max(over_all, *found.values())
+    pulsing = deepest_pulsing(tuple(families.values()), camera, seen, tolerance)
+
+    def words(contrast: float, flicker: float) -> str:
+        seen_bands = visibility.in_words(gain * contrast, limit)
+        return max(
+            seen_bands, visibility.in_words(gain * flicker, visibility.FLICKER_THRESHOLD), key=visibility.WORDS.index
+        )
+
+    nominal = words(max(found.values()), max(flickers, default=0.0))
     return Prediction(
         exposure_s=seen.lengths[0] if len(seen.lengths) == 1 else seen.lengths,
         band_period_lines=period,
@@ -172,12 +177,14 @@ def predict_bands(
         standing=standing,
         frame_flicker_percent={name: None if value is None else 100.0 * value for name, value in frames.items()},
         aliased=pattern.aliased if pattern else False,
-        worst_contrast_percent=100.0 * max(over_all, *found.values()),
-        visible=words != visibility.WORDS[0],
+        worst_contrast_percent=100.0 * over_all,
+        worst_frame_flicker_percent=None if pulsing is None else 100.0 * pulsing,
+        visible=nominal != visibility.WORDS[0],
         beat_frequency_hz=None
         if pattern is None or pattern.cycles_per_frame is None or camera.frame_rate is None
         else pattern.cycles_per_frame * camera.frame_rate,
-        visibility=words,
+        visibility=nominal,
+        worst_visibility=max(nominal, words(over_all, pulsing or 0.0), key=visibility.WORDS.index),
         threshold_percent=100.0 * limit / gain,
         wander_contrast_percent=100.0 * max(contrast.wandering(group, seen, wander) for group in families.values())
         if wander
@@ -235,6 +242,27 @@ def frame_delays(camera: Camera) -> FloatArray | None:
         return None
     frames = max(2, min(int(contrast.STANDS * camera.frame_rate), 20_000))
     return np.asarray(np.arange(1, frames) / camera.frame_rate)
+
+
+def deepest_pulsing(
+    groups: Sequence[Sequence[Family]], camera: Camera, seen: Windows, tolerance: float
+) -> float | None:
+    """
+    Largest frame flicker of any channel over the tolerance, 0..1, where it is not smaller than the bands anyway.
+
+    None behind a rolling shutter that shows a band or more, since the lines average it down, and where frame rate
+    or readout time are unknown. With less than a band in the picture it is the bound of all lines at once.
+    """
+    slowest = min((family.frequency for families in groups for family in families), default=math.inf)
+    delays = frame_delays(camera)
+    if delays is None or (camera.shutter == "rolling" and camera.readout_time is None):
+        return None
+    if camera.shutter == "rolling" and slowest * (camera.readout_time or 0.0) >= 1.0:
+        return None
+    return max(
+        contrast.worst(families, seen, None if tolerance else contrast.moving(families, delays), tolerance)
+        for families in groups
+    )
 
 
 def _frame_flicker(

@@ -10,8 +10,8 @@ from typing import Any
 import numpy as np
 
 from flicker.camera import contrast
-from flicker.camera.bands import check_share, frame_delays, line_delays
-from flicker.camera.exposed import Family, families_of, windows
+from flicker.camera.bands import check_share, deepest_pulsing, line_delays
+from flicker.camera.exposed import Family, Windows, families_of, windows
 from flicker.camera.sensor import Camera
 from flicker.light import Light
 from flicker.trace import FloatArray
@@ -161,9 +161,10 @@ def _setting(
     light_scan: float,
 ) -> Setting:
     delays = line_delays(camera, light_scan)
-    nominal = deepest_contrast(groups, camera, exposure, delays, 0.0)
-    worst = max(nominal, deepest_contrast(groups, camera, exposure, delays, tolerance)) if tolerance else nominal
-    pulsing = deepest_pulsing(groups, camera, exposure, tolerance)
+    seen = windows(exposure, binning=camera.line_binning, line_time=camera.line_time)
+    nominal = deepest_contrast(groups, seen, delays, 0.0)
+    worst = max(nominal, deepest_contrast(groups, seen, delays, tolerance)) if tolerance else nominal
+    pulsing = deepest_pulsing(groups, camera, seen, tolerance)
     return Setting(
         exposure_s=exposure,
         label=exposure_label(exposure, camera.frame_rate),
@@ -177,37 +178,10 @@ def _setting(
 
 
 def deepest_contrast(
-    groups: Sequence[Sequence[Family]],
-    camera: Camera,
-    exposure: float,
-    delays: FloatArray | None,
-    tolerance: float,
+    groups: Sequence[Sequence[Family]], seen: Windows, delays: FloatArray | None, tolerance: float
 ) -> float:
     """Largest contrast of any channel over the tolerance, 0..1; `groups` are the families of each channel."""
-    seen = windows(exposure, binning=camera.line_binning, line_time=camera.line_time)
     return max(contrast.worst(families, seen, delays, tolerance) for families in groups)
-
-
-def deepest_pulsing(
-    groups: Sequence[Sequence[Family]], camera: Camera, exposure: float, tolerance: float
-) -> float | None:
-    """
-    Largest frame flicker of any channel over the tolerance, 0..1, where it is not smaller than the bands anyway.
-
-    None behind a rolling shutter that shows a band or more, since the lines average it down, and where frame rate
-    or readout time are unknown. With less than a band in the picture it is the bound of all lines at once.
-    """
-    slowest = min((family.frequency for families in groups for family in families), default=math.inf)
-    delays = frame_delays(camera)
-    if delays is None or (camera.shutter == "rolling" and camera.readout_time is None):
-        return None
-    if camera.shutter == "rolling" and slowest * (camera.readout_time or 0.0) >= 1.0:
-        return None
-    seen = windows(exposure)
-    return max(
-        contrast.worst(families, seen, None if tolerance else contrast.moving(families, delays), tolerance)
-        for families in groups
-    )
 
 
 def _with_window(
@@ -220,7 +194,8 @@ def _with_window(
         return setting
 
     def clean(exposure: float) -> bool:
-        return deepest_contrast(groups, camera, exposure, delays, 0.0) <= limit
+        seen = windows(exposure, binning=camera.line_binning, line_time=camera.line_time)
+        return deepest_contrast(groups, seen, delays, 0.0) <= limit
 
     below, above = (_edge(setting.exposure_s, clean, sign) for sign in (-1.0, 1.0))
     degrees = None if setting.angle_deg is None else (setting.angle_deg * below, setting.angle_deg * above)

@@ -1,0 +1,94 @@
+"""`flicker bands`: what a camera will record of a light, and what to dial in."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import click
+
+from flicker.cli.options import (
+    PERCENT,
+    STAGGERED,
+    TIME,
+    camera_from_options,
+    camera_options,
+    light_from_options,
+    light_options,
+    several,
+)
+from flicker.cli.output import colour_wanted, make_folder, print_words, terminal_width, write_json
+
+_what_to_predict = several(
+    click.option(
+        "--exposure",
+        "exposures",
+        type=STAGGERED,
+        multiple=True,
+        help="Exposure, repeatable; 1/50+1/400 is a sensor that takes both, one after the other, and adds them up.",
+    ),
+    click.option("--tolerance", type=PERCENT, help="How far the light's frequency may be off."),
+    click.option("--wander", type=PERCENT, help="How far it wanders to either side while the camera looks (dither)."),
+    click.option("--light-scan", type=TIME, help="By how much a scanning backlight lags at the end of the picture."),
+    click.option("--light-scan-against", is_flag=True, help="The backlight scans against the way the lines are read."),
+    click.option("--contrast-limit", type=PERCENT, help="Up to which bands a setting is called clean; 1 if left out."),
+    click.option("--viewing-distance", type=float, metavar="HEIGHTS", help="Of the eye, in picture heights."),
+    click.option("--grade-gain", type=float, metavar="FACTOR", help="By which grading raises the contrast."),
+)
+_outputs = several(
+    click.option("--json", "json_target", metavar="FILE|-", help="Write the answer as JSON; - for standard output."),
+    click.option("--figures", metavar="DIR", help="Write pictures of the predicted frames into a folder."),
+)
+
+
+@click.command()
+@click.argument("capture", metavar="[CAPTURE]", required=False)
+@light_options
+@camera_options
+@_what_to_predict
+@_outputs
+def command(
+    capture: str | None,
+    exposures: tuple[tuple[float, ...], ...],
+    tolerance: float | None,
+    wander: float | None,
+    light_scan: float | None,
+    light_scan_against: bool,
+    contrast_limit: float | None,
+    viewing_distance: float | None,
+    grade_gain: float | None,
+    json_target: str | None,
+    figures: str | None,
+    **options: Any,
+) -> None:
+    """Predict what a camera will record of a light: bands, how deep, how many, which way they roll.
+
+    The light comes from a CAPTURE, or is typed in with --frequency and --duty. The camera comes from a file or from
+    options; what is unknown of it leaves gaps in the answer, which say how to fill them. Contrasts are
+    (max - min)/(max + min) of light within one frame, those of the worst frame.
+
+    Example:
+
+        flicker bands --frequency 240 --duty 0.05 --line-time 14.8us --lines 1080 --frame-rate 25 --exposure 1/50
+    """
+    from flicker.camera.answer import predict_all
+    from flicker.report.bands import bands_words
+
+    light = light_from_options(capture, options)
+    camera = camera_from_options(options)
+    answer = predict_all(
+        light,
+        camera,
+        exposures=exposures,
+        tolerance=tolerance,
+        limit=contrast_limit,
+        light_scan=-(light_scan or 0.0) if light_scan_against else light_scan or 0.0,
+        wander=wander or 0.0,
+        viewing_distance=viewing_distance,
+        gain=1.0 if grade_gain is None else grade_gain,
+    )
+    if figures is not None:
+        from flicker.plots.frame import save_frames
+
+        save_frames(answer, make_folder(figures))
+    write_json(answer.to_dict(), json_target)
+    print_words(bands_words(answer, width=terminal_width(), colour=colour_wanted()), json_target)
