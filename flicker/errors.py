@@ -12,6 +12,7 @@ class ExitStatus(IntEnum):
     LIMIT_BROKEN = 1  # `check`: at least one fail
     UNUSABLE_INPUT = 2  # the words or a file are wrong
     UNDECIDED = 3  # `check`: no fail, but at least one undecided
+    INTERRUPTED = 130  # stopped at the keyboard
 
 
 class FlickerError(Exception):

@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import importlib
 import sys
+from collections.abc import Sequence
 from pathlib import Path
-from typing import Any
+from typing import Any, NoReturn
 
 import click
 
 from flicker import __version__
-from flicker.errors import FlickerError
+from flicker.errors import ExitStatus, FlickerError
 from flicker.registry import did_you_mean
 
 _HELPERS = {"__init__", "options", "output"}
@@ -40,13 +41,31 @@ class Program(click.Group):
             raise click.UsageError(did_you_mean("command", args[0], self.list_commands(ctx)), ctx)
         return super().resolve_command(ctx, args)
 
-    def main(self, *args: Any, **kwargs: Any) -> Any:
-        """Run; a `FlickerError` becomes one sentence on standard error and its exit status."""
+    def main(self, args: Sequence[str] | None = None, prog_name: str | None = None, **extra: Any) -> Any:
+        """Run; what goes wrong becomes one sentence on standard error and its exit status."""
         try:
-            return super().main(*args, **kwargs)
+            answer = super().main(args, prog_name, **{**extra, "standalone_mode": False})
         except FlickerError as error:
-            print(f"flicker: {error}", file=sys.stderr)
-            sys.exit(int(error.exit_status))
+            _fail(str(error), error.exit_status)
+        except click.exceptions.NoArgsIsHelpError as error:
+            error.show()
+            sys.exit(int(ExitStatus.UNUSABLE_INPUT))
+        except click.UsageError as error:
+            where = error.ctx.command_path if error.ctx else "flicker"
+            message = error.format_message()
+            _fail(f"{message[:1].lower()}{message[1:]} ({where} --help)", ExitStatus.UNUSABLE_INPUT)
+        except click.ClickException as error:
+            _fail(error.format_message(), ExitStatus.UNUSABLE_INPUT)
+        except click.Abort:
+            _fail("interrupted", ExitStatus.INTERRUPTED)
+        if extra.get("standalone_mode", True):
+            sys.exit(answer if isinstance(answer, int) else int(ExitStatus.DONE))
+        return answer
+
+
+def _fail(sentence: str, status: ExitStatus) -> NoReturn:
+    print(f"flicker: {' '.join(sentence.split())}", file=sys.stderr)
+    sys.exit(int(status))
 
 
 @click.group(cls=Program, context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})

@@ -31,10 +31,10 @@ def what(channel: ChannelReport) -> str:
         return f"no frequency: {short_reason(frequency, channel.notes)}"
     words = quantity(frequency.value, "Hz", 6)
     origin = channel.families[0].origin if channel.families else ""
-    words += f" ({origin})" if origin else ""
+    words += f", {origin}" if origin else ""
     duty = channel.measures.get("duty_cycle")
     if duty is not None and duty.value is not None and "PWM" in origin:
-        words += f", bright for {quantity(100 * duty.value, '%', 3)} of each period"
+        words += f"; bright for {quantity(100 * duty.value, '%', 3)} of each period"
     return words
 
 
@@ -84,7 +84,9 @@ def next_step(channel: ChannelReport) -> str:
         return f"mend the capture first: {broken.message}"
     place = channel.risk_region
     if place is None:
-        return "give the capture what its depth needs, then measure again"
+        unknown = channel.measures["percent_flicker"]
+        doubt = next((note.code for note in channel.notes if note.message == unknown.reason), "what hides the depth")
+        return f"cure {doubt}, then measure again"
     if place.modulation is None or place.region == "no-observable-effect":
         return "nothing: the strictest practice of this standard is kept"
     low_risk, no_effect = risk_curves()

@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 import math
-import textwrap
 from collections.abc import Sequence
 
 from flicker.limits import OUTCOMES, Curve, Limit, Verdict, overall
 from flicker.report.figures import measure_name, measured, quantity
+from flicker.report.typesetting import wrap
 from flicker.results import Measure
 
 OUTCOME_WORDS = {"fail": "FAIL", "undecided": "UNDECIDED", "pass": "pass", "not-applicable": "not applicable"}
@@ -42,11 +42,11 @@ def verdict_words(title: str, verdicts: Sequence[Verdict], advice: Sequence[str]
         Headline, advice, a row for each verdict (fails first), the decision rule.
     """
     lines = [f"{title}: {headline(verdicts)}"]
-    lines += [line for sentence in advice for line in _wrapped(sentence, width, "  ")]
+    lines += [line for sentence in advice for line in wrap(sentence, width, "  ")]
     lines.append("")
     lines += _table(sorted(verdicts, key=lambda verdict: OUTCOMES.index(verdict.verdict)), width)
     if verdicts:
-        lines += ["", *_wrapped(f"Decision rule, {_RULES[verdicts[0].decision]}.", width, "")]
+        lines += ["", *wrap(f"Decision rule, {_RULES[verdicts[0].decision]}.", width, "")]
     return "\n".join(lines)
 
 
@@ -82,7 +82,7 @@ def _table(verdicts: Sequence[Verdict], width: int) -> list[str]:
     for row, verdict in zip(rows, verdicts, strict=True):
         lines.append(_row(row, wide))
         if verdict.reason and verdict.verdict != "pass":
-            lines += _wrapped(verdict.reason, width, " " * (wide[0] + 2))
+            lines += wrap(verdict.reason, width, " " * (wide[0] + 2))
     return lines
 
 
@@ -146,15 +146,15 @@ def limits_words(limits: Sequence[Limit], *, detailed: bool = False, width: int 
     for limit in limits:
         if limit.title != sheet:
             sheet = limit.title
-            lines += ["", *_wrapped(limit.title, width, "")]
-            lines += _wrapped(f"Source: {limit.source}; basis: {limit.basis}", width, "  ")
+            lines += ["", *wrap(limit.title, width, "")]
+            lines += wrap(f"Source: {limit.source}; basis: {limit.basis}", width, "  ")
         parts = [allowance_words(limit), f"{limit.clause}; {_span(limit)}"]
         if detailed:
             parts += [f"holds for {limit.applies}", *_notes(limit)]
-        first, *rest = [line for part in parts for line in _wrapped(part, width, " " * column)]
+        first, *rest = [line for part in parts for line in wrap(part, width, " " * column)]
         lines += [f"  {limit.id}".ljust(column) + first.lstrip(), *rest]
     if any(isinstance(limit.bound, Curve) for limit in limits):
-        lines += ["", *_wrapped(_LEGEND, width, "")]
+        lines += ["", *wrap(_LEGEND, width, "")]
     if not detailed:
         lines += ["Name a limit to see what it holds for: flicker limits ID"]
     return "\n".join(lines).strip("\n")
@@ -181,7 +181,3 @@ def allowance_words(limit: Limit) -> str:
         end = "" if math.isinf(band.end) else f" to {band.end:g} Hz" if start else f" below {band.end:g} Hz"
         spans.append(amount + start + end)
     return f"{name} ≤ {', '.join(spans)}"
-
-
-def _wrapped(text: str, width: int, indent: str) -> list[str]:
-    return textwrap.wrap(text, width, initial_indent=indent, subsequent_indent=indent, break_long_words=False)

@@ -23,8 +23,8 @@ def test_the_text_holds_the_value_to_a_twentieth_of_its_interval(value, share, u
     half = value * share
     text, interval = measured(Measure(value, unit, value - half, value + half))
     printed = number(text, unit)
-    unit_step = printed and abs(printed / float(text.split()[0]))
-    assert abs(printed - value) <= max(half / 19, 0.6e-6 * unit_step)
+    coarsest = 0.6e-3 if unit == "%" else 0.6e-6 * (printed and abs(printed / float(text.split()[0])))
+    assert abs(printed - value) <= max(half / 19, coarsest)
     assert interval.startswith("± ")
 
 
