@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import importlib
 import sys
-from collections.abc import Sequence
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any, NoReturn
 
@@ -41,10 +41,11 @@ class Program(click.Group):
             raise click.UsageError(did_you_mean("command", args[0], self.list_commands(ctx)), ctx)
         return super().resolve_command(ctx, args)
 
-    def main(self, args: Sequence[str] | None = None, prog_name: str | None = None, **extra: Any) -> Any:
+    def main(self, *args: Any, **kwargs: Any) -> Any:
         """Run; what goes wrong becomes one sentence on standard error and its exit status."""
+        run: Callable[..., Any] = super().main
         try:
-            answer = super().main(args, prog_name, **{**extra, "standalone_mode": False})
+            answer = run(*args, **{**kwargs, "standalone_mode": False})
         except FlickerError as error:
             _fail(str(error), error.exit_status)
         except click.exceptions.NoArgsIsHelpError as error:
@@ -58,7 +59,7 @@ class Program(click.Group):
             _fail(error.format_message(), ExitStatus.UNUSABLE_INPUT)
         except click.Abort:
             _fail("interrupted", ExitStatus.INTERRUPTED)
-        if extra.get("standalone_mode", True):
+        if kwargs.get("standalone_mode", True):
             sys.exit(answer if isinstance(answer, int) else int(ExitStatus.DONE))
         return answer
 
