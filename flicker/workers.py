@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
-import multiprocessing
 import os
+import threading
 from collections import deque
 from collections.abc import Callable, Iterator, Sequence
-from concurrent.futures import Future, ProcessPoolExecutor
-from typing import TypeVar
+from typing import TYPE_CHECKING, TypeVar
 
 from flicker.errors import InputError
+
+if TYPE_CHECKING:
+    from concurrent.futures import Future
 
 Item = TypeVar("Item")
 Result = TypeVar("Result")
@@ -46,9 +48,13 @@ def side_by_side(function: Callable[[Item], Result], items: Sequence[Item], work
     if workers == 1 or len(items) < 2:
         yield from map(function, items)
         return
+    import multiprocessing
+    from concurrent.futures import ProcessPoolExecutor
+
     before = {name: os.environ.get(name) for name in _ONE_THREAD}
     os.environ.update(dict.fromkeys(_ONE_THREAD, "1"))  # the items are the parallel part
-    pool = ProcessPoolExecutor(min(workers, len(items)), mp_context=multiprocessing.get_context("spawn"))
+    spawn = multiprocessing.get_context("spawn")
+    pool = ProcessPoolExecutor(min(workers, len(items)), mp_context=spawn, initializer=_end_with_parent)
     waiting: deque[Future[Result]] = deque()
     try:
         for item in items:
@@ -64,3 +70,15 @@ def side_by_side(function: Callable[[Item], Result], items: Sequence[Item], work
                 os.environ.pop(name, None)
             else:
                 os.environ[name] = value
+
+
+def _end_with_parent() -> None:
+    """See to it that a worker does not outlive a program that was killed."""
+    parent = multiprocessing.parent_process()
+
+    def watch() -> None:
+        if parent is not None:
+            parent.join()
+            os._exit(1)
+
+    threading.Thread(target=watch, daemon=True).start()
