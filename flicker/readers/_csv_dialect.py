@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import re
 from collections import Counter
 from collections.abc import Mapping, Sequence
@@ -76,7 +77,7 @@ def find_dialect(lines: Sequence[bytes]) -> Dialect | None:
     """Choose the dialect in which the numbers of these lines cover the most text; None if there are no numbers."""
     quoted = sum(b'"' in line for line in lines) * 2 > len(lines)
     best, best_share = None, 0.0
-    for delimiter, decimal in _CANDIDATES:
+    for delimiter, decimal in (*_CANDIDATES, *(((b",", b","),) if quoted else ())):
         dialect = Dialect(delimiter, decimal, quoted=quoted)
         covered = total = 0
         for line in lines:
@@ -97,15 +98,17 @@ def _decimal_is_delimiter(lines: Sequence[bytes]) -> bool:
     Then nothing but whole numbers stands between commas, the second of each pair has no sign, and it shows what the
     second of two whole numbers never shows: a leading zero, or an exponent after a number that has none.
     """
-    telling = 0
+    telling, firsts = 0, []
     for line in lines:
         cells = [cell.strip() for cell in line.strip(b"\r ,").split(b",")]
         if b"." in line or len(cells) % 2 or not all(re.fullmatch(rb"[-+]?\d+", cell) for cell in cells[::2]):
             return False
         if not all(re.fullmatch(rb"\d+(?:[eE][-+]?\d+)?", cell) for cell in cells[1::2]):
             return False
-        telling += any(re.fullmatch(rb"0\d+|\d+[eE]-\d+", cell) for cell in cells[1::2])
-    return telling * 10 >= len(lines) > 0
+        telling += any(re.fullmatch(rb"0\d+(?:[eE].*)?|\d+[eE]-\d+", cell) for cell in cells[1::2])
+        firsts.append(int(cells[0]))
+    counting = all(after - before == firsts[1] - firsts[0] > 0 for before, after in itertools.pairwise(firsts))
+    return telling * 100 >= len(lines) > 1 and not counting
 
 
 def _spread(lines: Sequence[bytes], count: int) -> list[bytes]:

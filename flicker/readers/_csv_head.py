@@ -245,7 +245,9 @@ def _names_of(line: bytes, shape: TableShape) -> dict[int, str] | None:
         cells = [cell.strip(" \"'\r\t") for cell in cells]
         if len(cells) <= last or (shape.dialect.delimiter == b" " and len(cells) != shape.fields):
             continue
-        if any(_VALUE.fullmatch(cells[column]) for column in shape.numeric) or _FACT.fullmatch(cells[0]):
+        if any(_VALUE.fullmatch(cells[column]) for column in shape.numeric) or (
+            len(cells) < 3 and _FACT.fullmatch(cells[0])
+        ):
             continue
         named = {column: cell for column, cell in enumerate(cells) if cell}
         if any(column in named for column in shape.numeric):

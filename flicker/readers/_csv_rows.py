@@ -37,6 +37,8 @@ class RowReader:
     def __init__(self, dialect: Dialect, wanted: tuple[int, ...]) -> None:
         self._dialect = dialect
         self._wanted = wanted
+        ambiguous = dialect.decimal == dialect.delimiter and not dialect.paired
+        self._decimal = b"." if ambiguous else dialect.decimal  # once the quotes are off
 
     def read(self, piece: Bytes) -> tuple[FloatArray, Kinds]:
         """
@@ -71,7 +73,7 @@ class RowReader:
         for _ in range(_LAYOUTS):
             example = lines[0].tobytes()
             spans = self._spans(example)
-            layout = layout_like(example, spans, self._dialect.decimal) if spans else None
+            layout = layout_like(example, spans, self._decimal) if spans else None
             if layout is None:
                 break
             found = np.empty((len(spans), len(lines)))
@@ -141,7 +143,7 @@ class RowReader:
         empty = np.ones(len(first), dtype=bool)
         for index, column in enumerate(self._wanted):
             begins, ends = self._cell(column, starts, stops, first)
-            values[index, whole], bad = numbers(piece, begins, ends, self._dialect.decimal)
+            values[index, whole], bad = numbers(piece, begins, ends, self._decimal)
             unreadable += bad
             empty &= begins == ends
         kinds[whole] = np.select(
@@ -165,7 +167,7 @@ class RowReader:
         lengths = np.diff(np.concatenate(([-1], ends)))
         inside = ((passed - np.repeat(at_line, lengths)) & 1).astype(bool)
         piece = piece.copy()
-        piece[inside & (piece == ord(self._dialect.delimiter))] = ord(self._dialect.decimal)
+        piece[inside & (piece == ord(self._dialect.delimiter))] = ord(self._decimal)
         piece[quotes] = _BLANK
         return piece
 

@@ -128,7 +128,7 @@ def _in_order(times: FloatArray, readings: list[FloatArray], notes: list[Note]) 
         return times, readings
     order = np.argsort(times, kind="stable")
     sorted_steps = np.diff(times[order])
-    if sorted_steps.min() > 0.3 * typical or (sorted_steps.min() >= 0 and len(back) == len(times) - 1):
+    if sorted_steps.min() > 0.3 * np.median(sorted_steps) or (sorted_steps.min() >= 0 and len(back) == len(times) - 1):
         notes.append(Note("reordered", "info", "the rows were not in order of time and have been sorted by it"))
         return times[order], [column[order] for column in readings]
     bounds = [0, *(back + 1).tolist(), len(times)]
@@ -182,9 +182,9 @@ def _longest(
 
 def _resolution(times: FloatArray) -> float:
     """Place of the last decimal that the times use where they are large, 0 if there is none. [s]"""
-    size = np.abs(times)
-    some = times[size >= 0.5 * max(size[0], size[-1])]
-    some = np.concatenate((some[:: max(1, len(some) // 5000)], some[-50:]))
+    largest = max(abs(times[0]), abs(times[-1]))
+    some = times[:: max(1, len(times) // 10_000)]
+    some = np.append(some[np.abs(some) >= 10.0 ** np.floor(np.log10(largest))], times[-1])
     for decimals in range(16):
         scaled = some * 10.0**decimals
         doubt = np.abs(scaled).max() * 1e-15
@@ -315,7 +315,7 @@ def _resampled(
         )
     )
     history.append(f"interpolated to even times, {1 / step:.6g} Hz")
-    return Evenly([np.concatenate(column) for column in columns], 1 / step, tuple(segments), notes, history)
+    return Evenly([np.concatenate(column) for column in columns], tidy(1 / step), tuple(segments), notes, history)
 
 
 # rate

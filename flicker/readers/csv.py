@@ -149,13 +149,11 @@ def _traces(
     path: Path, table: Table, shape: TableShape, head: Head, columns: _Columns, options: ReadOptions
 ) -> tuple[Trace, ...]:
     notes: list[Note] = []
-    readings = table.columns[len(table.columns) - len(columns.readings) :]
-    overloads = [_without_overloads(path, column) for column in readings]
-    table.columns = table.columns[: len(table.columns) - len(columns.readings)]
+    overloads = [_without_overloads(path, column) for column in table.columns[-len(columns.readings) :]]
     if columns.time is not None:
-        base = _timed(path, table.columns.pop(), readings, head, columns.time, options, notes)
+        base = _timed(path, table.columns.pop(0), table.columns, head, columns.time, options, notes)
     else:
-        base = _counted(path, table, readings, head, columns, options, notes)
+        base = _counted(path, table, head, columns, options, notes)
     common = (f"a table with {shape.dialect}", *_remarks(table), *base.history)
     traces = []
     for column, light, overload in zip(columns.readings, base.readings, overloads, strict=True):
@@ -228,7 +226,6 @@ def _guessed_unit(times: FloatArray, rate: float | None) -> tuple[str, str]:
 def _counted(
     path: Path,
     table: Table,
-    readings: list[FloatArray],
     head: Head,
     columns: _Columns,
     options: ReadOptions,
@@ -236,7 +233,7 @@ def _counted(
 ) -> Evenly:
     """Use a stated rate for rows without times."""
     start = head.first.value if head.first else 0.0
-    rows = len(readings[0])
+    rows = table.rows
     if options.sample_rate is not None:
         rate, source = options.sample_rate, "as stated by --sample-rate"
     elif head.rate is not None:
@@ -248,10 +245,10 @@ def _counted(
         counts = f"column {columns.index + 1} only counts the rows, and " if columns.index is not None else ""
         raise InputError(f"{path}: {counts}neither a time column nor a sample rate is in it; state --sample-rate")
     if table.breaks:
-        readings, table.damaged = longest_part(readings, table.breaks, notes), []
-        rows = len(readings[0])
-    numbers = table.row_numbers() if table.damaged else np.arange(rows)
-    base = evenly(start + numbers / rate, readings, rate)
+        readings = longest_part(table.columns, table.breaks, notes)
+        base = evenly(start + np.arange(len(readings[0])) / rate, readings, rate)
+    else:
+        base = evenly(start + table.row_numbers() / rate, table.columns, rate)
     base.history[-1:] = [f"sample rate {rate:.8g} Hz {source}"]
     return base
 
