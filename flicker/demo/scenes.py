@@ -110,6 +110,7 @@ def softened(waveform: Waveform, share: float) -> Waveform:
         percent_flicker=float(100 * (brightest - darkest) / (brightest + darkest)),
         flicker_index=share * waveform.flicker_index,
         rms_modulation=share * waveform.rms_modulation,
+        duty_cycle=None,
     )
 
 

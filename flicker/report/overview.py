@@ -16,6 +16,8 @@ if TYPE_CHECKING:
     from flicker.analysis import CaptureReport, ChannelReport
 
 _HEAD = ("capture", "frequency", "flicker", "index", f"risk ({STANDARD})")
+_LESSER_COLUMNS = (3, 1)  # left out first where the terminal is narrow
+_NARROWEST_NAME = 16
 
 
 @dataclass(frozen=True)
@@ -36,17 +38,29 @@ def overview_entries(capture: CaptureReport) -> list[OverviewEntry]:
 
 
 def overview(entries: Sequence[OverviewEntry], width: int, paint: Paint) -> Iterable[str]:
-    """Hold all channels side by side, the riskiest named below."""
-    columns = [max(len(row[column]) for row in [_HEAD, *(one.cells for one in entries)]) for column in range(5)]
-    columns[0] = max(12, min(columns[0], width - sum(columns[1:]) - 10))
-    yield "  " + paint.faint(_line(_HEAD, columns))
-    for entry in entries:
-        yield "  " + _line(entry.cells, columns)
+    """Hold all channels side by side, the riskiest named below; on a narrow terminal without the lesser columns."""
+    rows = [_HEAD, *(entry.cells for entry in entries)]
+    sizes = [max(len(row[column]) for row in rows) for column in range(len(_HEAD))]
+    shown = list(range(len(_HEAD)))
+    for lesser in _LESSER_COLUMNS:
+        if _NARROWEST_NAME + sum(sizes[column] + 2 for column in shown[1:]) + 2 > width:
+            shown.remove(lesser)
+    sizes[0] = max(_NARROWEST_NAME, min(sizes[0], width - sum(sizes[column] + 2 for column in shown[1:]) - 2))
+    head, *lines = ("  ".join(_cell(row[column], column, sizes[column]) for column in shown).rstrip() for row in rows)
+    yield "  " + paint.faint(head)
+    yield from ("  " + line for line in lines)
     judged = [(entry.severity, entry) for entry in entries if entry.severity is not None]
     if len(judged) > 1:
         _, worst = max(judged, key=lambda pair: pair[0])
         yield ""
         yield from wrap(f"riskiest: {worst.cells[0]}: {worst.risk}", width, "  ", hang=2)
+
+
+def _cell(text: str, column: int, size: int) -> str:
+    """Set numbers to the right, words to the left; of a long name the end stays, for that tells files apart."""
+    if 0 < column < len(_HEAD) - 1:
+        return f"{text:>{size}}"
+    return f"{text:<{size}}" if len(text) <= size else "…" + text[1 - size :]
 
 
 def channel_title(capture: CaptureReport, channel: ChannelReport) -> str:
@@ -66,9 +80,3 @@ def _entry(capture: CaptureReport, channel: ChannelReport) -> OverviewEntry:
     cells = (channel_title(capture, channel), *texts, region)
     flickers = place is not None and place.modulation is not None
     return OverviewEntry(cells, flickers, severity(channel) if place else None, risk(channel))
-
-
-def _line(row: tuple[str, ...], columns: list[int]) -> str:
-    name = row[0] if len(row[0]) <= columns[0] else "…" + row[0][1 - columns[0] :]
-    numbers = "  ".join(f"{text:>{size}}" for text, size in zip(row[1:4], columns[1:4], strict=True))
-    return f"{name:<{columns[0]}}  {numbers}  {row[4]}".rstrip()

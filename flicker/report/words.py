@@ -18,7 +18,7 @@ _INDENT = "  "
 _NOTE_MARKS = {"error": "!!", "warning": "! ", "info": "i "}
 _COLOURS = {"no-observable-effect": "36", "low-risk": "34", "above-low-risk": "35"}  # beside marks and words
 _LINES_SHOWN = 20
-_CAMERA_HINT = f"{_INDENT}what a camera will record of it: flicker bands CAPTURE --camera CAMERA.toml"
+_CAMERA_HINT = "what a camera will record of it: flicker bands CAPTURE --camera CAMERA.toml"
 
 
 def report_words(report: Report, *, width: int = 100, colour: bool = False, verbose: bool = False) -> str:
@@ -58,7 +58,7 @@ def closing_words(entries: Sequence[OverviewEntry], *, width: int = 100, colour:
     paint = Paint(colour=colour)
     blocks = ["\n".join(overview(entries, width, paint))] if len(entries) > 1 else []
     if any(entry.flickers for entry in entries):
-        blocks.append(paint.faint(_CAMERA_HINT))
+        blocks.append("\n".join(paint.faint(line) for line in wrap(_CAMERA_HINT, width, _INDENT, hang=2)))
     return blocks
 
 

@@ -1,0 +1,143 @@
+import re
+from pathlib import Path
+
+import pytest
+
+import flicker
+from flicker.limits import risk_curves
+from flicker.limits.region import REGIONS
+from flicker.plots.style import REGION_MARKERS
+from flicker.report.answer import REGION_MARKS, REGION_WORDS, least_frequency
+from flicker.report.words import report_words
+from flicker.trace import Capture
+from flicker.waveforms import pwm, rectified_sine, sampled, sine
+
+FIXTURES = Path(__file__).resolve().parents[2] / "fixtures"
+
+
+def report_of(*waves, **how):
+    settings = {"sample_rate": 20_000.0, "duration": 0.3, "start": 0.0013, "noise": 0.001, "seed": 1, "unit": "V"}
+    traces = [sampled(wave.at, **{**settings, **how}) for wave in waves]
+    return flicker.measure(*(Capture((trace,), path=Path(f"light-{n}.csv")) for n, trace in enumerate(traces, 1)))
+
+
+def answers(text):
+    """The four lines of the answer, by their label."""
+    joined = re.sub(r"\n {9}(?=\S)", " ", text)
+    return dict(re.findall(r"^  (What|Depth|Risk|Next) +(.+)$", joined, re.M))
+
+
+def test_the_answer_stands_at_the_top():
+    words = report_words(report_of(pwm(240.3, 0.1)))
+    assert [line.split()[0] for line in words.splitlines()[3:8] if line[2] != " "] == ["What", "Depth", "Risk", "Next"]
+    answer = answers(words)
+    assert answer["What"].startswith("240.3 Hz, PWM")
+    assert answer["Depth"] == "percent flicker 100 %: the light goes out in every cycle"
+    assert answer["Risk"].startswith("▲ above low risk: a spectral line of 197 % at 240.3 Hz, low risk ends at 19.2 %")
+    assert answer["Next"] == "for low risk, shrink the modulation 10.3-fold or raise the frequency to 1250 Hz"
+
+
+@pytest.mark.parametrize(
+    ("wave", "mark", "depth", "next_step"),
+    [
+        (sine(1000.0, 0.1), "●", "the darkest moment keeps 81.8 % of the brightest", "nothing"),
+        (sine(240.0, 0.12), "◆", "keeps 78.6 %", "for no observable effect, shrink the modulation 1.5"),
+        (sine(240.0, 0.5), "▲", "keeps 33", "or raise the frequency to 62"),
+        (rectified_sine(50.02), "▲", "goes out", "for low risk, shrink the modulation 12.5-fold"),
+    ],
+)
+def test_says_how_deep_how_risky_and_what_to_do(wave, mark, depth, next_step):
+    """Bounds of IEEE 1789-2015 (figures from memory): 0.08 f for low risk, f / 30 for no observable effect."""
+    answer = answers(report_words(report_of(wave)))
+    assert answer["Risk"].startswith(f"{mark} ")
+    assert depth in answer["Depth"]
+    assert next_step in answer["Next"]
+    assert ("raise" in answer["Next"]) is (wave.name == "sine" and mark != "●"), (
+        "mains ripple has no frequency to raise"
+    )
+
+
+def test_the_advised_frequency_is_the_lowest_that_keeps_the_curve():
+    (capture,) = report_of(sine(240.0, 0.5)).captures
+    low_risk, _ = risk_curves()
+    frequency = least_frequency(capture.channels[0], 240.0, low_risk)
+    assert frequency == pytest.approx(50 / 0.08, rel=5e-3)
+    pulse = report_of(pwm(100.0, 0.3)).captures[0].channels[0]
+    assert least_frequency(pulse, 100.0, low_risk) == pytest.approx(1250.0)
+
+
+def test_steady_light_is_called_steady():
+    steady = sine(100.0, 0.0)
+    words = report_words(report_of(steady))
+    answer = answers(words)
+    assert answer["What"].startswith("no frequency: ")
+    assert re.fullmatch(r"percent flicker 0 %: steady within 0\.0\d+ %", answer["Depth"])
+    assert "no modulation was found" in answer["Risk"]
+    assert "flicker bands" not in words
+
+
+def test_a_lost_mean_is_told_once_with_its_cure():
+    report = flicker.measure(flicker.read(FIXTURES / "corridor-lamp-recorder.wav"))
+    words = report_words(report)
+    answer = answers(words)
+    assert answer["What"].startswith("99.96 Hz")
+    assert answer["Depth"] == "not known: see ac-coupled below"
+    assert answer["Next"] == "cure ac-coupled, then measure again"
+    assert words.count("--mean") == 1
+    assert "percent flicker, flicker index, RMS modulation: see ac-coupled below" in words
+
+
+def test_every_measure_is_printed_or_excused():
+    report = report_of(pwm(240.3, 0.3))
+    words = report_words(report)
+    for name in report.captures[0].channels[0].measures:
+        spelled = name.replace("_", " ").replace("rms", "RMS").replace("svm", "SVM").replace("pst lm", "Pst LM")
+        assert re.sub(r" (\d+)hz$", r" \1 Hz", spelled) in words, name
+
+
+@pytest.mark.parametrize("width", [40, 60, 80, 132])
+def test_no_line_is_wider_than_the_terminal(width):
+    report = report_of(pwm(240.3, 0.3), rectified_sine(50.0), sine(100.0, 0.0))
+    words = report_words(report, width=width, verbose=True)
+    assert max(map(len, words.splitlines())) <= max(width, 60)  # the tables do not shrink below 60
+    for line in words.splitlines():
+        assert not re.search(r"(^| )\d[\d.]*$", line) or "samples" in line or "±" in line or " to " in line, line
+
+
+def test_colour_only_adds_to_the_words():
+    report = report_of(pwm(240.3, 0.3), sine(240.0, 0.12))
+    plain = report_words(report)
+    coloured = report_words(report, colour=True)
+    assert "\x1b[" in coloured
+    assert "\x1b" not in plain
+    assert re.sub(r"\x1b\[[\d;]*m", "", coloured) == plain
+
+
+def test_several_captures_are_laid_side_by_side_and_the_riskiest_is_named():
+    words = report_words(report_of(sine(1000.0, 0.1), pwm(240.3, 0.3), sine(240.0, 0.12)))
+    table = words[words.rindex("  capture ") :]
+    rows = table.splitlines()
+    assert [row.split()[0] for row in rows[1:4]] == ["light-1.csv", "light-2.csv", "light-3.csv"]
+    assert "riskiest: light-2.csv" in table
+    for row, mark in zip(rows[1:4], "●▲◆", strict=True):
+        assert mark in row
+
+
+def test_verbose_adds_methods_lines_and_history():
+    report = flicker.measure(flicker.read(FIXTURES / "bridge-display-night.csv", dark_level=0.012))
+    short, long = (report_words(report, verbose=verbose) for verbose in (False, True))
+    assert len(long.splitlines()) > len(short.splitlines()) + 20
+    for more in ("least squares", "spectral lines, strongest first", "dark level 0.012 V"):
+        assert more in long
+    assert "least squares" not in short
+
+
+def test_notes_are_sorted_by_weight():
+    report = flicker.measure(flicker.read(FIXTURES / "bridge-display-night.csv"))
+    words = report_words(report)
+    assert re.search(r"^  i  dark-assumed: ", words, re.M)
+
+
+def test_every_region_has_its_mark_and_its_words():
+    assert set(REGION_MARKS) == set(REGION_WORDS) == set(REGION_MARKERS) == set(REGIONS)
+    assert len(set(REGION_MARKS.values())) == len(REGIONS)
