@@ -141,6 +141,10 @@ def read(
             raise
         except OSError as error:
             raise UnreadableFileError(f"{path}: cannot be read: {error.strerror or error}") from error
+        except MemoryError as error:
+            raise UnreadableFileError(
+                f"{path}: does not fit into memory; read fewer channels or record less"
+            ) from error
         return dataclasses.replace(capture, path=path, sha256=fingerprint.hexdigest())
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
+from contextlib import ExitStack, contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Literal
@@ -13,6 +13,7 @@ import numpy.typing as npt
 
 from flicker.errors import InputError, UnreadableFileError
 from flicker.readers import ReadOptions, reader
+from flicker.readers._riff import PatchedFile, patches_for
 from flicker.trace import Capture, FloatArray, Trace
 
 if TYPE_CHECKING:
@@ -54,9 +55,11 @@ class SoundFacts:
 def _opened(path: Path) -> Iterator[soundfile.SoundFile]:
     import soundfile
 
+    patches = patches_for(path)
     try:
-        with soundfile.SoundFile(str(path)) as sound:
-            yield sound
+        with ExitStack() as opened:
+            source = opened.enter_context(PatchedFile(path, patches)) if patches else str(path)
+            yield opened.enter_context(soundfile.SoundFile(source))
     except soundfile.LibsndfileError as error:
         reason = str(error.error_string).strip().rstrip(".")
         raise UnreadableFileError(
