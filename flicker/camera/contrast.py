@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
@@ -17,8 +18,10 @@ _INDEX = (np.arange(COARSE)[:, None] + np.arange(COARSE)[None, :]) % COARSE  # [
 STANDS = 60.0  # a light that takes longer than this to move by one cycle against the frames stands still [s]
 
 _CLOSE = 1e-3  # share of the contrast by which lines may miss the deepest pair of phases without a closer look
+_SAME = 1e-4  # the same, where the lines themselves are asked for
 _STEP = 1.0 / 64.0  # of the exposure in cycles, between the frequencies that are looked at first
 _MOST_STEPS = 257
+_GOLDEN = (5.0**0.5 - 1.0) / 2.0
 
 
 def of_blurred(families: Sequence[Blurred], lags: FloatArray | None) -> float:
@@ -51,7 +54,10 @@ def of_blurred(families: Sequence[Blurred], lags: FloatArray | None) -> float:
     if lags.size == 0:
         return 0.0
     lags = np.concatenate([lags, -lags])
-    return _fine(families, lags[_promising(families, lags)])
+    found = _fine(families, lags[_nearest(families, lags)])
+    if found >= of_blurred(families, None) * (1 - _SAME):
+        return found
+    return _fine(families, lags[_promising(families, lags)], found)
 
 
 def ratio(highest: float, lowest: float) -> float:
@@ -59,6 +65,15 @@ def ratio(highest: float, lowest: float) -> float:
     lowest = max(lowest, 0.0)
     total = highest + lowest
     return float((highest - lowest) / total) if total > 0 and highest > lowest else 0.0
+
+
+def _nearest(families: Sequence[Blurred], lags: FloatArray) -> IndexArray:
+    """Two rows of `lags` that come nearest to the way from the darkest to the brightest phase of each family."""
+    missed = np.zeros(len(lags))
+    for number, table in enumerate(family.table() for family in families):
+        ideal = (int(np.argmax(table)) - int(np.argmin(table))) / table.size
+        missed += rectangle.distance_to_whole(lags[:, number] - ideal)
+    return np.argsort(missed, kind="stable")[:2]
 
 
 def _promising(families: Sequence[Blurred], lags: FloatArray) -> IndexArray:
@@ -100,9 +115,8 @@ def _different(bins: IndexArray, order: IndexArray, most: int) -> IndexArray:
     return np.array(chosen)
 
 
-def _fine(families: Sequence[Blurred], lags: FloatArray) -> float:
-    """Contrast on a fine grid with corners, for a few lags only."""
-    found = 0.0
+def _fine(families: Sequence[Blurred], lags: FloatArray, found: float = 0.0) -> float:
+    """Contrast on a fine grid with corners, for a few lags only; at least `found`."""
     for row in lags:
         pairs = [family.pair(lag) for family, lag in zip(families, row, strict=True)]
         for _ in range(30):
@@ -117,7 +131,34 @@ def _fine(families: Sequence[Blurred], lags: FloatArray) -> float:
     return found
 
 
-def worst(families: Sequence[Family], seen: Windows, delays: FloatArray | None, tolerance: float) -> float:
+@dataclass(frozen=True, slots=True, eq=False)
+class Bound:
+    """Largest contrast over a tolerance if any phase occurs, with the frequencies looked at, over the stated one."""
+
+    scales: FloatArray
+    scale: float  # that of the largest
+    contrast: float
+
+
+def bound(families: Sequence[Family], seen: Windows, tolerance: float) -> Bound:
+    """Find the largest contrast over a tolerance, whatever the camera's lines; arguments as in `worst`."""
+    scales = _scales(families, seen, tolerance)
+    depths = np.array([_dense(families, seen, scale) for scale in scales])
+    return Bound(scales, *_refined(families, seen, scales, depths))
+
+
+def is_rectangle(families: Sequence[Family], seen: Windows) -> bool:
+    """Tell whether the contrast has a closed form: one ideal rectangle, one window."""
+    return len(families) == 1 and families[0].rectangle is not None and seen.simple
+
+
+def worst(
+    families: Sequence[Family],
+    seen: Windows,
+    delays: FloatArray | None,
+    tolerance: float,
+    known: Bound | None = None,
+) -> float:
     """
     Largest contrast while all frequencies of a light may be off by up to `tolerance`, a share of them.
 
@@ -135,22 +176,22 @@ def worst(families: Sequence[Family], seen: Windows, delays: FloatArray | None, 
         any phase occurs.
     tolerance : float
         Share of the frequency, 0 for none.
+    known : Bound or None
+        What `bound` gave for the same light, exposure and tolerance, if it is at hand.
     """
     if not families:
         return 0.0
-    if len(families) == 1 and families[0].rectangle is not None and seen.simple:
-        return rectangle.worst_contrast(families[0].rectangle, seen.lengths[0], delays, tolerance)
+    if is_rectangle(families, seen) and (pulse := families[0].rectangle):
+        return rectangle.worst_contrast(pulse, seen.lengths[0], delays, tolerance)
     if tolerance == 0.0:
         return _limited(families, seen, delays, 1.0)
-    scales = _scales(families, seen, tolerance)
-    depths = np.array([_dense(families, seen, scale) for scale in scales])
-    scale, depth = _refined(families, seen, scales, depths)
+    most = known or bound(families, seen, tolerance)
     if delays is None:
-        return depth
-    reached = _limited(families, seen, delays, scale)
-    if reached >= depth * (1 - _CLOSE):
-        return depth
-    return max(reached, *(_limited(families, seen, delays, one) for one in scales))
+        return most.contrast
+    reached = _limited(families, seen, delays, most.scale)
+    if reached >= most.contrast * (1 - _CLOSE):
+        return most.contrast
+    return max(reached, *(_limited(families, seen, delays, one) for one in most.scales))
 
 
 def _dense(families: Sequence[Family], seen: Windows, scale: float) -> float:
@@ -176,15 +217,21 @@ def _scales(families: Sequence[Family], seen: Windows, tolerance: float) -> Floa
 def _refined(families: Sequence[Family], seen: Windows, scales: FloatArray, depths: FloatArray) -> tuple[float, float]:
     """Deepest point between the neighbours of the deepest step, by golden sections."""
     best = int(np.argmax(depths))
-    left, right = scales[max(best - 1, 0)], scales[min(best + 1, scales.size - 1)]
-    golden = (np.sqrt(5.0) - 1.0) / 2.0
-    deepest = (float(scales[best]), float(depths[best]))
-    for _ in range(12):
-        inner = (right - golden * (right - left), left + golden * (right - left))
-        found = [_dense(families, seen, scale) for scale in inner]
-        deepest = max(deepest, *zip(map(float, inner), found, strict=True), key=lambda pair: pair[1])
-        left, right = (left, inner[1]) if found[0] > found[1] else (inner[0], right)
-    return deepest
+    left, right = float(scales[max(best - 1, 0)]), float(scales[min(best + 1, scales.size - 1)])
+    points = [right - _GOLDEN * (right - left), left + _GOLDEN * (right - left)]
+    found = [_dense(families, seen, scale) for scale in points]
+    deepest = max((float(depths[best]), float(scales[best])), *zip(found, points, strict=True))
+    for _ in range(10):
+        if found[0] > found[1]:
+            right = points[1]
+            points = [right - _GOLDEN * (right - left), points[0]]
+            found = [_dense(families, seen, points[0]), found[0]]
+        else:
+            left = points[0]
+            points = [points[1], left + _GOLDEN * (right - left)]
+            found = [found[1], _dense(families, seen, points[1])]
+        deepest = max(deepest, *zip(found, points, strict=True))
+    return deepest[1], deepest[0]
 
 
 def moving(families: Sequence[Family], delays: FloatArray) -> FloatArray:

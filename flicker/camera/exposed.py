@@ -58,7 +58,7 @@ def windows(exposure: float | Sequence[float], *, binning: int = 1, line_time: f
         raise InputError(f"an exposure must be above 0, not {exposure} s")
     if binning > 1 and line_time is None:
         raise InputError("lines that are binned need a line time: give --line-time")
-    return Windows(lengths, binning, (line_time or 0.0) / binning)
+    return Windows(lengths, binning, (line_time or 0.0) / binning if binning > 1 else 0.0)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -197,6 +197,11 @@ class BlurredLines(Blurred):
     def table(self) -> FloatArray:
         """See `Blurred`."""
         return self._at_grid(self.amplitudes)
+
+    def extremes(self) -> tuple[float, float]:
+        """See `Blurred`."""
+        table = self.table()
+        return float(table.min()), float(table.max())
 
     def pair(self, lag: float) -> tuple[FloatArray, FloatArray]:
         """See `Blurred`."""
