@@ -74,7 +74,9 @@ def side_by_side(function: Callable[[Item], Result], items: Sequence[Item], work
 
 def _end_with_parent() -> None:
     """See to it that a worker does not outlive a program that was killed."""
-    parent = multiprocessing.parent_process()
+    from multiprocessing import parent_process
+
+    parent = parent_process()
 
     def watch() -> None:
         if parent is not None:

@@ -20,6 +20,11 @@ _HELPERS = {"__init__", "options", "output"}
 class Program(click.Group):
     """Finds the commands in this folder, and turns what goes wrong into one sentence and an exit status."""
 
+    def make_context(self, info_name: str | None, args: list[str], *more: Any, **extra: Any) -> click.Context:
+        """Keep the words of the command line, for results that state them."""
+        extra.setdefault("obj", ["flicker", *args])
+        return super().make_context(info_name, args, *more, **extra)
+
     def list_commands(self, ctx: click.Context) -> list[str]:
         """Name every module of this folder that holds a command."""
         folder = Path(__file__).parent

@@ -15,8 +15,8 @@ from flicker.cli.output import print_words, terminal_width, write_json
 def command(names: tuple[str, ...], on_date: str | None, limits_file: str | None, json_target: str | None) -> None:
     """List the limits that `flicker check` knows, or only those named.
 
-    Each comes with what it allows, since when, its clause, its source and how far that source was seen; named, also with what
-    it holds for. Without a date the list holds what is in force and, with its last day, what has been replaced.
+    Each comes with what it allows, since when, its clause, its source and how far that source was seen; named, also
+    with what it holds for. Without a date the list holds what is in force and what has been replaced.
 
     Example:
 

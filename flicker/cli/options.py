@@ -143,6 +143,18 @@ camera_options = several(
 )
 
 
+limit_options = several(
+    click.option("--limit", "limits", multiple=True, metavar="ID", help="Limit to keep, repeatable; all if left out."),
+    click.option("--limits-file", metavar="FILE.toml", help="Limits of your own, beside those built in."),
+    click.option("--on-date", metavar="DATE", help="Judge by what applied on a day, such as 2024-08-31."),
+    click.option(
+        "--decision",
+        metavar="guarded|simple",
+        default="guarded",
+        help="Whether the whole 95 % interval must keep the limit, or the value alone; guarded if left out.",
+    ),
+)
+
 uncertainty_options = several(
     click.option("--clock-ppm", type=float, metavar="PPM", help="Standard uncertainty of the sample clock."),
     click.option(

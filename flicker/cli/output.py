@@ -65,6 +65,18 @@ def write_json(data: Any, target: str | None) -> None:
     write_text(target, text)
 
 
+def write_pieces(pieces: Iterable[bytes], target: str | None) -> None:
+    """Write JSON that comes in pieces, to the same targets as `write_json`; `UnreadableFileError` as there."""
+    if target == STANDARD_OUTPUT:
+        for piece in pieces:
+            click.echo(piece, nl=False)
+    elif target is not None:
+        from flicker.files import whole_file
+
+        with whole_file(target) as temporary, temporary.open("wb") as file:
+            file.writelines(pieces)
+
+
 def print_words(text: str, json_target: str | None = None) -> None:
     """Print an answer for people on standard output, unless the JSON goes there."""
     if json_target == STANDARD_OUTPUT:

@@ -7,6 +7,10 @@ import math
 from dataclasses import dataclass
 from typing import Any
 
+import numpy as np
+
+from flicker.trace import FloatArray
+
 MODULATION = "modulation"  # worst of each family's depth and each line's modulation, at its own frequency
 FAMILY_DEPTH = "percent_flicker"  # with bands: each family's depth at its fundamental
 
@@ -56,6 +60,14 @@ class Curve:
     def at(self, frequency: float) -> float:
         """Allowance at one frequency [Hz]; infinite where there is no limit."""
         return next((band.at(frequency) for band in self.bands if band.start <= frequency < band.end), math.inf)
+
+    def at_each(self, frequencies: FloatArray) -> FloatArray:
+        """Allowances at frequencies of shape (k,) [Hz]; infinite where there is no limit."""
+        allowed = np.full(frequencies.shape, math.inf)
+        for band in self.bands:
+            inside = (band.start <= frequencies) & (frequencies < band.end)
+            allowed[inside] = band.level if band.slope is None else band.slope * frequencies[inside]
+        return allowed
 
     def between(self, low: float, high: float) -> tuple[float, float]:
         """Smallest and largest allowance over the frequencies from `low` to `high` [Hz], steps included."""

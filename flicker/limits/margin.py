@@ -10,8 +10,10 @@ from typing import Any, Protocol
 import numpy as np
 
 from flicker.limits.limit import Curve, Limit
-from flicker.limits.verdict import Outcome
+from flicker.limits.verdict import Outcome, Verdict
+from flicker.trace import FloatArray
 
+_ANSWERS = ("least_frequency_hz", "most_percent_flicker", "ripple_factor")
 _HAIR = 1e-12  # kept from the edge on the passing side, more than the rounding of a product
 _SIDE = 1e-9  # from a critical speed to either side of it
 _SLOWEST, _FASTEST = 1e-9, 1e6  # speeds that stand for nought and for infinity
@@ -43,8 +45,8 @@ class Tunable(Protocol):
         """Give a measure of the changed light; None if it cannot be had."""
         ...
 
-    def modulations(self, measure: str, speed: float, scale: float) -> Sequence[tuple[float, float]]:
-        """Frequencies [Hz] and depths [%] that a curve is held against."""
+    def modulations(self, measure: str, speed: float, scale: float) -> tuple[FloatArray, FloatArray]:
+        """Frequencies [Hz] and depths [%] that a curve is held against, shape (k,) each."""
         ...
 
     def critical_speeds(self, limit: Limit) -> Sequence[float]:
@@ -89,9 +91,37 @@ class Margin:
             "ripple_db": self.ripple_decibels,
             "pedestal_percent": None if self.pedestal is None else 100.0 * self.pedestal,
             "capacitance_factor": self.capacitance_factor,
-            "reason": "; ".join(dict.fromkeys(self.reasons.values())),
+            "reason": "; ".join(dict.fromkeys(self.reasons[key] for key in _ANSWERS if key in self.reasons)),
             "reasons": dict(self.reasons),
         }
+
+
+def margin_of(verdict: Verdict, light: Tunable) -> Margin:
+    """
+    Find the smallest changes of a light after which its limit is kept, by the rule that gave the verdict.
+
+    Parameters
+    ----------
+    verdict : Verdict
+        What a limit says of the light.
+    light : Tunable
+        The same light.
+
+    Returns
+    -------
+    Margin
+        As `margin` finds it, figures enlarged to the upper end of the verdict's interval if the rule is guarded. All
+        answers are None, with the reason, where the limit does not apply or the measure could not be had.
+    """
+    if verdict.verdict == "not-applicable" or verdict.value is None:
+        return Margin(verdict.limit, verdict.verdict, reasons=_no_answers(verdict.reason))
+    own = light.figure(verdict.limit.measure, 1.0, 1.0) if not isinstance(verdict.limit.bound, Curve) else verdict.value
+    end = verdict.value if verdict.decision == "simple" or verdict.high is None else verdict.high
+    return margin(verdict.limit, light, verdict.verdict, end / own if own and end else 1.0)
+
+
+def _no_answers(reason: str) -> dict[str, str]:
+    return dict.fromkeys((*_ANSWERS, "capacitance_factor"), reason)
 
 
 def margin(limit: Limit, light: Tunable, verdict: Outcome, guard: float = 1.0) -> Margin:
@@ -121,9 +151,9 @@ def margin(limit: Limit, light: Tunable, verdict: Outcome, guard: float = 1.0) -
     limit keeps it as well, and is no cure. Speeds are tried from above at every point where a line crosses an
     edge of the rule; between such points each rule goes one way, and bisection finds its edge.
     """
-    keys = ("least_frequency_hz", "most_percent_flicker", "capacitance_factor")
     if light.frequency is None:
         steady = "the light is steady"
+        keys = ("least_frequency_hz", "most_percent_flicker", "capacitance_factor")
         return Margin(limit, verdict, ripple_factor=1.0, reasons=dict.fromkeys(keys, steady))
 
     def keeps(speed: float, scale: float) -> bool:
@@ -131,7 +161,7 @@ def margin(limit: Limit, light: Tunable, verdict: Outcome, guard: float = 1.0) -
 
     if light.figure(limit.measure, 1.0, 1.0) is None:
         lost = f"{limit.measure} cannot be computed from this light"
-        return Margin(limit, verdict, reasons=dict.fromkeys((*keys, "ripple_factor"), lost))
+        return Margin(limit, verdict, reasons=_no_answers(lost))
     reasons: dict[str, str] = {}
     speed = _least(lambda one: keeps(one, 1.0), _speeds(limit, light))
     if speed is None:
@@ -157,14 +187,12 @@ def margin(limit: Limit, light: Tunable, verdict: Outcome, guard: float = 1.0) -
 
 def _keeps(limit: Limit, light: Tunable, speed: float, scale: float, guard: float) -> bool:
     if isinstance(limit.bound, Curve):
-        found = light.modulations(limit.measure, speed, scale)
-        return all(_within(limit, guard * depth, limit.bound.at(frequency)) for frequency, depth in found)
+        frequencies, depths = light.modulations(limit.measure, speed, scale)
+        return bool(np.all(guard * depths <= limit.bound.at_each(frequencies)))
     figure = light.figure(limit.measure, speed, scale)
-    return figure is not None and _within(limit, guard * figure, limit.bound)
-
-
-def _within(limit: Limit, value: float, bound: float) -> bool:
-    return value < bound if limit.strict else value <= bound
+    if figure is None:
+        return False
+    return guard * figure < limit.bound if limit.strict else guard * figure <= limit.bound
 
 
 def _speeds(limit: Limit, light: Tunable) -> list[float]:

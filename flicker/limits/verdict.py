@@ -33,6 +33,7 @@ class Verdict:
     high: float | None = None
     bound: float | None = None
     frequency: float | None = None  # at which the bound was read [Hz]
+    part: str = ""  # of the light, that decided: family or line
     decision: str = "guarded"
     reason: str = ""
 
@@ -42,6 +43,12 @@ class Verdict:
         if self.value is None or not self.bound:
             return None
         return 100.0 * (self.bound - self.value) / self.bound
+
+    @classmethod
+    def from_dict(cls, limit: Limit, data: Mapping[str, Any]) -> Verdict:
+        """Take a verdict on that limit back from its JSON form."""
+        same = ("verdict", "value", "low", "high", "bound", "decision", "reason")
+        return cls(limit, frequency=data["frequency_hz"], part=data["part"], **{name: data[name] for name in same})
 
     def to_dict(self) -> dict[str, Any]:
         """Give the JSON form of `docs/json.md`."""
@@ -54,6 +61,7 @@ class Verdict:
             "bound": self.bound,
             "unit": self.limit.unit,
             "frequency_hz": self.frequency,
+            "part": self.part,
             "margin_percent": self.margin,
             "verdict": self.verdict,
             "decision": self.decision,
@@ -62,9 +70,9 @@ class Verdict:
         }
 
 
-def overall(verdicts: Iterable[Verdict]) -> Outcome:
+def overall(outcomes: Iterable[Outcome]) -> Outcome:
     """Give the outcome that weighs most: one fail breaks all, nothing undecided passes."""
-    found = {verdict.verdict for verdict in verdicts}
+    found = set(outcomes)
     return next((outcome for outcome in OUTCOMES if outcome in found), "not-applicable")
 
 
@@ -88,6 +96,7 @@ class Modulation:
     frequency: float
     frequency_low: float
     frequency_high: float
+    part: str  # family or line
 
 
 def judge(
@@ -144,7 +153,9 @@ def judge(
     low, high = _interval(measure)
     outcome = _decide(limit, (measure.value, low, high), (limit.bound,) * 3, decision)
     reason = _near(outcome, decision)
-    return Verdict(limit, outcome, measure.value, measure.low, measure.high, limit.bound, None, decision, reason)
+    return Verdict(
+        limit, outcome, measure.value, measure.low, measure.high, limit.bound, decision=decision, reason=reason
+    )
 
 
 def _out_of_scope(limit: Limit, conditions: Conditions) -> str:
@@ -198,11 +209,14 @@ def modulations(components: Sequence[Component], families: Sequence[Family]) -> 
                 *_interval(family.percent_flicker),
                 family.fundamental.value,
                 *_interval(family.fundamental),
+                "family",
             )
     for line in components:
         spread, drift = COVERAGE * 100.0 * line.standard_error, COVERAGE * line.frequency_error
         low, high = max(line.modulation - spread, 0.0), line.modulation + spread
-        yield Modulation(line.modulation, low, high, line.frequency, line.frequency - drift, line.frequency + drift)
+        yield Modulation(
+            line.modulation, low, high, line.frequency, line.frequency - drift, line.frequency + drift, "line"
+        )
 
 
 def _judge_curve(
@@ -238,7 +252,7 @@ def _judge_one(limit: Limit, curve: Curve, one: Modulation, decision: str) -> Ve
     if outcome == "undecided" and step is not None:
         reason = f"the limit steps at {step:g} Hz, inside the 95 % interval of the frequency"
     bound = None if math.isinf(centre) else centre
-    return Verdict(limit, outcome, one.value, one.low, one.high, bound, one.frequency, decision, reason)
+    return Verdict(limit, outcome, one.value, one.low, one.high, bound, one.frequency, one.part, decision, reason)
 
 
 def _severity(verdict: Verdict) -> tuple[int, float, float]:
@@ -260,7 +274,7 @@ def _unknown_depth(measures: Mapping[str, Measure], families: Sequence[Family]) 
 def _steady(limit: Limit, measures: Mapping[str, Measure], decision: str) -> Verdict:
     depth = measures.get("percent_flicker")
     value, low, high = (depth.value, depth.low, depth.high) if depth else (0.0, None, None)
-    return Verdict(limit, "pass", value, low, high, None, None, decision, "no modulation was found")
+    return Verdict(limit, "pass", value, low, high, decision=decision, reason="no modulation was found")
 
 
 def _blind_range(curve: Curve, conditions: Conditions) -> str:

@@ -2,17 +2,15 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterable
 from typing import TYPE_CHECKING
 
-from flicker.limits import risk_curves
 from flicker.limits.region import STANDARD
-from flicker.report.figures import quantity
+from flicker.report.figures import quantity, round_up
 
 if TYPE_CHECKING:
     from flicker.analysis import ChannelReport
-    from flicker.limits import Curve, RiskRegion
+    from flicker.limits import RiskRegion
     from flicker.results import Measure, Note
 
 REGION_WORDS = {
@@ -89,9 +87,9 @@ def next_step(channel: ChannelReport) -> str:
         return f"cure {doubt}, then measure again"
     if place.modulation is None or place.region == "no-observable-effect":
         return "nothing: the strictest practice of this standard is kept"
-    low_risk, no_effect = risk_curves()
-    goal, curve = ("low risk", low_risk) if place.region == "above-low-risk" else ("no observable effect", no_effect)
-    return f"for {goal}, {_cure(channel, place, curve)}"
+    if place.region == "above-low-risk":
+        return f"for low risk, {_cure(channel, 'ieee1789-low-risk')}"
+    return f"for no observable effect, {_cure(channel, 'ieee1789-no-effect')}"
 
 
 def severity(channel: ChannelReport) -> tuple[int, float]:
@@ -110,40 +108,15 @@ def _deciding(channel: ChannelReport, place: RiskRegion) -> str:
     return f"percent flicker {amount}" if by_depth else f"a spectral line of {amount}"
 
 
-def _cure(channel: ChannelReport, place: RiskRegion, curve: Curve) -> str:
-    assert place.frequency is not None
-    assert place.modulation is not None
-    fold = _round_up(place.modulation / curve.at(place.frequency))
-    words = f"shrink the modulation {quantity(fold, '', 3)}-fold"
-    (first, *others) = channel.families or (None,)
-    if first is None or others or "mains" in first.origin or first.fundamental.value is None:
-        return words
-    frequency = _round_up(least_frequency(channel, first.fundamental.value, curve))
-    return f"{words} or raise the frequency to {quantity(frequency, 'Hz')}"
+def _cure(channel: ChannelReport, limit: str) -> str:
+    from flicker.limits import known_limits, margin
+    from flicker.tunable import TunableLight
 
-
-def least_frequency(channel: ChannelReport, fundamental: float, curve: Curve) -> float:
-    """Lowest fundamental [Hz] at which this waveform, sped up as a whole, keeps the curve; the curve must rise."""
-    parts = [(line.frequency, line.modulation) for line in channel.components]
-    parts += [(fundamental, channel.families[0].percent_flicker.value or 0.0)]
-    return fundamental * max(_allowed_from(curve, frequency, depth) / frequency for frequency, depth in parts)
-
-
-def _allowed_from(curve: Curve, frequency: float, depth: float) -> float:
-    """Lowest frequency, not below the given one, at which the curve allows the depth."""
-    if curve.at(frequency) >= depth:
-        return frequency
-    for band in curve.bands:
-        if band.end <= frequency:
-            continue
-        start = max(band.start, frequency)
-        needed = start if band.at(start) >= depth else depth / band.slope if band.slope else math.inf
-        if needed < band.end:
-            return needed
-    return curve.highest
-
-
-def _round_up(value: float) -> float:
-    """Round up to three significant digits, so that what is advised is enough."""
-    step = 10.0 ** (math.floor(math.log10(value)) - 2)
-    return math.ceil(value / step - 1e-9) * step
+    found = margin(known_limits()[limit], TunableLight.measured(channel), "fail")
+    ways = []
+    if found.ripple_factor is not None:
+        ways.append(f"shrink the modulation {quantity(round_up(found.ripple_factor), '', 3)}-fold")
+    only = channel.families[0] if len(channel.families) == 1 else None
+    if only is not None and "mains" not in only.origin and found.least_frequency is not None:
+        ways.append(f"raise the frequency to {quantity(round_up(found.least_frequency), 'Hz')}")
+    return " or ".join(ways)

@@ -80,3 +80,9 @@ def measured(measure: Measure) -> tuple[str, str]:
         low, high = math.floor(low / step + 1e-6) * step, math.ceil(high / step - 1e-6) * step
         return number, f"{low:.{decimals}f} to {high:.{decimals}f}"
     return number, f"± {max(half, step):.{decimals}f}"
+
+
+def round_up(value: float) -> float:
+    """Round up to three significant digits, so that what is advised is enough."""
+    step = 10.0 ** (math.floor(math.log10(value)) - 2)
+    return math.ceil(value / step - 1e-9) * step

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from typing import Any
 
 from flicker.limits import OUTCOMES, Curve, Limit, Verdict, overall
-from flicker.report.figures import measure_name, measured, quantity
+from flicker.report.figures import measure_name, measured, quantity, round_up
 from flicker.report.typesetting import wrap
 from flicker.results import Measure
 
@@ -15,7 +16,7 @@ _LEGEND = (
     "f is the frequency in Hz. A limit on modulation holds for the depth of every family at its fundamental and for "
     "every line at its own frequency; one on percent flicker over frequency holds for every family."
 )
-_RULES = {
+RULES = {
     "guarded": "guarded: pass only where the whole 95 % interval keeps the limit, fail only where all of it breaks it",
     "simple": "simple: the value alone decides; at the limit itself that is wrong up to every second time",
 }
@@ -46,13 +47,29 @@ def verdict_words(title: str, verdicts: Sequence[Verdict], advice: Sequence[str]
     lines.append("")
     lines += _table(sorted(verdicts, key=lambda verdict: OUTCOMES.index(verdict.verdict)), width)
     if verdicts:
-        lines += ["", *wrap(f"Decision rule, {_RULES[verdicts[0].decision]}.", width, "")]
+        lines += ["", *wrap(f"Decision rule, {RULES[verdicts[0].decision]}.", width, "")]
     return "\n".join(lines)
+
+
+def cures(verdicts: Sequence[Mapping[str, Any]]) -> list[str]:
+    """Say for each broken limit, in the JSON form of its verdict, what change of the light would keep it."""
+    sentences = []
+    for one in verdicts:
+        found = one.get("to_pass", {})
+        ways = []
+        if found.get("least_frequency_hz"):
+            ways.append(f"raise the frequency to {quantity(round_up(found['least_frequency_hz']), 'Hz')}")
+        if found.get("ripple_factor"):
+            fold = quantity(round_up(found["ripple_factor"]), "", 3)
+            ways.append(f"shrink the modulation {fold}-fold ({quantity(found['ripple_db'], 'dB', 3)})")
+        if ways:
+            sentences.append(f"To keep {one['limit']}: {' or '.join(ways)}.")
+    return sentences
 
 
 def headline(verdicts: Sequence[Verdict]) -> str:
     """Say the answer in one line: the outcome, how many limits, and the worst."""
-    outcome = overall(verdicts)
+    outcome = overall(verdict.verdict for verdict in verdicts)
     judged = [verdict for verdict in verdicts if verdict.verdict != "not-applicable"]
     if outcome == "not-applicable":
         return "NOT APPLICABLE, no limit holds for this capture"
@@ -99,6 +116,7 @@ def value_words(verdict: Verdict) -> str:
     measure = Measure(verdict.value, verdict.limit.unit, verdict.low, verdict.high)
     number, interval = measured(measure)
     text = f"{number} ({interval})" if interval else number
+    text = f"line of {text}" if verdict.part == "line" else text
     return f"{text} at {quantity(verdict.frequency, 'Hz')}" if verdict.frequency is not None else text
 
 

@@ -4,23 +4,23 @@ from __future__ import annotations
 
 import hashlib
 import json
-import multiprocessing
-import os
-from collections import deque
 from collections.abc import Iterator, Mapping, Sequence
-from concurrent.futures import Future, ProcessPoolExecutor
 from dataclasses import dataclass, field
+from functools import partial
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from flicker import __version__
-from flicker.errors import FlickerError, InputError
+from flicker.errors import FlickerError
 from flicker.files import write_text
-from flicker.limits import Limit
+from flicker.limits import Limit, margin_of
 from flicker.sweep.manifest import Step
+from flicker.workers import side_by_side
 
-_AHEAD = 4  # captures that wait for each worker
-_ONE_THREAD = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
+if TYPE_CHECKING:
+    from flicker.analysis import ChannelReport
+
+_CURES = ("least_frequency_hz", "most_percent_flicker", "ripple_factor", "ripple_db", "reason")
 
 
 @dataclass(frozen=True, slots=True)
@@ -32,6 +32,7 @@ class Task:
     reading: Mapping[str, Any] = field(default_factory=dict)  # keywords of `flicker.read`
     measuring: Mapping[str, Any] = field(default_factory=dict)  # keywords of `flicker.measure`
     keep: str | None = None  # folder with the results of an earlier run
+    advise: bool = False  # whether to work out what would make each broken limit pass
 
 
 def judge_capture(step: Step, task: Task) -> dict[str, Any]:
@@ -52,9 +53,32 @@ def judge_capture(step: Step, task: Task) -> dict[str, Any]:
     try:
         report = measure(read(step.capture, **reading), **task.measuring)
     except FlickerError as error:
-        return {"capture": {"path": step.capture}, "error": str(error), "conditions": step.to_dict()}
+        return {"capture": {"path": step.capture}, "error": str(error), **_conditions(step)}
     report = check(report, task.limits, decision=task.decision, level=step.level, supply=step.supply or None)
-    return {**report.captures[0].to_dict(), "conditions": step.to_dict()}
+    (capture,) = report.captures
+    data = {**capture.to_dict(), **_conditions(step)}
+    if task.advise:
+        for channel, judged in zip(data["channels"], capture.channels, strict=True):
+            _advise(channel["verdicts"], judged)
+    return data
+
+
+def _advise(entries: list[dict[str, Any]], channel: ChannelReport) -> None:
+    """Add to every broken limit what change of the light would keep it."""
+    from flicker.tunable import TunableLight
+
+    if all(verdict.verdict != "fail" for verdict in channel.verdicts):
+        return
+    light = TunableLight.measured(channel)
+    for entry, verdict in zip(entries, channel.verdicts, strict=True):
+        if verdict.verdict == "fail":
+            found = margin_of(verdict, light).to_dict()
+            entry["to_pass"] = {key: found[key] for key in _CURES}
+
+
+def _conditions(step: Step) -> dict[str, Any]:
+    known = step.to_dict()
+    return {"conditions": known} if known else {}
 
 
 def judge_captures(steps: Sequence[Step], task: Task, *, workers: int = 1) -> Iterator[dict[str, Any]]:
@@ -75,36 +99,8 @@ def judge_captures(steps: Sequence[Step], task: Task, *, workers: int = 1) -> It
     ------
     dict
         As `judge_capture` gives them. Only a few results wait in memory at any time.
-
-    Raises
-    ------
-    InputError
-        If the number of workers is below 1.
     """
-    if workers < 1:
-        raise InputError(f"--workers must be at least 1, not {workers}")
-    if workers == 1 or len(steps) < 2:
-        for step in steps:
-            yield _kept_or_judged(step, task)
-        return
-    before = {name: os.environ.get(name) for name in _ONE_THREAD}
-    os.environ.update(dict.fromkeys(_ONE_THREAD, "1"))  # the captures are the parallel part
-    pool = ProcessPoolExecutor(min(workers, len(steps)), mp_context=multiprocessing.get_context("spawn"))
-    waiting: deque[Future[dict[str, Any]]] = deque()
-    try:
-        for step in steps:
-            waiting.append(pool.submit(_kept_or_judged, step, task))
-            if len(waiting) > _AHEAD * workers:
-                yield waiting.popleft().result()
-        while waiting:
-            yield waiting.popleft().result()
-    finally:
-        pool.shutdown(wait=True, cancel_futures=True)
-        for name, value in before.items():
-            if value is None:
-                os.environ.pop(name, None)
-            else:
-                os.environ[name] = value
+    return side_by_side(partial(_kept_or_judged, task=task), steps, workers)
 
 
 def _kept_or_judged(step: Step, task: Task) -> dict[str, Any]:
@@ -133,6 +129,7 @@ def _key(step: Step, task: Task) -> str:
         sorted({**task.reading, **task.measuring}.items(), key=lambda item: item[0]),
         [limit.to_dict() for limit in task.limits],
         task.decision,
+        task.advise,
     )
     digest.update(json.dumps(rest, ensure_ascii=False, default=str).encode())
     for path in (step.capture, task.reading.get("dark_capture")):

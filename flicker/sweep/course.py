@@ -62,10 +62,11 @@ class Point:
         }
 
 
-def points_of(capture: Mapping[str, Any], step: Mapping[str, Any]) -> tuple[Point, ...]:
-    """Take from the JSON of one capture, and what its manifest says, what a sweep needs of each channel."""
+def points_of(capture: Mapping[str, Any]) -> tuple[Point, ...]:
+    """Take from the JSON form of one capture what a sweep needs of each channel; nothing of an unreadable one."""
+    conditions = capture.get("conditions", {})
+    unit, level = str(conditions.get("unit", "")), conditions.get("level_percent")
     path = str(capture["capture"]["path"])
-    unit, level = str(step.get("unit", "")), step.get("level_percent")
     return tuple(_point(path, unit, level, channel) for channel in capture.get("channels", ()))
 
 

@@ -1,0 +1,51 @@
+"""The part of a laboratory report that stands beside the figures."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+from flicker import __version__
+from flicker.report.typesetting import wrap
+from flicker.sweep.record import ITEMS
+
+_CAUTION = (
+    "The results relate only to the items tested. This program is no accredited laboratory; limits and editions are "
+    "those named above, and rules change."
+)
+
+
+def record_words(statement: Mapping[str, Any], hashes: Sequence[tuple[str, str]], *, width: int = 100) -> str:
+    """
+    Say who tested what, when, with which instrument, by which method, limits and decision rule.
+
+    Parameters
+    ----------
+    statement : mapping
+        `record`, `limits`, `decision_rule` and `command_line` of the JSON.
+    hashes : sequence of (path, SHA-256)
+        The captures.
+    width : int
+        Columns that a line may fill.
+
+    Returns
+    -------
+    str
+        The items after ISO/IEC 17025:2017, 7.8, an end mark last.
+    """
+    record = statement["record"]
+    entries = [(ITEMS[key], str(value)) for key, value in record.items()]
+    entries += [("program", f"flicker {__version__}"), ("command", statement["command_line"])]
+    entries.append(("decision rule", statement["decision_rule"]["meaning"]))
+    sources = dict.fromkeys(f"{limit['source']} ({limit['basis']})" for limit in statement["limits"])
+    entries += [("judged by", source) for source in sources]
+    column = max(len(label) for label, _ in entries) + 4
+    lines = [f"Record of report {record['report_id']}" if "report_id" in record else "Record"]
+    for label, text in entries:
+        first, *rest = wrap(text, width, " " * column) or [""]
+        lines += [f"  {label}".ljust(column) + first.lstrip(), *rest]
+    lines.append("  captures (SHA-256)")
+    lines += [f"    {digest}  {path}" for path, digest in hashes]
+    lines += wrap(_CAUTION, width, "  ")
+    lines.append(f"End of report {record['report_id']}" if "report_id" in record else "End of record")
+    return "\n".join(lines)

@@ -1,0 +1,251 @@
+"""A light that can be made faster and shallower, with every figure that limits are held against."""
+
+from __future__ import annotations
+
+import functools
+import math
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from flicker.errors import InputError
+from flicker.light import ChannelLight, ComplexArray, Pulse
+from flicker.limits.limit import MODULATION, UNITS, Curve, Limit
+from flicker.results import Component, Family, Measure
+from flicker.trace import FloatArray
+from flicker.waveforms import pwm
+
+if TYPE_CHECKING:
+    from flicker.analysis import ChannelReport
+
+_LINES = 200  # of a typed-in pulse that a curve is held against
+_BY_SHAPE = ("flicker_index", "rms_modulation")
+_CUT = "percent_flicker_below_"
+_POINTS = 4096  # of a cycle of filtered light
+_RECORD = (20_000.0, 1.0)  # sample rate [Hz] and duration [s] for filtered light of several families, those of JA10.5
+
+
+@dataclass(frozen=True, slots=True)
+class LineFigure:
+    """A measure that follows from the lines alone, in proportion to them; beyond its edges [Hz] lines do not count."""
+
+    of_lines: Callable[[FloatArray, ComplexArray], float]
+    edges: tuple[float, ...]
+
+
+LINE_FIGURES: dict[str, LineFigure] = {}
+
+
+@dataclass(frozen=True, slots=True)
+class Shape:
+    """One family: its fundamental [Hz], and how far its light rises above and falls below the mean, over the mean."""
+
+    fundamental: float
+    above: float
+    below: float
+
+    def percent_flicker(self, scale: float) -> float:
+        """Depth when every deviation from the mean is scaled. [%]"""
+        return _depth(scale * self.above, scale * self.below)
+
+
+def _depth(above: float, below: float) -> float:
+    return 100.0 * (above + below) / (2.0 + above - below)
+
+
+@dataclass(frozen=True, eq=False)
+class TunableLight:
+    """
+    One channel of light as a function of speed and scale (see `flicker.limits.margin.Tunable`).
+
+    A typed-in pulse keeps its emitter's decay time when it is made faster, and so becomes shallower; of a measured
+    light nothing is known but its waveform, which is kept.
+    """
+
+    channel: ChannelLight
+    shapes: tuple[Shape, ...]  # deepest first
+    known: Mapping[str, float]  # figures of the light as it is, that no line spectrum gives
+
+    @classmethod
+    def typed(cls, channel: ChannelLight) -> TunableLight:
+        """Take a light that was typed in, exactly; `InputError` if it is not a pulse."""
+        if channel.pulse is None:
+            raise InputError(f"the waveform of channel {channel.name} is not known exactly")
+        return cls(channel, _shapes_of(channel.pulse), {})
+
+    @classmethod
+    def measured(cls, report: ChannelReport) -> TunableLight:
+        """Take the light of a measured channel; `NotMeasurable` if the capture lost its mean level."""
+        observation = report.observation
+        light, mean = observation.light, observation.level
+        pairs = zip(observation.search.families, observation.family_extremes, strict=True)
+        shapes = [Shape(fit.frequency, ends.high / mean - 1.0, 1.0 - ends.low / mean) for fit, ends in pairs]
+        shapes.sort(key=lambda shape: -(shape.above + shape.below))
+        known = {name: measure.value for name, measure in report.measures.items() if measure.value is not None}
+        return cls(light, tuple(shapes), known)
+
+    @property
+    def frequency(self) -> float | None:
+        """Fundamental of the deepest family; None for steady light. [Hz]"""
+        return self.shapes[0].fundamental if self.shapes else None
+
+    @property
+    def largest_scale(self) -> float:
+        """Scale at which the darkest moment is dark."""
+        below = sum(shape.below for shape in self.shapes)
+        return 1.0 / below if below > 0 else math.inf
+
+    def at(self, speed: float, scale: float) -> TunableLight:
+        """Give the light made faster and shallower; a pulse stays a pulse."""
+        pulse = self.channel.pulse
+        if pulse is not None:
+            return TunableLight.typed(_pulse_channel(self.channel, _changed(pulse, speed, scale)))
+        channel = replace(
+            self.channel,
+            frequencies=self.channel.frequencies * speed,
+            amplitudes=self.channel.amplitudes * scale,
+            fundamentals=tuple(one * speed for one in self.channel.fundamentals),
+        )
+        shapes = tuple(Shape(one.fundamental * speed, one.above * scale, one.below * scale) for one in self.shapes)
+        known = {name: scale * self.known[name] for name in _BY_SHAPE if name in self.known}
+        return TunableLight(channel, shapes, known)
+
+    def percent_flicker(self, scale: float) -> float:
+        """Depth of the whole light, its families meeting in every phase. [%]"""
+        above, below = (sum(getattr(shape, side) for shape in self.shapes) for side in ("above", "below"))
+        return _depth(scale * above, scale * below)
+
+    def modulations(self, measure: str, speed: float, scale: float) -> tuple[FloatArray, FloatArray]:
+        """Frequencies [Hz] and depths [%] that a curve is held against, shape (k,) each."""
+        faster = self._faster(speed)
+        frequencies = [shape.fundamental for shape in faster.shapes]
+        depths = [shape.percent_flicker(scale) for shape in faster.shapes]
+        if measure != MODULATION:
+            return np.array(frequencies), np.array(depths)
+        lines, amplitudes = faster.channel.frequencies, faster.channel.amplitudes
+        return np.append(frequencies, lines), np.append(depths, 100.0 * scale * np.abs(amplitudes))
+
+    def critical_speeds(self, limit: Limit) -> Sequence[float]:
+        """Speeds at which a line or a family crosses an edge of the rule."""
+        if isinstance(limit.bound, Curve):
+            edges: tuple[float, ...] = limit.bound.edges
+        elif limit.measure.startswith(_CUT):
+            edges = (cut_of(limit.measure),)
+        else:
+            edges = LINE_FIGURES[limit.measure].edges if limit.measure in LINE_FIGURES else ()
+        frequencies = [*self.channel.frequencies, *(shape.fundamental for shape in self.shapes)]
+        return [edge / frequency for edge in edges for frequency in frequencies]
+
+    def figure(self, measure: str, speed: float, scale: float) -> float | None:
+        """Give a measure of the changed light; None if it cannot be had."""
+        if measure == MODULATION:
+            return self.percent_flicker(scale)
+        faster = self._faster(speed)
+        if measure == "percent_flicker":
+            return faster.percent_flicker(scale)
+        if measure.startswith(_CUT):
+            ends = faster.filtered(cut_of(measure))
+            return _depth(scale * ends[0], scale * ends[1])
+        base = faster.linear_figure(measure)
+        return None if base is None else scale * base
+
+    def linear_figure(self, measure: str) -> float | None:
+        """Give one of the measures that are proportional to the modulation."""
+        pulse = self.channel.pulse
+        if measure in LINE_FIGURES:
+            figure = LINE_FIGURES[measure]
+            return figure.of_lines(*self.lines_below(figure.edges[-1]))
+        if measure not in _BY_SHAPE:
+            return None
+        if pulse is None:
+            return self.known.get(measure)
+        if not self.shapes:
+            return 0.0
+        waveform = pwm(pulse.frequency, pulse.duty, pulse.low_level, pulse.decay)
+        return waveform.flicker_index if measure == "flicker_index" else waveform.rms_modulation
+
+    def lines_below(self, highest: float) -> tuple[FloatArray, ComplexArray]:
+        """Lines up to a frequency [Hz], all of them for a pulse."""
+        pulse = self.channel.pulse
+        if pulse is not None and self.shapes:
+            harmonics = np.arange(1.0, min(math.floor(highest / pulse.frequency * (1 + 1e-12)), 1 << 14) + 1)
+            return np.asarray(harmonics * pulse.frequency), pulse.amplitudes(harmonics)
+        keep = self.channel.frequencies <= highest
+        return self.channel.frequencies[keep], self.channel.amplitudes[keep]
+
+    def filtered(self, cut: float) -> tuple[float, float]:
+        """How far the light with all lines above `cut` [Hz] taken out rises above and falls below the mean."""
+        frequencies, amplitudes = self.lines_below(cut)
+        if not frequencies.size:
+            return 0.0, 0.0
+        if len(self.shapes) == 1:
+            return _swing(tuple(np.rint(frequencies / self.shapes[0].fundamental)), tuple(amplitudes), None)
+        return _swing(tuple(frequencies), tuple(amplitudes), _RECORD)
+
+    def findings(self) -> tuple[dict[str, Measure], tuple[Component, ...], tuple[Family, ...]]:
+        """Give measures, lines and families as a report holds them, without intervals: this light is exact."""
+        figures = {name: self.figure(name, 1.0, 1.0) for name in UNITS if name != MODULATION}
+        measures = {
+            name: Measure.missing(UNITS[name], "it cannot be computed from a line spectrum")
+            if value is None
+            else Measure(value, UNITS[name])
+            for name, value in figures.items()
+        }
+        lines = zip(self.channel.frequencies.tolist(), self.channel.amplitudes.tolist(), strict=True)
+        families = tuple(
+            Family(Measure(one.fundamental, "Hz"), Measure(one.percent_flicker(1.0), "%"), 0, "") for one in self.shapes
+        )
+        return measures, tuple(Component(frequency, amplitude) for frequency, amplitude in lines), families
+
+    def _faster(self, speed: float) -> TunableLight:
+        return _faster(self, speed)
+
+
+@functools.lru_cache(maxsize=64)
+def _faster(light: TunableLight, speed: float) -> TunableLight:
+    return light if speed == 1.0 else light.at(speed, 1.0)
+
+
+def cut_of(measure: str) -> float:
+    """Cut-off [Hz] in the name of a filtered measure: 200 for `percent_flicker_below_200hz`."""
+    return float(measure.removeprefix(_CUT).removesuffix("hz"))
+
+
+def _changed(pulse: Pulse, speed: float, scale: float) -> Pulse:
+    """Make a pulse faster, and scale its deviation from the mean by moving its off level."""
+    mean = pulse.low_level + (1.0 - pulse.low_level) * pulse.duty
+    high, low = (1.0 + scale * (level / mean - 1.0) for level in (1.0, pulse.low_level))
+    return replace(pulse, frequency=pulse.frequency * speed, low_level=max(low, 0.0) / high)
+
+
+def _pulse_channel(channel: ChannelLight, pulse: Pulse) -> ChannelLight:
+    harmonics = np.arange(1.0, channel.frequencies.size + 1)
+    return replace(
+        channel,
+        frequencies=np.asarray(harmonics * pulse.frequency),
+        amplitudes=pulse.amplitudes(harmonics),
+        fundamentals=(pulse.frequency,) if channel.fundamentals else (),
+        pulse=pulse,
+    )
+
+
+def _shapes_of(pulse: Pulse) -> tuple[Shape, ...]:
+    if pulse.duty == 1.0 or pulse.low_level == 1.0:
+        return ()
+    ends = pulse.at(np.array([0.0, pulse.duty]))
+    return (Shape(pulse.frequency, float(ends.max()) - 1.0, 1.0 - float(ends.min())),)
+
+
+@functools.lru_cache(maxsize=256)
+def _swing(
+    places: tuple[float, ...], amplitudes: tuple[complex, ...], record: tuple[float, float] | None
+) -> tuple[float, float]:
+    """Extremes about the mean of a sum of lines, over one cycle of harmonics or over a record of frequencies."""
+    points, rate = (_POINTS, float(_POINTS)) if record is None else (round(record[0] * record[1]), record[0])
+    turns = np.arange(points) / rate
+    light = np.zeros(turns.size)
+    for place, amplitude in zip(places, amplitudes, strict=True):
+        light += (amplitude * np.exp(2j * np.pi * place * turns)).real
+    return float(light.max()), float(-light.min())
