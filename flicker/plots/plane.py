@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from flicker.errors import NotMeasurable
 from flicker.plots.style import (
     FAINT,
     INK,
@@ -45,9 +46,16 @@ def draw_plane(channel: ChannelReport, title: str) -> Figure:
     Figure
         Regions shaded and named; large marks for families at their percent flicker, small ones for lines, the
         one that decides the region pointed at.
+
+    Raises
+    ------
+    NotMeasurable
+        If the depth is not known, for then the light has no place.
     """
     from flicker.limits import risk_curves
 
+    if channel.risk_region is None:
+        raise NotMeasurable(channel.measures["percent_flicker"].reason or "the depth is not known")
     figure, axes = new_figure(title)
     families = [
         (family.fundamental.value, family.percent_flicker.value)
@@ -65,19 +73,17 @@ def draw_plane(channel: ChannelReport, title: str) -> Figure:
     if lines:
         axes.plot(*np.transpose(lines), linestyle="none", marker="|", color=FAINT, markersize=7, label="spectral lines")
     if families:
-        marker = REGION_MARKERS[channel.risk_region.region] if channel.risk_region else "s"
         axes.plot(
             *np.transpose(families),
             linestyle="none",
-            marker=marker,
+            marker=REGION_MARKERS[channel.risk_region.region],
             markersize=11,
             color=LIGHT,
             markeredgecolor=PAPER,
             label="this light: percent flicker at its fundamental",
         )
-    if channel.risk_region is not None:
-        by_depth = any(depth == channel.risk_region.modulation for _, depth in families)
-        _point_at(axes, channel.risk_region, "percent flicker" if by_depth else "a line of")
+    by_depth = any(depth == channel.risk_region.modulation for _, depth in families)
+    _point_at(axes, channel.risk_region, "percent flicker" if by_depth else "a line of")
     if lines or families:
         axes.legend(loc="lower right", fontsize=8, frameon=True, framealpha=0.9)
     return figure
@@ -103,7 +109,7 @@ def _shade(axes: Axes, low_risk: Curve, no_effect: Curve) -> None:
         axes.plot(frequency, bound, color=INK, linewidth=1.0)
     for region, x, y in (
         ("above-low-risk", 4.0, 4.0),
-        ("low-risk", 250.0, 11.0),
+        ("low-risk", 16.0, 0.26),
         ("no-observable-effect", 700.0, 0.9),
     ):
         axes.text(

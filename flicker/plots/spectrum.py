@@ -32,16 +32,13 @@ def draw_spectrum(channel: ChannelReport, title: str) -> Figure:
     Returns
     -------
     Figure
-        Peak amplitudes in percent of the mean; the lines that were found are marked, the strongest are named.
-
-    Raises
-    ------
-    NotMeasurable
-        If the mean level is unknown, for then nothing is relative to it.
+        Peak amplitudes in percent of the mean, in the unit of the readings where the mean level is lost; the lines
+        that were found are marked, the strongest are named.
     """
     frequencies, amplitudes = channel.observation.spectrum()
     above_zero = frequencies > 0
-    frequencies, percent = frequencies[above_zero], 100 * np.abs(amplitudes[above_zero])
+    relative = channel.trace.mean_known
+    frequencies, percent = frequencies[above_zero], (100 if relative else 1) * np.abs(amplitudes[above_zero])
     figure, axes = new_figure(title)
     lines = channel.components
     lowest = 0.3 * min((line.frequency for line in lines), default=4 * frequencies[0])
@@ -67,7 +64,8 @@ def draw_spectrum(channel: ChannelReport, title: str) -> Figure:
     axes.set(xscale="log", yscale="log", xlim=(left, 1.08 * nyquist), ylim=(floor / 3, 6 * top))
     plain_logarithms(axes)
     axes.set_xlabel("frequency (Hz)")
-    axes.set_ylabel("peak amplitude (% of the mean)")
+    unit = "% of the mean" if relative else channel.trace.unit
+    axes.set_ylabel(f"peak amplitude ({unit})" if unit else "peak amplitude")
     axes.legend(loc="lower left", fontsize=8, frameon=True)
     return figure
 

@@ -34,8 +34,8 @@ def draw_waveform(channel: ChannelReport, title: str) -> Figure:
     Returns
     -------
     Figure
-        Left the readings over time with the dark level, right the mean cycle relative to its mean; only the
-        readings where no cycle could be found.
+        Left the readings over time with the dark level, right the mean cycle relative to its mean level, in the unit of
+        the readings where that level is lost; only the readings where no cycle could be found.
     """
     from matplotlib.figure import Figure
 
@@ -54,7 +54,7 @@ def draw_waveform(channel: ChannelReport, title: str) -> Figure:
 
 def _draw_readings(axes: Axes, channel: ChannelReport) -> None:
     trace = channel.trace
-    frequency = channel.observation.fundamental.value
+    frequency = channel.measures["fundamental_frequency"].value
     count = round(trace.sample_rate * _CYCLES_SHOWN / frequency) if frequency else _SAMPLES_SHOWN
     count = min(max(count, 2), _SAMPLES_SHOWN, trace.samples)
     times = (trace.times()[:count] - trace.start) * 1e3
@@ -76,16 +76,19 @@ def _draw_readings(axes: Axes, channel: ChannelReport) -> None:
 
 
 def _draw_cycle(axes: Axes, channel: ChannelReport) -> None:
-    cycle = channel.observation.cycle
-    middle = np.angle(np.sum(cycle.light * np.exp(2j * np.pi * cycle.phase))) / (2 * np.pi)
+    cycle, trace = channel.observation.cycle, channel.trace
+    middle = np.angle(np.sum(cycle.levels * np.exp(2j * np.pi * cycle.phase))) / (2 * np.pi)
     phase = (cycle.phase - middle + 0.5) % 1.0
     order = np.argsort(phase)
-    phase, light, spread = phase[order], cycle.light[order], _NORMAL_95 * cycle.standard_error[order]
+    scale = cycle.mean if trace.mean_known and cycle.mean > 0 else None
+    phase, light = phase[order], cycle.levels[order] / (scale or 1.0)
+    spread = _NORMAL_95 * cycle.standard_error[order] / (scale or 1.0)
     dress(axes)
     axes.fill_between(phase, light - spread, light + spread, color=LIGHT, alpha=0.25, linewidth=0)
     axes.plot(phase, light, color=LIGHT, linewidth=1.5)
-    axes.axhline(1.0, color=FAINT, linewidth=1.0)
-    axes.annotate("mean", (1, 1), xycoords=("axes fraction", "data"), xytext=(-2, 3), textcoords="offset points",
+    mean = float(np.mean(light))
+    axes.axhline(mean, color=FAINT, linewidth=1.0)
+    axes.annotate("mean", (1, mean), xycoords=("axes fraction", "data"), xytext=(-2, 3), textcoords="offset points",
                   ha="right", color=FAINT, fontsize=9)  # fmt: skip
     depth = channel.measures.get("percent_flicker")
     heading = "mean cycle with its 95 % band"
@@ -93,6 +96,9 @@ def _draw_cycle(axes: Axes, channel: ChannelReport) -> None:
         heading += f"; percent flicker {depth.value:.3g} %"
     axes.set_title(heading, loc="left", color=INK, fontsize=10)
     axes.set_xlabel("phase (cycles), brightest half in the middle")
-    axes.set_ylabel("light over its mean")
     axes.set_xlim(0, 1)
-    axes.set_ylim(min(0.0, float(np.min(light - spread))), None)
+    if scale is None:
+        axes.set_ylabel(f"reading about a lost mean ({trace.unit})" if trace.unit else "reading about a lost mean")
+    else:
+        axes.set_ylabel("light over its mean")
+        axes.set_ylim(min(0.0, float(np.min(light - spread))), None)
