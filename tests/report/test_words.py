@@ -62,7 +62,7 @@ def test_what_is_advised_is_enough_and_hardly_more():
     fold, frequency = map(float, re.search(r"modulation (.+)-fold .* to (.+) Hz", advice).groups())
     assert fold == pytest.approx(50 / 19.2, rel=1e-2)
     assert frequency == pytest.approx(625.0, rel=1e-2)
-    assert "raise the frequency to 1250 Hz" in answers(report_words(report_of(pwm(100.0, 0.3))))["Next"]
+    assert "raise the frequency to 1250 Hz" in answers(report_words(report_of(pwm(110.0, 0.3))))["Next"]
 
 
 def test_steady_light_is_called_steady():
