@@ -2,7 +2,9 @@
 Write into the pages what the code itself says: help texts, tables, outputs.
 
 `python docs/refresh.py` brings every page up to date, `--check` only names the pages that are not and then leaves
-with status 1. In a page, `<!-- from the code: NAME WORDS -->` opens what is written, `<!-- end -->` closes it.
+with status 1; `--pictures` draws the pictures of the manual.
+
+In a page, `<!-- from the code: NAME WORDS -->` opens what is written, `<!-- end -->` closes it.
 """
 
 from __future__ import annotations
@@ -154,8 +156,21 @@ def stale_pages() -> dict[Path, str]:
     return {page: new for page, old in texts.items() if (new := refreshed(old)) != old}
 
 
+def draw_pictures() -> None:
+    """Draw the pictures of the manual anew."""
+    import flicker
+    from flicker.plots.pictures import write_pictures
+
+    name = "bridge-display-night"
+    report = flicker.measure(flicker.read(ROOT / "fixtures" / f"{name}.csv", dark_level=0.012))
+    write_pictures(report.captures[0], ROOT / "docs" / "pictures", name)
+
+
 def main(arguments: list[str]) -> int:
     """Refresh the pages, or with `--check` only name those that are stale."""
+    if arguments == ["--pictures"]:
+        draw_pictures()
+        return 0
     stale = stale_pages()
     checking = arguments == ["--check"]
     for page, text in stale.items():
