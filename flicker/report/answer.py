@@ -1,4 +1,4 @@
-"""The four lines that a person at the bench reads first: what it is, how deep, how risky, what to do next."""
+"""The lines that a person at the bench reads first: what it is, how deep, how risky, what to do next."""
 
 from __future__ import annotations
 
@@ -19,6 +19,8 @@ REGION_WORDS = {
     "above-low-risk": "above low risk",
 }
 REGION_MARKS = {"no-observable-effect": "●", "low-risk": "◆", "above-low-risk": "▲"}
+_SEIZURES = (3.0, 70.0)  # flicker that can provoke them (public guidance on photosensitivity) [Hz]
+_SLIGHT = 5.0  # depth below which IEEE 1789-2015, practice 3, sees no such risk (from memory) [%]
 _GOES_OUT = 99.5  # percent flicker from which the darkest moment counts as dark [%]
 
 
@@ -79,7 +81,7 @@ def next_step(channel: ChannelReport) -> str:
     """Say what to do next: mend the capture, or mend the light."""
     broken = next((note for note in channel.notes if note.severity == "error"), None)
     if broken is not None:
-        return f"mend the capture first: {broken.message}"
+        return f"mend the capture first: see {broken.code} below"
     place = channel.risk_region
     if place is None:
         unknown = channel.measures["percent_flicker"]
@@ -90,6 +92,18 @@ def next_step(channel: ChannelReport) -> str:
     if place.region == "above-low-risk":
         return f"for low risk, {_cure(channel, 'ieee1789-low-risk')}"
     return f"for no observable effect, {_cure(channel, 'ieee1789-no-effect')}"
+
+
+def caution(channel: ChannelReport) -> str:
+    """Warn of light that can hurt the one who measures it; empty where there is no such light."""
+    for family in channel.families:
+        frequency, depth = family.fundamental.value, family.percent_flicker.value
+        if frequency is not None and _SEIZURES[0] <= frequency <= _SEIZURES[1] and (depth is None or depth > _SLIGHT):
+            return (
+                "flicker between 3 and 70 Hz can provoke seizures in photosensitive people: do not stare into this "
+                "light, warn those nearby"
+            )
+    return ""
 
 
 def severity(channel: ChannelReport) -> tuple[int, float]:
@@ -119,4 +133,4 @@ def _cure(channel: ChannelReport, limit: str) -> str:
     only = channel.families[0] if len(channel.families) == 1 else None
     if only is not None and "mains" not in only.origin and found.least_frequency is not None:
         ways.append(f"raise the frequency to {quantity(round_up(found.least_frequency), 'Hz')}")
-    return " or ".join(ways)
+    return " or ".join(ways) or "change the waveform: neither its frequency nor its depth alone is enough"

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING
 
-from flicker.report.answer import depth, next_step, risk, short_reason, what
+from flicker.report.answer import caution, depth, next_step, risk, short_reason, what
 from flicker.report.figures import measure_name, measured, quantity
 from flicker.report.overview import OverviewEntry, channel_title, overview, overview_entries
 from flicker.report.typesetting import Paint, wrap
@@ -68,19 +68,14 @@ def _channel_block(
     yield paint.bold(channel_title(capture, channel))
     yield from wrap(_recording(channel), width, "")
     yield ""
-    answers = {
-        "What": what(channel),
-        "Depth": depth(channel),
-        "Risk": risk(channel),
-        "Next": next_step(channel),
-    }
     region = channel.risk_region.region if channel.risk_region else None
-    for label, text in answers.items():
-        first, *rest = wrap(text, width - 9, "")
-        weight = ("1", _COLOURS[region]) if label == "Risk" and region else ("1",) if label != "Next" else ("0",)
-        yield f"{_INDENT}{paint.faint(f'{label:<5}')}  {paint(first, *weight)}"
-        yield from (f"{_INDENT}{'':<5}  {paint(line, *weight)}" for line in rest)
-    yield from _other_families(channel)
+    bold, plain = ("1",), ("0",)
+    yield from _answer("What", what(channel), width, paint, bold)
+    yield from _other_families(channel, width, paint)
+    yield from _answer("Depth", depth(channel), width, paint, bold)
+    yield from _answer("Risk", risk(channel), width, paint, ("1", _COLOURS[region]) if region else bold)
+    yield from _answer("Care", caution(channel), width, paint, bold)
+    yield from _answer("Next", next_step(channel), width, paint, plain)
     yield ""
     yield from _measure_table(channel, width, paint, verbose)
     yield from _missing(channel, width)
@@ -98,14 +93,20 @@ def _recording(channel: ChannelReport) -> str:
     return f"{words}; mean {quantity(channel.observation.mean, trace.unit)} above dark, {dark}"
 
 
-def _other_families(channel: ChannelReport) -> Iterable[str]:
+def _answer(label: str, text: str, width: int, paint: Paint, weight: tuple[str, ...]) -> Iterable[str]:
+    """Set one line of the answer beside its label; nothing where there is no text."""
+    for number, line in enumerate(wrap(text, width - 9, "")):
+        yield f"{_INDENT}{paint.faint(f'{label:<5}') if number == 0 else ' ' * 5}  {paint(line, *weight)}"
+
+
+def _other_families(channel: ChannelReport, width: int, paint: Paint) -> Iterable[str]:
     for family in channel.families[1:]:
         if family.fundamental.value is None:
             continue
-        words = f"{_INDENT}{'Also':<5}  {measured(family.fundamental)[0]}"
+        words = quantity(family.fundamental.value, "Hz", 6)
         if family.percent_flicker.value is not None:
-            words += f", {measured(family.percent_flicker)[0]}"
-        yield f"{words}, {family.origin}" if family.origin else words
+            words += f", {quantity(family.percent_flicker.value, '%', 3)} deep"
+        yield from _answer("also", f"{words}, {family.origin}" if family.origin else words, width, paint, ("0",))
 
 
 def _measure_table(channel: ChannelReport, width: int, paint: Paint, verbose: bool) -> Iterable[str]:

@@ -4,6 +4,7 @@ from pathlib import Path
 import pytest
 
 import flicker
+from flicker.conditioning import condition
 from flicker.limits.region import REGIONS
 from flicker.plots.style import REGION_MARKERS
 from flicker.report.answer import REGION_MARKS, REGION_WORDS
@@ -84,6 +85,31 @@ def test_a_lost_mean_is_told_once_with_its_cure():
     assert answer["Next"] == "cure ac-coupled, then measure again"
     assert words.count("--mean") == 1
     assert "percent flicker, flicker index, RMS modulation: see ac-coupled below" in words
+
+
+def test_slow_deep_flicker_comes_with_a_caution():
+    """Guidance on photosensitivity (from public summaries): 3 to 70 Hz; IEEE 1789-2015, practice 3: 5 % below 90 Hz."""
+    assert "seizures" in report_words(report_of(sine(15.0, 0.4), duration=2.0))
+    for harmless in (sine(15.0, 0.03), sine(90.0, 0.4), sine(1.5, 0.4)):
+        assert "seizures" not in report_words(report_of(harmless, duration=4.0, sample_rate=2000.0))
+
+
+def test_a_second_light_is_named():
+    trace = sampled(
+        lambda times: sine(100.02, 0.1).at(times) + sine(733.3, 0.3).at(times) - 1,
+        sample_rate=20_000.0, duration=0.5, noise=0.001, seed=3,
+    )  # fmt: skip
+    words = report_words(flicker.measure(Capture((trace,))))
+    assert answers(words)["What"].startswith("733.3 Hz")
+    assert re.search(r"^  also   100\.02 Hz, 10 % deep, twice the mains", words, re.M)
+
+
+def test_a_broken_capture_is_to_be_mended_first():
+    trace = sampled(sine(100.0, 0.2).at, sample_rate=20_000.0, duration=0.3, noise=0.001, seed=1, mean=-1.0)
+    report = flicker.measure(condition(Capture((trace,))))
+    words = report_words(report)
+    assert answers(words)["Next"] == "mend the capture first: see negative-light below"
+    assert words.count("--inverted") == 1
 
 
 def test_every_measure_is_printed_or_excused():
