@@ -59,7 +59,8 @@ _INTERVAL = re.compile(
     r"|dt|delta[ _]?t|sampl\w* (?:period|time)|hres|x[ _-]?incr?|tstep|t ?sample|period"
 )
 _RATE = re.compile(
-    r"(?:sampl\w*|acqui\w*|adc|scan|data|effective|actual)?[ _.-]*(?:rate|freq\w*|clock)|fs|f_?s(?:ample)?|sampling|samples per second|sps"
+    r"(?:sampl\w*|acqui\w*|adc|scan|data|effective|actual)?[ _.-]*(?:rate|freq\w*|clock)"
+    r"|fs|f_?s(?:ample)?|sampling|samples per second|sps"
 )
 _NO_RATE = re.compile(r"freq\w*|clock|resolution|period|time resolution")  # alone they mean something else
 _FIRST = re.compile(
@@ -69,8 +70,8 @@ _LAST = re.compile(r"(?:last|stop|end|final)[ _-]*(?:time)?|x[ _-]?(?:stop|end|l
 _TIME_UNIT = re.compile(r"(?:horizontal|hor\w*|time|x)[ _-]*(?:axis)?[ _-]*units?")
 _READING_UNIT = re.compile(r"(?:vertical|vert\w*|y|signal|reading|light|volt\w*)[ _-]*(?:axis)?[ _-]*units?")
 _FACT = re.compile(
-    r"instrument|model|serial|date|time stamp|firmware|source|format|type|version|operator|file|title|comment|record|probe|trigger|pt fmt|"
-    r"\w+ units?|device|lamp|owner|site|place",
+    r"instrument|model|serial|date|time stamp|firmware|source|format|type|version|operator|file|title|comment"
+    r"|record|probe|trigger|pt fmt|\w+ units?|device|lamp|owner|site|place",
     re.IGNORECASE,
 )
 _VALUE = re.compile(r"\s*([-+]?(?:\d+[.,]?\d*|[.,]\d+)(?:[eE][-+]?\d+)?)\s*(.*?)\s*")
@@ -209,7 +210,8 @@ def _take(head: Head, key: str, value: str) -> None:
 
 
 def _quantity(value: str, unit: str, dimension: str) -> float | None:
-    """Read a value with the unit behind it, or else the one that its key names; None if it is none of this dimension."""
+    """Read a value with the unit behind it, or else the one that its key names; None if it is none of this "
+    "dimension."""
     found = _VALUE.fullmatch(value)
     if found is None:
         return None

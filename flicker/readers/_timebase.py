@@ -106,8 +106,8 @@ def _without_pairs(
         Note(
             "min-max-pairs",
             "warning",
-            "each time stands twice, with the smallest and the largest reading (peak detection): their mean is measured, which flattens "
-            "pulses shorter than the interval; record in sample mode",
+            "each time stands twice, with the smallest and the largest reading (peak detection): their mean is "
+            "measured, which flattens pulses shorter than the interval; record in sample mode",
         )
     )
     return times[0:even:2], [0.5 * (column[0:even:2] + column[1:even:2]) for column in readings]
@@ -170,8 +170,9 @@ def _longest(
         Note(
             "segments",
             "warning",
-            f"the file holds {len(lengths)} records {which}, so nobody knows how far apart they are: only record {part + 1}, the longest "
-            f"({lengths[part]} rows), is measured; export the records one by one for the others",
+            f"the file holds {len(lengths)} records {which}, so nobody knows how far apart they are: only record "
+            f"{part + 1}, the longest ({lengths[part]} rows), is measured; export the records one by one for the "
+            "others",
         )
     )
     return times[rows], [column[rows] for column in readings]
@@ -233,7 +234,8 @@ def _split(
             Note(
                 "segments",
                 "info",
-                f"the file holds {len(lengths)} segments of {lengths[0]} rows; each is used at its own time, none is joined{left_out}",
+                f"the file holds {len(lengths)} segments of {lengths[0]} rows; each is used at its own time, none is "
+                f"joined{left_out}",
             )
         )
     else:
@@ -241,8 +243,9 @@ def _split(
             Note(
                 "gap",
                 "warning",
-                f"{len(gaps)} gap{'s' * (len(gaps) > 1)} in the times, the longest {widths.max():.4g} s, the first at {times[gaps[0]]:.6g} s: the parts "
-                f"are used at their own times, never joined{left_out}; record without interruption",
+                f"{len(gaps)} gap{'s' * (len(gaps) > 1)} in the times, the longest {widths.max():.4g} s, the first "
+                f"at {times[gaps[0]]:.6g} s: the parts are used at their own times, never joined{left_out}; record "
+                "without interruption",
             )
         )
     if kept.all():
@@ -282,7 +285,8 @@ def _rounded(resolution: float, step: float) -> Note:
     return Note(
         "rounded-time",
         "info",
-        f"the times are rounded to {resolution:.3g} s, the samples are {step:.4g} s apart: they are taken as evenly spaced",
+        f"the times are rounded to {resolution:.3g} s, the samples are {step:.4g} s apart: they are taken as evenly "
+        "spaced",
     )
 
 
@@ -310,8 +314,8 @@ def _resampled(
         Note(
             "uneven-time",
             "warning",
-            f"the times are uneven, up to {deviation / step:.2g} sample intervals off even ones: readings were interpolated, which weakens "
-            "fast flicker; record with a steady clock",
+            f"the times are uneven, up to {deviation / step:.2g} sample intervals off even ones: readings were "
+            "interpolated, which weakens fast flicker; record with a steady clock",
         )
     )
     history.append(f"interpolated to even times, {1 / step:.6g} Hz")
@@ -360,6 +364,6 @@ def _disagreeing(rate: float, stated: float, used: str) -> Note:
     return Note(
         "rate-disagrees",
         "warning",
-        f"{where} states {stated:.6g} Hz, the time column {rate:.6g} Hz; {used} was believed: check which is right, for every frequency "
-        "depends on it",
+        f"{where} states {stated:.6g} Hz, the time column {rate:.6g} Hz; {used} was believed: check which is right, "
+        "for every frequency depends on it",
     )

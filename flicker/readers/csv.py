@@ -290,8 +290,9 @@ def _overloaded(count: int, name: str) -> Note:
     return Note(
         "clipped",
         "error",
-        f"{count} reading{'s' * (count > 1)} of {name} {'are overload marks' if count > 1 else 'is an overload mark'} or blank: the instrument "
-        "was out of range and every depth is cut; measure again with less gain",
+        f"{count} reading{'s' * (count > 1)} of {name} "
+        f"{'are overload marks' if count > 1 else 'is an overload mark'} or blank: the instrument was out of range "
+        "and every depth is cut; measure again with less gain",
         voids=DEPTH_MEASURES,
     )
 
