@@ -52,7 +52,7 @@ class Shape:
 
 
 def _depth(above: float, below: float) -> float:
-    return 100.0 * (above + below) / (2.0 + above - below)
+    return min(100.0 * (above + below) / (2.0 + above - below), 100.0)
 
 
 @dataclass(frozen=True, eq=False)
