@@ -89,24 +89,27 @@ def _all_at_once(margins: Sequence[Margin]) -> str:
 
 
 def _row(one: Margin) -> tuple[str, ...]:
-    ripple = "–"
-    if one.ripple_factor is not None:
-        ripple = "none"
-        if one.ripple_factor > 1.0:
-            fold = quantity(round_up(one.ripple_factor), "", 3)
-            ripple = f"{fold}-fold, {quantity(one.ripple_decibels or 0.0, 'dB', 3)}"
+    ripple = steady = reservoir = "–"
+    if one.ripple_factor is not None and one.ripple_decibels is not None and one.pedestal is not None:
+        fold = quantity(round_up(one.ripple_factor), "", 3)
+        ripple = _none_or(one.pedestal, f"{fold}-fold, {quantity(one.ripple_decibels, 'dB', 3)}")
+        steady = _none_or(one.pedestal, quantity(100 * round_up(one.pedestal or 1.0), "%", 3))
+    if one.capacitance_factor is not None:
+        grown = quantity(round_up(one.capacitance_factor), "", 3)
+        reservoir = _none_or(one.capacitance_factor - 1.0, f"× {grown}")
     return (
         one.limit.id,
         OUTCOME_WORDS[one.verdict],
         "–" if one.least_frequency is None else quantity(round_up(one.least_frequency), "Hz"),
         "–" if one.most_percent_flicker is None else quantity(one.most_percent_flicker, "%", 3),
         ripple,
-        "–"
-        if one.pedestal is None
-        else "none"
-        if one.pedestal == 0
-        else quantity(100 * round_up(one.pedestal), "%", 3),
+        steady,
+        reservoir,
     )
+
+
+def _none_or(change: float, text: str) -> str:
+    return "none" if change == 0 else text
 
 
 def _line(cells: Sequence[str], wide: Sequence[int]) -> str:
