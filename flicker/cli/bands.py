@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import click
 
@@ -17,6 +17,9 @@ from flicker.cli.options import (
     several,
 )
 from flicker.cli.output import colour_wanted, make_folder, print_words, terminal_width, write_json
+
+if TYPE_CHECKING:
+    from flicker.camera.answer import Answer
 
 _what_to_predict = several(
     click.option(
@@ -37,6 +40,10 @@ _what_to_predict = several(
 _outputs = several(
     click.option("--json", "json_target", metavar="FILE|-", help="Write the answer as JSON; - for standard output."),
     click.option("--figures", metavar="DIR", help="Write pictures of the predicted frames into a folder."),
+    click.option("--clip", metavar="FILE.mp4|.gif", help="Write a clip of the first exposure that rolls as it will."),
+    click.option(
+        "--scene", metavar="IMAGE", help="A still of your own for pictures and clip, in place of a plain one."
+    ),
 )
 
 
@@ -58,6 +65,8 @@ def command(
     grade_gain: float | None,
     json_target: str | None,
     figures: str | None,
+    clip: str | None,
+    scene: str | None,
     **options: Any,
 ) -> None:
     """Predict what a camera will record of a light: bands, how deep, how many, which way they roll.
@@ -86,9 +95,22 @@ def command(
         viewing_distance=viewing_distance,
         gain=1.0 if grade_gain is None else grade_gain,
     )
-    if figures is not None:
-        from flicker.plots.frame import save_frames
-
-        save_frames(answer, make_folder(figures))
+    notes = _draw(answer, figures, clip, scene) if figures or clip else ()
     write_json(answer.to_dict(), json_target)
-    print_words(bands_words(answer, width=terminal_width(), colour=colour_wanted()), json_target)
+    words = bands_words(answer, width=terminal_width(), colour=colour_wanted())
+    print_words("\n".join([words, *notes]), json_target)
+
+
+def _draw(answer: Answer, figures: str | None, clip: str | None, scene: str | None) -> list[str]:
+    """Write the pictures that are asked for, and say so."""
+    from flicker.plots.clip import read_scene, write_clip
+    from flicker.plots.frame import save_frames
+    from flicker.report.bands import clip_words
+
+    still = None if scene is None else read_scene(scene)
+    notes = []
+    if clip is not None:
+        notes.append(clip_words(write_clip(answer, clip, scene=still)))
+    if figures is not None:
+        notes.append(f"  pictures: {', '.join(str(path) for path in save_frames(answer, make_folder(figures), still))}")
+    return notes

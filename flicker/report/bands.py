@@ -14,6 +14,7 @@ if TYPE_CHECKING:
     from flicker.camera import Camera, Prediction
     from flicker.camera.answer import Answer
     from flicker.light import Light
+    from flicker.plots.clip import Clip
 
 _LABEL = 9
 _NULL = 5e-4  # of a cycle: how near to whole cycles an exposure counts as a null
@@ -318,3 +319,14 @@ def _notes(predictions: Sequence[Prediction], tolerance: float | None) -> Iterab
     for reason in dict.fromkeys(reason for one in predictions for reason in one.reasons.values()):
         if reason.startswith("the camera's"):
             yield f"i {reason[0].upper()}{reason[1:]}."
+
+
+def clip_words(clip: Clip) -> str:
+    """Say what was written, how fast it plays, and the caution that goes with it."""
+    speed = "at the speed of life"
+    if clip.slowed != 1:
+        speed = f"slowed down {quantity(clip.slowed, 'times', 2)} to stay within three flashes a second"
+    return (
+        f"  clip: {clip.path}, {quantity(clip.duration, 's', 2)}, {speed}\n"
+        "  Caution: it shows flicker; people who are sensitive to it should not watch."
+    )
