@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
-_TEXTS = ("dock-camera.toml", "walk-through.md")
+_TEXTS = ("dock-camera.toml", "night-watch.toml", "night-watch-new-driver.toml", "walk-through.md")
 
 
 def demo_files() -> tuple[str, ...]:
@@ -15,7 +15,7 @@ def demo_files() -> tuple[str, ...]:
 
 
 def write_demo(folder: Path) -> None:
-    """Write the captures, their truth, a camera file and a commented walk through the commands."""
+    """Write the captures, their truth, camera and plan files and a commented walk through the commands."""
     from flicker.files import write_text
 
     write_captures(folder)
