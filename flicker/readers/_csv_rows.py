@@ -61,7 +61,7 @@ class RowReader:
         width = int(np.argmax(piece[: _LONGEST_LINE + 1] == LINE_END)) + 1
         if piece.size % width == 0 and piece[width - 1] == LINE_END:
             lines = piece.reshape(-1, width)
-            if (lines[:, -1] == LINE_END).all():
+            if (lines[:, -1] == LINE_END).all() and np.count_nonzero(piece == LINE_END) == len(lines):
                 return self._equal_lines(lines)
         return self._any_lines(piece)
 

@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     import soundfile
 
 _BLOCK = 1 << 18  # frames
+_MOST_A_BYTE = 20_000  # frames that the best packing of silence puts into a byte
 _SUBTYPES = {
     "PCM_S8": "8-bit",
     "PCM_U8": "8-bit",
@@ -149,6 +150,11 @@ def read_wav(path: Path, options: ReadOptions) -> Capture:
     known = facts(path)
     if known.frames == 0:
         raise UnreadableFileError(f"{path}: holds no samples; record it again")
+    size = path.stat().st_size
+    if known.frames > _MOST_A_BYTE * size:
+        raise UnreadableFileError(
+            f"{path}: its head promises {known.frames} samples, more than {size} bytes can hold; copy it again"
+        )
     chosen = _chosen(path, options.channels, known.channels)
     light = _all_samples(path, chosen, known)
     read_as = f"{known.sample_format} samples, full scale is 1, {known.sample_rate:g} Hz from the file's head"
