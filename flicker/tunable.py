@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import functools
 import math
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -23,7 +23,7 @@ if TYPE_CHECKING:
 _LINES = 200  # of a typed-in pulse that a curve is held against
 _BY_SHAPE = ("flicker_index", "rms_modulation")
 _CUT = "percent_flicker_below_"
-_POINTS = 4096  # of a cycle of filtered light
+_LEAST_POINTS = 12  # of a cycle of filtered light, as a power of two
 _RECORD = (20_000.0, 1.0)  # sample rate [Hz] and duration [s] for filtered light of several families, those of JA10.5
 
 
@@ -93,7 +93,11 @@ class TunableLight:
 
     @property
     def largest_scale(self) -> float:
-        """Scale at which the darkest moment is dark."""
+        """Scale at which the darkest moment is dark, or the drive of a pulse goes down to nothing."""
+        pulse = self.channel.pulse
+        if pulse is not None and self.shapes:
+            mean = pulse.low_level + (1.0 - pulse.low_level) * pulse.duty
+            return mean / (mean - pulse.low_level)
         below = sum(shape.below for shape in self.shapes)
         return 1.0 / below if below > 0 else math.inf
 
@@ -181,12 +185,14 @@ class TunableLight:
         if not frequencies.size:
             return 0.0, 0.0
         if len(self.shapes) == 1:
-            return _swing(tuple(np.rint(frequencies / self.shapes[0].fundamental)), tuple(amplitudes), None)
-        return _swing(tuple(frequencies), tuple(amplitudes), _RECORD)
+            return _cycle_swing(tuple(np.rint(frequencies / self.shapes[0].fundamental)), tuple(amplitudes))
+        return _record_swing(tuple(frequencies), tuple(amplitudes))
 
-    def findings(self) -> tuple[dict[str, Measure], tuple[Component, ...], tuple[Family, ...]]:
+    def findings(
+        self, names: Iterable[str] = UNITS
+    ) -> tuple[dict[str, Measure], tuple[Component, ...], tuple[Family, ...]]:
         """Give measures, lines and families as a report holds them, without intervals: this light is exact."""
-        figures = {name: self.figure(name, 1.0, 1.0) for name in UNITS if name != MODULATION}
+        figures = {name: self.figure(name, 1.0, 1.0) for name in names if name != MODULATION}
         measures = {
             name: Measure.missing(UNITS[name], "it cannot be computed from a line spectrum")
             if value is None
@@ -239,13 +245,21 @@ def _shapes_of(pulse: Pulse) -> tuple[Shape, ...]:
 
 
 @functools.lru_cache(maxsize=256)
-def _swing(
-    places: tuple[float, ...], amplitudes: tuple[complex, ...], record: tuple[float, float] | None
-) -> tuple[float, float]:
-    """Extremes about the mean of a sum of lines, over one cycle of harmonics or over a record of frequencies."""
-    points, rate = (_POINTS, float(_POINTS)) if record is None else (round(record[0] * record[1]), record[0])
-    turns = np.arange(points) / rate
-    light = np.zeros(turns.size)
-    for place, amplitude in zip(places, amplitudes, strict=True):
-        light += (amplitude * np.exp(2j * np.pi * place * turns)).real
+def _cycle_swing(harmonics: tuple[float, ...], amplitudes: tuple[complex, ...]) -> tuple[float, float]:
+    """How far a sum of harmonics rises above and falls below its mean."""
+    points = 1 << max(_LEAST_POINTS, math.ceil(math.log2(8.0 * max(harmonics))))
+    spectrum = np.zeros(points // 2 + 1, dtype=complex)
+    np.add.at(spectrum, np.array(harmonics, dtype=int), np.array(amplitudes) * (points / 2))
+    light = np.fft.irfft(spectrum, points)
+    return float(light.max()), float(-light.min())
+
+
+@functools.lru_cache(maxsize=64)
+def _record_swing(frequencies: tuple[float, ...], amplitudes: tuple[complex, ...]) -> tuple[float, float]:
+    """How far a sum of lines rises above and falls below its mean within a record."""
+    rate, duration = _RECORD
+    times = np.arange(round(rate * duration)) / rate
+    light = np.zeros(times.size)
+    for frequency, amplitude in zip(frequencies, amplitudes, strict=True):
+        light += (amplitude * np.exp(2j * np.pi * frequency * times)).real
     return float(light.max()), float(-light.min())

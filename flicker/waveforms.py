@@ -58,7 +58,8 @@ def pwm(frequency: float, duty: float, low_level: float = 0.0, decay: float = 0.
     Rectangular PWM, on from phase 0 to `duty`; with `decay` as a slow emitter shows it [s].
 
     Flicker index of the rectangle 2 m D (1 - D) / (1 - m + 2 m D), rms of its two levels; behind one pole the index
-    follows from the two times at which the light crosses its mean, and the rms from the Fourier lines (all by hand).
+    follows from the two times at which the light crosses its mean, the rms from the mean of drive times light (by
+    hand).
     """
     pulse = Pulse(frequency, duty, low_level, decay)
     mean = low_level + (1 - low_level) * duty
@@ -73,8 +74,7 @@ def pwm(frequency: float, duty: float, low_level: float = 0.0, decay: float = 0.
         rise = decay * math.log((1 - lowest) / (1 - duty))
         fall = decay * math.log(highest / duty)
         index = share * ((1 - duty) * duty * period - (1 - duty) * rise - duty * fall) / period
-        harmonics = np.arange(1, 200_001)
-        rms = float(np.sqrt(0.5 * np.sum(np.abs(pulse.amplitudes(harmonics)) ** 2)))
+        rms = share * math.sqrt(max(duty * (1 - duty) - (highest - lowest) * decay / period, 0.0))
     depth, true_duty = pulse.percent_flicker, duty if decay == 0 else None
     return Waveform("pwm", frequency, pulse.at, pulse.amplitudes, depth, index, 100 * rms, true_duty)
 

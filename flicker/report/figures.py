@@ -86,3 +86,11 @@ def round_up(value: float) -> float:
     """Round up to three significant digits, so that what is advised is enough."""
     step = 10.0 ** (math.floor(math.log10(value)) - 2)
     return math.ceil(value / step - 1e-9) * step
+
+
+def round_down(value: float) -> float:
+    """Round down to three significant digits, so that what is allowed is not exceeded."""
+    if value <= 0.0:
+        return 0.0
+    step = 10.0 ** (math.floor(math.log10(value)) - 2)
+    return math.floor(value / step + 1e-9) * step

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 from flicker.camera.frequencies import CleanFrequencies
 from flicker.limits import Margin
-from flicker.report.figures import quantity, round_up
+from flicker.report.figures import quantity, round_down, round_up
 from flicker.report.typesetting import wrap
 from flicker.report.verdicts import OUTCOME_WORDS
 
@@ -101,7 +101,7 @@ def _row(one: Margin) -> tuple[str, ...]:
         one.limit.id,
         OUTCOME_WORDS[one.verdict],
         "–" if one.least_frequency is None else quantity(round_up(one.least_frequency), "Hz"),
-        "–" if one.most_percent_flicker is None else quantity(one.most_percent_flicker, "%", 3),
+        "–" if one.most_percent_flicker is None else quantity(round_down(one.most_percent_flicker), "%", 3),
         ripple,
         steady,
         reservoir,

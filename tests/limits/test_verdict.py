@@ -162,7 +162,7 @@ def test_an_unknown_rule_is_refused():
 
 
 def test_one_fail_outweighs_all_and_nothing_undecided_passes():
-    good, bad, open_ = (judge(DEPTH, depth(*value), (), ()) for value in ((1, 0), (99, 0), (30, 1)))
+    good, bad, open_ = (judge(DEPTH, depth(*value), (), ()).verdict for value in ((1, 0), (99, 0), (30, 1)))
     assert overall([good, open_, bad]) == "fail"
     assert overall([good, open_]) == "undecided"
     assert overall([good]) == "pass"
