@@ -89,7 +89,8 @@ def measures(_: list[str]) -> str:
     from flicker.metrics import METRICS
 
     rows = [
-        (f"[`{name}`](methods/{method_note(name)})", metric.unit, metric.source) for name, metric in METRICS.items()
+        (f"[`{metric.name}`](methods/{method_note(metric.name)})", metric.unit, metric.source)
+        for metric in sorted(METRICS.values(), key=lambda metric: metric.order)
     ]
     return table(("measure", "unit", "source"), rows)
 

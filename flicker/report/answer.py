@@ -116,10 +116,16 @@ def severity(channel: ChannelReport) -> tuple[int, float]:
 
 
 def _deciding(channel: ChannelReport, place: RiskRegion) -> str:
+    """Name the modulation that decides; where a line does so at a fundamental, the percent flicker stands beside it."""
     assert place.modulation is not None
-    by_depth = any(family.percent_flicker.value == place.modulation for family in channel.families)
     amount = quantity(place.modulation, "%", 3)
-    return f"percent flicker {amount}" if by_depth else f"a spectral line of {amount}"
+    for family in channel.families:
+        depth, frequency = family.percent_flicker.value, family.fundamental.value
+        if depth == place.modulation:
+            return f"percent flicker {amount}"
+        if depth is not None and frequency == place.frequency:
+            return f"percent flicker {quantity(depth, '%', 3)}, strongest line {amount}"
+    return f"a spectral line of {amount}"
 
 
 def _cure(channel: ChannelReport, limit: str) -> str:

@@ -26,7 +26,7 @@ class Paint:
 
 
 def wrap(text: str, width: int, indent: str, hang: int = 0) -> list[str]:
-    """Break text into lines, never between a number and its unit."""
-    kept = re.sub(r"(?<=\d) (?=%|[kMmµn]?(?:Hz|s|V)\b)", "\N{NO-BREAK SPACE}", text)
+    """Break text into lines, never between a number and its unit, nor inside the name of a standard."""
+    kept = re.sub(r"(?<=\d) (?=%|[kMmµn]?(?:Hz|s|V)\b)|(?<=\bIEEE) (?=\d)", "\N{NO-BREAK SPACE}", text)
     lines = textwrap.wrap(kept, width, initial_indent=indent, subsequent_indent=indent + " " * hang)
     return [line.replace("\N{NO-BREAK SPACE}", " ") for line in lines]

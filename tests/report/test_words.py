@@ -33,7 +33,10 @@ def test_the_answer_stands_at_the_top():
     answer = answers(words)
     assert answer["What"].startswith("240.3 Hz, PWM")
     assert answer["Depth"] == "percent flicker 100 %: the light goes out in every cycle"
-    assert answer["Risk"].startswith("▲ above low risk: a spectral line of 197 % at 240.3 Hz, low risk ends at 19.2 %")
+    assert answer["Risk"] == (
+        "▲ above low risk: percent flicker 100 %, strongest line 197 % at 240.3 Hz, low risk ends at 19.2 % "
+        "(IEEE 1789-2015)"
+    )
     assert answer["Next"] == "for low risk, shrink the modulation 22.1-fold or raise the frequency to 1250 Hz"
 
 
