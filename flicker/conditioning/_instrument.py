@@ -101,7 +101,7 @@ def with_drift(trace: Trace) -> Trace:
     if level <= 0:
         return trace
     place = np.linspace(-1.0, 1.0, _BLOCKS - 1)
-    trend = np.polynomial.polynomial.polyval(place, np.polynomial.polynomial.polyfit(place, coarse, 2))
+    trend = np.polyval(np.polyfit(place, coarse, 2), place)
     moved = float(trend.max() - trend.min())
     if moved < 0.01 * level or float(np.var(coarse - trend)) > 0.1 * float(np.var(trend)):
         return trace

@@ -39,7 +39,7 @@ class Shape:
         some = light[:: max(1, light.size // ENOUGH)]
         low, high = np.quantile(some, [0.005, 0.995])
         steps = np.diff(light[:ENOUGH])
-        noise = 0.0 if steps.size == 0 else float(np.median(np.abs(steps))) / (0.6745 * math.sqrt(2))
+        noise = 0.0 if steps.size == 0 else float(np.quantile(np.abs(steps), 0.5)) / (0.6745 * math.sqrt(2))
         return cls(smooth_mean(light), float(low), float(high), noise)
 
     @property

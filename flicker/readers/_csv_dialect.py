@@ -14,8 +14,8 @@ from flicker.readers._csv_numbers import is_number, number
 from flicker.trace import FloatArray
 
 _RUN = 10  # rows in a row that make a table
-_SAMPLE = 300  # lines that are looked at for the dialect
-_LOOK = 500  # rows whose numbers are looked at for times
+_SAMPLE = 60  # lines that are looked at for the dialect
+_LOOK = 200  # rows whose numbers are looked at for times
 
 
 @dataclass(frozen=True, slots=True)

@@ -118,7 +118,7 @@ def _in_order(times: FloatArray, readings: list[FloatArray], notes: list[Note]) 
     steps = np.diff(times)
     if steps.size == 0 or steps.min() >= 0:
         return times, readings
-    typical = float(np.median(np.abs(steps)))
+    typical = float(np.quantile(np.abs(steps), 0.5))
     times = _mended(times, steps, typical)
     back = np.flatnonzero(np.diff(times) < 0)
     if not back.size:
@@ -128,12 +128,14 @@ def _in_order(times: FloatArray, readings: list[FloatArray], notes: list[Note]) 
         return times, readings
     order = np.argsort(times, kind="stable")
     sorted_steps = np.diff(times[order])
-    if sorted_steps.min() > 0.3 * np.median(sorted_steps) or (sorted_steps.min() >= 0 and len(back) == len(times) - 1):
+    if sorted_steps.min() > 0.3 * np.quantile(sorted_steps, 0.5) or (
+        sorted_steps.min() >= 0 and len(back) == len(times) - 1
+    ):
         notes.append(Note("reordered", "info", "the rows were not in order of time and have been sorted by it"))
         return times[order], [column[order] for column in readings]
     bounds = [0, *(back + 1).tolist(), len(times)]
     lengths = np.diff(bounds)
-    if len(lengths) > 4 and np.median(lengths) < _SHORTEST:
+    if len(lengths) > 4 and np.quantile(lengths, 0.5) < _SHORTEST:
         raise InputError(
             "the rows are in no order of time, and times repeat: several channels seem to be interleaved; "
             "export each channel as a column of its own"
@@ -201,7 +203,7 @@ def _parts(
 ) -> tuple[FloatArray, list[FloatArray], float, list[int]]:
     """Find the step and split at gaps; parts of a single row are left out."""
     steps = np.diff(times)
-    step = float(np.median(steps[:: max(1, steps.size // 100_000)]))
+    step = float(np.quantile(steps[:: max(1, steps.size // 100_000)], 0.5))
     if resolution > 0.3 * step:
         step = float((times[-1] - times[0]) / steps.size)
     gaps = np.zeros(0, dtype=int)

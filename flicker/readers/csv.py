@@ -138,7 +138,7 @@ def _advances(values: FloatArray) -> bool:
         even = np.linspace(values[0], values[-1], len(values))
         widest = float(steps.max())
         return bool(np.abs(values - even).max() <= 1.01 * widest and widest <= 0.25 * (values[-1] - values[0]))
-    typical = float(np.median(steps))
+    typical = float(np.quantile(steps, 0.5))
     return typical > 0 and float((np.abs(steps - typical) < 0.5 * typical).mean()) > 0.8
 
 
