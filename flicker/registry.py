@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import difflib
 import importlib
 import pkgutil
 from collections.abc import Iterator, Mapping
@@ -15,6 +14,8 @@ Entry = TypeVar("Entry")
 
 def did_you_mean(what: str, name: str, known: list[str]) -> str:
     """Say that no `what` is called `name`, with the nearest known name, or all of them when none is near."""
+    import difflib
+
     near = difflib.get_close_matches(name, known, n=1, cutoff=0.5)
     return f"no {what} is called '{name}'; " + (f"did you mean '{near[0]}'?" if near else f"known: {', '.join(known)}")
 

@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import json
 import math
 import os
-import shutil
 import sys
 from collections.abc import Iterable, Iterator, Sequence
 from pathlib import Path
@@ -35,6 +33,8 @@ def _plain(value: Any) -> Any:
 
 def json_text(data: Any) -> str:
     """Give the JSON text of plain data, arrays included, with a line break at its end."""
+    import json
+
     return json.dumps(_plain(data), ensure_ascii=False, allow_nan=False, indent=2) + "\n"
 
 
@@ -92,6 +92,8 @@ def complain(error: Exception | str) -> None:
 
 def terminal_width(stream: TextIO | None = None) -> int:
     """Columns that a line may fill: those of the terminal, of `COLUMNS`, or 100 where the stream is a file."""
+    import shutil
+
     stream = stream or sys.stdout
     if not _is_terminal(stream) and not os.environ.get("COLUMNS"):
         return WIDTH_OF_A_FILE
