@@ -4,6 +4,9 @@ from __future__ import annotations
 
 import shlex
 import signal
+import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any, NoReturn
 
 import click
@@ -29,7 +32,7 @@ from flicker.cli.output import (
 from flicker.errors import ExitStatus, UnreadableFileError
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Sequence
+    from collections.abc import Sequence
 
     from flicker.sweep.batch import Task
     from flicker.sweep.manifest import Step
@@ -117,10 +120,9 @@ def command(
     in_full = len(steps) <= _IN_FULL or verbose
     measuring = given(clock_ppm=clock_ppm, dark_uncertainty=dark_uncertainty)
     task = Task(chosen_limits(limits, limits_file, on_date), decision, given(**reading), measuring, resume, in_full)
-    signal.signal(signal.SIGTERM, _stop)
     width = terminal_width()
     terms = Terms(task.limits, decision, shlex.join(context.find_root().obj or ()), record)
-    with Answer(terms) as answer:
+    with _ends_in_order(), Answer(terms) as answer:
         for result in _judged(steps, task, workers, quiet):
             if "error" in result and len(steps) == 1:
                 raise UnreadableFileError(result["error"])
@@ -152,6 +154,18 @@ def _judged(steps: Sequence[Step], task: Task, workers: int, quiet: bool) -> Ite
         yield result
 
 
-def _stop(*_: object) -> NoReturn:
+@contextmanager
+def _ends_in_order() -> Iterator[None]:
     """End in order when asked to: no half-written file, no worker left behind."""
-    raise SystemExit(128 + signal.SIGTERM)
+
+    def stop(*_: object) -> NoReturn:
+        raise SystemExit(128 + signal.SIGTERM)
+
+    if threading.current_thread() is not threading.main_thread():
+        yield
+        return
+    before = signal.signal(signal.SIGTERM, stop)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGTERM, before)

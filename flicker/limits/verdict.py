@@ -14,6 +14,7 @@ from flicker.results import Component, Family, Measure
 Outcome = Literal["pass", "fail", "undecided", "not-applicable"]
 OUTCOMES: tuple[Outcome, ...] = ("fail", "undecided", "pass", "not-applicable")  # from the one that weighs most
 DECISIONS = ("guarded", "simple")
+FEWEST_CYCLES = 1.5  # that a capture must hold for a line to be found
 LEVEL_TOLERANCE = 0.5  # points by which a dimming level may miss the one that a limit names
 COVERAGE = 1.959963984540054  # standard errors on either side of a 95 % interval (normal distribution)
 
@@ -285,9 +286,9 @@ def _blind_range(curve: Curve, conditions: Conditions) -> str:
             f"at {rate:.6g} samples/s a capture shows nothing above {rate / 2:.6g} Hz, and the limit holds up to "
             f"{curve.highest:g} Hz: sample at {2 * curve.highest:g} Hz or faster"
         )
-    if duration is not None and curve.lowest > 0 and duration * curve.lowest < 1.0:
+    if duration is not None and curve.lowest > 0 and duration * curve.lowest < FEWEST_CYCLES:
         return (
-            f"a capture of {duration:.3g} s holds no cycle at {curve.lowest:g} Hz, where the limit begins: "
-            f"record at least {2.0 / curve.lowest:.2g} s"
+            f"a capture of {duration:.3g} s shows nothing slower than {FEWEST_CYCLES / duration:.3g} Hz, and the limit "
+            f"begins at {curve.lowest:g} Hz: record at least {2.0 / curve.lowest:.2g} s"
         )
     return ""
