@@ -161,17 +161,12 @@ class RowReader:
     def _unquoted(self, piece: Bytes) -> Bytes:
         """Put blanks for quotes, and for delimiters within quotes the decimal mark that they must be."""
         quotes = piece == _QUOTE
-        passed = np.cumsum(quotes, dtype=np.int64)
+        passed = np.cumsum(quotes, dtype=np.uint8)  # whose last bit is all that counts
         ends = np.flatnonzero(piece == LINE_END)
-        at_line = np.concatenate(([0], passed[ends[:-1]]))
+        at_line = np.concatenate((np.zeros(1, np.uint8), passed[ends[:-1]]))
         lengths = np.diff(np.concatenate(([-1], ends)))
         inside = ((passed - np.repeat(at_line, lengths)) & 1).astype(bool)
         piece = piece.copy()
         piece[inside & (piece == ord(self._dialect.delimiter))] = ord(self._decimal)
         piece[quotes] = _BLANK
         return piece
-
-
-def row_count(kinds: Kinds) -> int:
-    """Count the rows among lines."""
-    return int(np.count_nonzero(kinds == Line.ROW))
