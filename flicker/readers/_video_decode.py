@@ -57,7 +57,9 @@ class VideoFile:
         self.stream.thread_type = "AUTO"
         return self
 
-    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None) -> None:
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
         self.container.close()
 
     @property
@@ -71,7 +73,9 @@ class VideoFile:
         """Decode all frames in order; what cannot be decoded is counted, never skipped in silence."""
         import av
 
-        step = 1 if not self.stream.average_rate else max(1, round(1 / (self.stream.average_rate * self.stream.time_base)))
+        step = (
+            1 if not self.stream.average_rate else max(1, round(1 / (self.stream.average_rate * self.stream.time_base)))
+        )
         packets = self.container.demux(self.stream)
         while True:
             try:
@@ -137,7 +141,9 @@ class VideoFile:
             message = f"the file was cut or damaged: {told}; the figures rest on what is there"
             notes.append(Note("truncated", "warning", message))
         if self.broken:
-            message = f"{self.broken} pieces of the video could not be decoded cleanly; the frames around them may be wrong"
+            message = (
+                f"{self.broken} pieces of the video could not be decoded cleanly; the frames around them may be wrong"
+            )
             notes.append(Note("damaged", "warning", message))
         return notes
 
@@ -182,7 +188,9 @@ def true_times(
     if ticks.size < 3:
         raise InputError(f"{path.name}: {ticks.size} frames are too few: film at least some tenths of a second")
     if not (np.diff(ticks) > 0).all():
-        raise UnreadableFileError(f"{path}: the time stamps of its frames run backwards; rewrite the file with a video tool")
+        raise UnreadableFileError(
+            f"{path}: the time stamps of its frames run backwards; rewrite the file with a video tool"
+        )
     notes: list[Note] = []
     median = float(np.median(np.diff(ticks)))
     mean = ticks[-1] / (ticks.size - 1)
@@ -201,7 +209,13 @@ def true_times(
         rate = frame_rate or 1 / (regular * time_base)
         lost = int(number[-1]) + 1 - ticks.size
         if lost:
-            notes.append(Note("dropped-frames", "warning", f"{lost} frames were dropped while filming; the others keep their true times"))
+            notes.append(
+                Note(
+                    "dropped-frames",
+                    "warning",
+                    f"{lost} frames were dropped while filming; the others keep their true times",
+                )
+            )
         times = number / rate
     else:
         scale = 1.0 if frame_rate is None else 1 / (mean * time_base * frame_rate)

@@ -88,7 +88,9 @@ class LightMeter:
         target = _readable_format(frame.format)
         form = frame.format if not target else type(frame.format)(target, frame.width, frame.height)
         luma, *others = [part for part in form.components if not part.is_alpha]
-        down, across = (round(frame.height / others[0].height), round(frame.width / others[0].width)) if others else (1, 1)
+        down, across = (
+            (round(frame.height / others[0].height), round(frame.width / others[0].width)) if others else (1, 1)
+        )
         x, y, width, height = x // across * across, y // down * down, width // across * across, height // down * down
         steps = np.linspace(0.0, _HEADROOM, _STEPS)
         return cls(
@@ -210,7 +212,11 @@ class LightMeter:
         green_weight = 1 - red_weight - blue_weight
         red = luma + np.float32(2 * (1 - red_weight)) * redness
         blue = luma + np.float32(2 * (1 - blue_weight)) * blueness
-        return [red, (luma - np.float32(red_weight) * red - np.float32(blue_weight) * blue) / np.float32(green_weight), blue]
+        return [
+            red,
+            (luma - np.float32(red_weight) * red - np.float32(blue_weight) * blue) / np.float32(green_weight),
+            blue,
+        ]
 
 
 def _finer(chroma: Block) -> Block:

@@ -61,7 +61,9 @@ class _Clipping:
             )
             return [Note("clipped", "warning", message)]
         if self.share > 0.0005:
-            return [Note("clipped", "info", f"{self.share:.1%} of the picture is overexposed at times and was left out")]
+            return [
+                Note("clipped", "info", f"{self.share:.1%} of the picture is overexposed at times and was left out")
+            ]
         return []
 
 
@@ -98,7 +100,9 @@ class _Film:
         matrix, stated = file.matrix(head)
         meter = LightMeter.of(head, region, sideways, transfer, matrix)
         if not stated and meter.matrix not in ("rgb",) and meter.colour:
-            message = f"the file does not state its colour matrix; that of {matrix.upper().replace('BT', 'BT.')} is assumed"
+            message = (
+                f"the file does not state its colour matrix; that of {matrix.upper().replace('BT', 'BT.')} is assumed"
+            )
             notes.append(Note("matrix-assumed", "info", message))
         if head.interlaced_frame:
             message = (
@@ -111,7 +115,9 @@ class _Film:
             first.append((meter.light(frame), meter.clipped(frame)))
             if len(first) == _PROBED:
                 break
-        return cls(file, meter, transfer, [light for light, _ in first], rest, _Clipping.among([c for _, c in first]), notes)
+        return cls(
+            file, meter, transfer, [light for light, _ in first], rest, _Clipping.among([c for _, c in first]), notes
+        )
 
     def __iter__(self) -> Iterator[Block]:
         """Give the light of every frame in blocks, shape (c, r, m)."""
@@ -293,7 +299,9 @@ def read_video(path: Path, options: ReadOptions) -> Capture:
         times, rate, notes = film.end(options.frame_rate)
     exposure = float(others.get("exposure") or 0.0)
     if exposure * rate > 1.001:
-        raise InputError(f"an exposure of {exposure:.4g} s does not fit between frames at {rate:.5g} Hz; check --exposure")
+        raise InputError(
+            f"an exposure of {exposure:.4g} s does not fit between frames at {rate:.5g} Hz; check --exposure"
+        )
     notes += (_aliasing(rate, exposure),)
     segments = _segments(times, rate)
     base = Trace(

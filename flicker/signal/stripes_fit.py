@@ -1,0 +1,266 @@
+"""Scene and light separated jointly: lines at their true times, harmonics of one frequency, one level for every line."""
+
+from __future__ import annotations
+
+import dataclasses
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.fft
+import scipy.linalg
+
+from flicker.light import ComplexArray
+from flicker.trace import FloatArray
+
+_BINS = 2048  # of phase
+_MOST_HARMONICS = 80
+_HIGHEST_TURN = 0.4  # cycles a line that the highest harmonic may have
+STANDING = 0.9  # a harmonic whose phases over the frames agree better than this cannot be told from the scene
+_GROUPS = 10
+_LIT = 0.03  # of the median level: darker lines are left out
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Rows:
+    """Lines of one channel, and where they lie: shape (t, r), start of each frame [s], number of each line."""
+
+    values: FloatArray
+    times: FloatArray  # shape (t,), zero in the middle of the footage
+    numbers: FloatArray  # shape (r,), zero in the middle of the frame
+
+    @classmethod
+    def of(cls, values: FloatArray, times: FloatArray, origin: float) -> Rows:
+        """Take the lit lines; `origin` is the time that counts as zero [s]."""
+        level = values.mean(axis=0)
+        lit = np.flatnonzero(level > _LIT * np.median(level[level > 0])) if (level > 0).any() else np.arange(level.size)
+        numbers = np.arange(values.shape[1]) - (values.shape[1] - 1) / 2
+        return cls(np.ascontiguousarray(values[:, lit], dtype=float), times - origin, numbers[lit])
+
+    def phases(self, frequency: float, turns: float) -> FloatArray:
+        """Phase of a tone at each line of each frame, shape (t, r). [cycles]"""
+        phase = np.add.outer(self.times * frequency, self.numbers * turns)
+        phase -= np.floor(phase)
+        return np.asarray(phase)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class StripeFit:
+    """
+    A periodic light as the lines show it: `scene * gain * (1 + sum Re(amplitudes exp(2j pi h phase)))`.
+
+    The phase is `frequency * t + turns_per_line * n`, with t from the middle of the footage and n from the middle line.
+    """
+
+    frequency: float  # [Hz]
+    frequency_error: float  # standard error [Hz]
+    turns_per_line: float  # cycles
+    turns_error: float  # standard error
+    harmonics: FloatArray  # numbers h, shape (k,)
+    amplitudes: ComplexArray  # shape (k,)
+    errors: FloatArray  # standard error of each real part, shape (k,)
+    standing: FloatArray  # how well the phases of each harmonic agree over the frames, 0..1, shape (k,)
+    scene: FloatArray  # level of each lit line, shape (r,)
+    gain: FloatArray  # of each frame, shape (t,)
+    noise: float  # standard deviation of one line about the fit, over its level
+    contrast: float  # (max - min) / (max + min) of the bands
+
+    def wave(self, size: int = _BINS) -> FloatArray:
+        """One cycle at phases b / size, shape (size,)."""
+        return evaluate(self.harmonics, self.amplitudes, size)
+
+
+def evaluate(harmonics: FloatArray, amplitudes: ComplexArray, size: int) -> FloatArray:
+    """Evaluate `1 + sum Re(amplitudes exp(2j pi h p))` at p = b / size, shape (size,)."""
+    spectrum = np.zeros(size // 2 + 1, dtype=complex)
+    spectrum[0] = size
+    spectrum[harmonics.astype(int)] = amplitudes * (size / 2)
+    return np.asarray(scipy.fft.irfft(spectrum, size))
+
+
+def standing_of(harmonics: FloatArray, frequency: float, times: FloatArray) -> FloatArray:
+    """How well the phases of harmonics agree over the frames: 1 where they stand still, shape (k,)."""
+    return np.abs(np.exp(2j * np.pi * np.outer(harmonics * frequency, times)).mean(axis=1))
+
+
+def harmonic_numbers(turns: float, samples: int, most: int = _MOST_HARMONICS) -> FloatArray:
+    """Harmonics that the lines can carry, shape (k,)."""
+    carried = int(_HIGHEST_TURN / max(abs(turns), 1e-9))
+    return np.arange(1.0, max(1, min(most, carried, samples // 40)) + 1)
+
+
+def _solve(phase_bins: FloatArray, values: FloatArray, weights: FloatArray, harmonics: FloatArray) -> ComplexArray:
+    """Least squares of values (deviation, any mean) on harmonics, all phases in bins; weights as in the sums."""
+    count = np.bincount(phase_bins, weights, minlength=_BINS)
+    total = np.bincount(phase_bins, weights * values, minlength=_BINS)
+    highest = int(harmonics[-1]) if harmonics.size else 0
+    turn = np.exp(-1j * np.pi * np.arange(2 * highest + 1) / _BINS)  # bins are known by their middle
+    moments = scipy.fft.rfft(count)[: 2 * highest + 1] * turn
+    numbers = np.concatenate([-harmonics[::-1], [0.0], harmonics]).astype(int)
+    apart = np.subtract.outer(numbers, numbers)
+    gram = np.where(apart >= 0, moments[np.abs(apart)], moments[np.abs(apart)].conj())
+    right = (scipy.fft.rfft(total)[: highest + 1] * turn[: highest + 1])[np.abs(numbers)]
+    right = np.where(numbers < 0, right.conj(), right)
+    gram[np.diag_indices_from(gram)] += 1e-9 * float(count.sum())
+    found = scipy.linalg.solve(gram, right, assume_a="her")
+    return np.asarray(2.0 * found[harmonics.size + 1 :])
+
+
+@dataclass(slots=True)
+class _Work:
+    rows: Rows
+    frequency: float
+    turns: float
+    harmonics: FloatArray
+    amplitudes: ComplexArray
+    scene: FloatArray
+    gain: FloatArray
+    free: FloatArray  # share of each harmonic that the scene cannot take up
+
+    @classmethod
+    def begin(cls, rows: Rows, frequency: float, turns: float, most: int = _MOST_HARMONICS) -> _Work:
+        harmonics = harmonic_numbers(turns, rows.values.size, most)
+        standing = standing_of(harmonics, frequency, rows.times)
+        harmonics, standing = harmonics[standing < STANDING], standing[standing < STANDING]
+        scene, gain = rows.values.mean(axis=0), np.ones(len(rows.times))
+        nothing = np.zeros(harmonics.size, dtype=complex)
+        return cls(rows, frequency, turns, harmonics, nothing, scene, gain, 1 - standing**2)
+
+    def model(self) -> tuple[FloatArray, FloatArray]:
+        """Bins of phase and modelled light over its scene, both shape (t, r)."""
+        bins = (self.rows.phases(self.frequency, self.turns) * _BINS).astype(np.intp)
+        wave = evaluate(self.harmonics, self.amplitudes * np.exp(1j * np.pi * self.harmonics / _BINS), _BINS)
+        return bins, wave[bins]
+
+    def relative(self) -> FloatArray:
+        """Lines over their scene and gain, shape (t, r)."""
+        return np.asarray(self.rows.values / (self.scene * self.gain[:, None]))
+
+    def update(self, *, clock: bool) -> None:
+        """One round: the level of each line, the wave, and the frequency with the cycles a line."""
+        bins, light = self.model()
+        light *= self.gain[:, None]
+        self.scene = (self.rows.values * light).sum(axis=0) / (light**2).sum(axis=0)
+        light /= self.gain[:, None]
+        left = self.relative() - light
+        weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
+        step = _solve(bins.ravel(), left.ravel(), weights.ravel(), self.harmonics)
+        self.amplitudes = self.amplitudes + step / self.free
+        if clock:
+            frequency, turns, *_ = self.clock(bins, left, weights)
+            self.frequency += frequency
+            self.turns += turns
+
+    def clock(self, bins: FloatArray, left: FloatArray, weights: FloatArray) -> tuple[float, float, float, float]:
+        """Corrections of frequency and of cycles a line by Gauss-Newton, each with its standard error."""
+        turned = 2j * np.pi * self.harmonics * self.amplitudes
+        slope = evaluate(self.harmonics, turned * np.exp(1j * np.pi * self.harmonics / _BINS), _BINS) - 1.0
+        slope = slope[bins]
+        by_phase = weights * slope
+        along, across = self.rows.times[:, None], self.rows.numbers[None, :]
+        strength = by_phase * slope
+        pull = by_phase * left
+        whole = strength.sum()
+        along = along - (strength * along).sum() / whole
+        across = across - (strength * across).sum() / whole
+        gram = np.array(
+            [
+                [(strength * along**2).sum(), (strength * along * across).sum()],
+                [0.0, (strength * across**2).sum()],
+            ]
+        )
+        gram[1, 0] = gram[0, 1]
+        pulls = np.stack([(pull * along).sum(axis=1), (pull * across).sum(axis=1)])  # of each frame
+        inverse = np.linalg.inv(gram)
+        step = inverse @ pulls.sum(axis=1)
+        spread = inverse @ ((pulls * len(along) / max(len(along) - 1, 1)) @ pulls.T) @ inverse
+        return float(step[0]), float(step[1]), float(np.sqrt(spread[0, 0])), float(np.sqrt(spread[1, 1]))
+
+    def finish(self) -> StripeFit:
+        """Standard errors from groups of frames, and what is left."""
+        bins, light = self.model()
+        left = self.relative() - light
+        weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
+        _, _, frequency_error, turns_error = self.clock(bins, left, weights)
+        groups = np.array_split(np.arange(len(left)), max(2, min(_GROUPS, len(left) // 3)))
+        parts = np.array([_solve(bins[g].ravel(), left[g].ravel(), weights[g].ravel(), self.harmonics) for g in groups])
+        spread = (np.abs(parts - parts.mean(axis=0)) ** 2).sum(axis=0) / (2 * len(groups) * (len(groups) - 1))
+        noise = float(np.sqrt((weights * left**2).mean()))
+        least = noise * np.sqrt(2.0 / left.size)
+        # groups are few: an error is held against those of the harmonics around it
+        errors = np.sqrt(np.maximum(spread, scipy_median(spread)) + least**2 * 0.25) / np.sqrt(self.free)
+        wave = evaluate(self.harmonics, self.amplitudes, _BINS)
+        standing = standing_of(harmonic_numbers(self.turns, left.size), self.frequency, self.rows.times)
+        return StripeFit(
+            self.frequency,
+            frequency_error,
+            self.turns,
+            turns_error,
+            self.harmonics,
+            self.amplitudes,
+            errors,
+            standing,
+            self.scene,
+            self.gain,
+            noise,
+            float((wave.max() - wave.min()) / (wave.max() + wave.min())),
+        )
+
+
+def scipy_median(spread: FloatArray) -> FloatArray:
+    """Running median over seven harmonics, shape (k,)."""
+    from scipy.ndimage import median_filter
+
+    return np.asarray(median_filter(spread, 7, mode="nearest"))
+
+
+def fit_stripes(rows: Rows, frequency: float, turns: float, *, rounds: int = 8) -> StripeFit:
+    """
+    Fit harmonics of one frequency to all lines of all frames at once, with a level of its own for every line.
+
+    Parameters
+    ----------
+    rows : Rows
+        Lines at their true times.
+    frequency : float
+        Start, within a fraction of a cycle over the footage. [Hz]
+    turns : float
+        Cycles a line to start from; negative for lines counted against the reading.
+    rounds : int
+        Rounds of alternation after the first coarse ones.
+
+    Returns
+    -------
+    StripeFit
+        The light and the scene. What stands still, and so cannot be told from the scene, is left out.
+
+    Notes
+    -----
+    Scene and wave are fitted in turn; a step of a harmonic is divided by the share of it that the scene could not
+    take up, 1 - D^2 with D the agreement of its phases over the frames, so that the alternation arrives as fast for
+    slow bands as for quick ones. Frequency and cycles a line by Gauss-Newton: what the model leaves, regressed on
+    the model's own derivative. Their errors come from the scatter of the frames, those of the amplitudes from
+    groups of frames, so that noise that neighbouring lines share is counted.
+    """
+    work = _Work.begin(rows, frequency, turns, most=3)
+    for _ in range(4):
+        work.update(clock=bool(np.abs(work.amplitudes).max(initial=0.0) > 0))
+    return _refined(work, rounds)
+
+
+def _refined(work: _Work, rounds: int) -> StripeFit:
+    full = _Work.begin(work.rows, work.frequency, work.turns)
+    kept = np.isin(full.harmonics, work.harmonics)
+    full.amplitudes[kept] = work.amplitudes[np.isin(work.harmonics, full.harmonics)]
+    full.scene, full.gain = work.scene, work.gain
+    for number in range(rounds):
+        full.update(clock=number > 0)
+    return full.finish()
+
+
+def fit_wave(rows: Rows, known: StripeFit, *, rounds: int = 5) -> StripeFit:
+    """Fit the wave and the scene of another channel, with frequency, cycles a line and gain as known."""
+    work = _Work.begin(rows, known.frequency, known.turns_per_line)
+    work.gain = known.gain
+    for _ in range(rounds):
+        work.update(clock=False)
+    return dataclasses.replace(work.finish(), frequency_error=known.frequency_error, turns_error=known.turns_error)

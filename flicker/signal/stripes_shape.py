@@ -1,0 +1,259 @@
+"""The light behind blurred harmonics: a rectangular pulse where one fits, else as many harmonics as are left."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.fft
+import scipy.optimize
+
+from flicker.light import ComplexArray
+from flicker.signal.stripes_fit import StripeFit
+from flicker.trace import FloatArray
+
+BLIND = 0.08  # what the exposure leaves of a harmonic: below this it is blind
+FLOOR = 0.003  # of the strongest harmonic: what compression does to every other one, whatever the noise
+_DUTIES = np.concatenate([np.geomspace(0.004, 0.1, 24, endpoint=False), np.linspace(0.1, 0.9, 41), 1 - np.geomspace(0.1, 0.01, 12)])
+_PHASES = 1024
+_MUCH_WORSE = 4.0  # reduced chi-square above which no rectangle is believed
+_GRID = 4096
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Harmonics:
+    """Harmonics of one channel as the lines show them, with the variance of each complex amplitude."""
+
+    numbers: FloatArray  # shape (k,)
+    amplitudes: ComplexArray  # relative to the mean, shape (k,)
+    variances: FloatArray  # of the real part, floor included, shape (k,)
+    frequency: float  # [Hz]
+
+    @classmethod
+    def of(cls, fit: StripeFit, strongest: float) -> Harmonics:
+        """Take them from a fit; `strongest` is the largest amplitude of any channel."""
+        return cls(fit.harmonics, fit.amplitudes, fit.errors**2 + (FLOOR * strongest) ** 2, fit.frequency)
+
+    def left_by(self, exposure: float) -> FloatArray:
+        """What an exposure [s] leaves of each harmonic, signed, shape (k,)."""
+        return np.sinc(self.numbers * self.frequency * exposure)
+
+
+@dataclass(frozen=True, slots=True)
+class PulseShape:
+    """
+    A rectangular pulse: duty, modulated share B of the mean, phase of its middle; covariance in that order.
+
+    B is (1 - low) D / (low + (1 - low) D): 1 for light that goes out. The harmonics of the light are
+    `2 B sinc(h D) exp(-2j pi h middle)`, behind an emitter of decay time tau divided by `1 + 2j pi h f tau`.
+    """
+
+    duty: float
+    share: float
+    middle: float  # [cycles]
+    covariance: tuple[tuple[float, ...], ...]
+    chi_square: float  # per degree of freedom
+    exposure: float  # [s]
+    decay: float = 0.0  # [s]
+    decay_error: float = 0.0
+
+    @property
+    def low_level(self) -> float:
+        """Off level over on level."""
+        return low_level_of(self.duty, self.share)
+
+    def amplitudes(self, numbers: FloatArray, frequency: float) -> ComplexArray:
+        """Harmonics of the light before the exposure, shape (k,)."""
+        drive = 2.0 * self.share * np.sinc(numbers * self.duty) * np.exp(-2j * np.pi * numbers * self.middle)
+        return np.asarray(drive / (1.0 + 2j * np.pi * numbers * frequency * self.decay))
+
+
+def low_level_of(duty: float, share: float) -> float:
+    """Off level over on level of a pulse of that duty whose modulated share of the mean is `share`."""
+    return duty * (1.0 - share) / (share * (1.0 - duty) + duty)
+
+
+def fit_pulse(seen: Harmonics, exposure: float) -> PulseShape:
+    """
+    Fit a rectangular pulse without decay, blurred by an exposure.
+
+    Parameters
+    ----------
+    seen : Harmonics
+        Of one channel, at the start of the exposure.
+    exposure : float
+        [s]
+
+    Returns
+    -------
+    PulseShape
+        The best pulse, whatever its chi-square; phases refer to the middle of the exposure.
+    """
+    left = seen.left_by(exposure)
+    data = seen.amplitudes
+    weights = 1.0 / seen.variances
+    kernels = 2.0 * np.sinc(np.outer(_DUTIES, seen.numbers)) * left
+    spectrum = np.zeros((_DUTIES.size, _PHASES // 2 + 1), dtype=complex)
+    spectrum[:, seen.numbers.astype(int)] = weights * kernels * data
+    match = scipy.fft.irfft(spectrum, _PHASES, axis=1) * (_PHASES / 2)
+    strength = (weights * kernels**2).sum(axis=1)
+    best_phase = match.argmax(axis=1)
+    best = match[np.arange(_DUTIES.size), best_phase]
+    share = np.clip(best / np.maximum(strength, 1e-30), 0.0, 1.0)
+    loss = strength * share**2 - 2 * best * share
+    root = np.sqrt(weights)
+
+    def residual(p: FloatArray) -> FloatArray:
+        model = 2.0 * p[1] * np.sinc(seen.numbers * p[0]) * np.exp(-2j * np.pi * seen.numbers * p[2]) * left
+        off = (model - data) * root
+        return np.concatenate([off.real, off.imag])
+
+    tries = []
+    order = np.argsort(loss)
+    starts = [order[0]]
+    starts += [k for k in order if all(abs(_DUTIES[k] - _DUTIES[s]) > 0.08 for s in starts)][:1]
+    for k in starts:
+        begin = [_DUTIES[k], max(share[k], 1e-4), -best_phase[k] / _PHASES]
+        bounds = ([1e-3, 0.0, -2.0], [0.999, 1.0, 2.0])
+        tries.append(scipy.optimize.least_squares(residual, np.clip(begin, *bounds), bounds=bounds, x_scale=[0.1, 0.1, 0.1]))
+    found = min(tries, key=lambda one: one.cost)
+    freedom = max(2 * data.size - 3, 1)
+    reduced = 2.0 * float(found.cost) / freedom
+    covariance = np.linalg.pinv(found.jac.T @ found.jac) * max(reduced, 0.02)
+    return PulseShape(
+        float(found.x[0]),
+        float(found.x[1]),
+        float(found.x[2]) % 1.0,
+        tuple(tuple(float(c) for c in row) for row in covariance),
+        reduced,
+        exposure,
+    )
+
+
+def fit_exposure(seen: Harmonics, longest: float) -> tuple[PulseShape, list[PulseShape]]:
+    """
+    Fit a pulse and the exposure together.
+
+    Parameters
+    ----------
+    seen : Harmonics
+        Of one channel.
+    longest : float
+        Longest exposure that can be: one over the frame rate. [s]
+
+    Returns
+    -------
+    best : PulseShape
+        The pulse and exposure that fit best.
+    others : list of PulseShape
+        Pulses at other exposures that fit within 95 % as well; duty and exposure can trade places.
+    """
+    turns = np.unique(np.concatenate([np.geomspace(0.01, 1.0, 40), np.arange(1.0, min(longest * seen.frequency, 12.0), 0.05)]))
+    exposures = turns[turns <= longest * seen.frequency] / seen.frequency
+    fits = [fit_pulse(seen, float(exposure)) for exposure in exposures]
+    rough = min(range(len(fits)), key=lambda k: fits[k].chi_square)
+    lower, upper = exposures[max(rough - 1, 0)], exposures[min(rough + 1, len(fits) - 1)]
+    fits += [fit_pulse(seen, float(exposure)) for exposure in np.linspace(lower, upper, 15)]
+    best = min(fits, key=lambda fit: fit.chi_square)
+    freedom = max(2 * seen.numbers.size - 4, 1)
+    # 95 % of one parameter: chi-square grows by 3.84 times its best reduced value
+    allowed = best.chi_square * (1 + 3.84 / freedom) + 1e-9
+    return best, [fit for fit in fits if fit.chi_square <= allowed]
+
+
+def fit_decay(seen: Harmonics, fastest: PulseShape) -> PulseShape:
+    """
+    Fit the decay time of a channel that is driven like the fastest one.
+
+    Parameters
+    ----------
+    seen : Harmonics
+        Of the slow channel.
+    fastest : PulseShape
+        Of the fastest channel.
+
+    Returns
+    -------
+    PulseShape
+        The same drive behind an emitter with a decay time; its chi-square says whether that fits.
+
+    Notes
+    -----
+    One pole divides harmonic h by `1 + 2j pi h f tau`. The exposure is the same for both channels and drops out.
+    """
+    drive = fastest.amplitudes(seen.numbers, seen.frequency) * seen.left_by(fastest.exposure)
+    root = 1.0 / np.sqrt(seen.variances)
+    turn = 2j * np.pi * seen.numbers * seen.frequency
+
+    def residual(logarithm: FloatArray) -> FloatArray:
+        off = (drive / (1.0 + turn * np.exp(logarithm[0])) - seen.amplitudes) * root
+        return np.concatenate([off.real, off.imag])
+
+    decays = np.log(np.geomspace(1e-3, 1e3, 121) / (2 * np.pi * seen.frequency))
+    start = min(decays, key=lambda one: float((residual(np.array([one])) ** 2).sum()))
+    found = scipy.optimize.least_squares(residual, [start])
+    reduced = 2.0 * float(found.cost) / max(2 * seen.numbers.size - 1, 1)
+    steep = float((found.jac**2).sum())
+    decay = math.exp(float(found.x[0]))
+    error = decay * math.sqrt(max(reduced, 0.02) / max(steep, 1e-30))
+    return PulseShape(
+        fastest.duty, fastest.share, fastest.middle, fastest.covariance, reduced, fastest.exposure, decay, error
+    )
+
+
+def is_rectangle(fit: PulseShape) -> bool:
+    """Whether the lines speak for the pulse."""
+    return fit.chi_square < _MUCH_WORSE
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class FreeShape:
+    """Harmonics with the exposure undone; the blind ones, which it left too little of, are named."""
+
+    numbers: FloatArray  # shape (k,)
+    amplitudes: ComplexArray  # shape (k,)
+    errors: FloatArray  # of the real part, shape (k,)
+    blind: FloatArray  # numbers
+    blind_bound: float  # largest amplitude that the blind ones may have together
+
+
+def undo_exposure(seen: Harmonics, exposure: float) -> FreeShape:
+    """
+    Divide the harmonics by what the exposure left of them, as far up as they stand out of the noise.
+
+    Parameters
+    ----------
+    seen : Harmonics
+        Of one channel, at the start of the exposure.
+    exposure : float
+        [s]
+
+    Returns
+    -------
+    FreeShape
+        Harmonics of the light about the middle of the exposure.
+    """
+    left = seen.left_by(exposure)
+    blind = np.abs(left) < BLIND
+    clear = (np.abs(seen.amplitudes) > 3.0 * np.sqrt(seen.variances)) & ~blind
+    highest = float(seen.numbers[clear].max()) if clear.any() else 0.0
+    used = (seen.numbers <= highest) & ~blind
+    amplitudes = seen.amplitudes[used] / left[used]
+    errors = np.sqrt(seen.variances[used]) / np.abs(left[used])
+    numbers = seen.numbers[used]
+    unseen = np.setdiff1d(np.arange(1.0, highest + 1), numbers)
+    bound = 0.0
+    for number in unseen:
+        beside = np.abs(amplitudes[np.abs(numbers - number) == 1.0])
+        bound += float(beside.max()) if beside.size else 0.0
+    return FreeShape(numbers, amplitudes, errors, unseen, bound)
+
+
+def extremes(numbers: FloatArray, amplitudes: ComplexArray) -> tuple[float, float, FloatArray]:
+    """Smallest and largest light of a wave given by its harmonics, and the wave; light below zero is taken as zero."""
+    spectrum = np.zeros(_GRID // 2 + 1, dtype=complex)
+    spectrum[0] = _GRID
+    spectrum[numbers.astype(int)] = amplitudes * (_GRID / 2)
+    wave = np.maximum(scipy.fft.irfft(spectrum, _GRID), 0.0)
+    return float(wave.min()), float(wave.max()), wave
