@@ -64,7 +64,7 @@ def ratio(highest: float, lowest: float) -> float:
     """Contrast of two levels; light below nothing, which cut-off lines can feign, counts as none."""
     lowest = max(lowest, 0.0)
     total = highest + lowest
-    return float((highest - lowest) / total) if total > 0 and highest > lowest else 0.0
+    return float((highest - lowest) / total) if highest - lowest > rectangle.IN_STEP else 0.0
 
 
 def _nearest(families: Sequence[Blurred], lags: FloatArray) -> IndexArray:

@@ -2,11 +2,16 @@
 
 from __future__ import annotations
 
+import itertools
+from collections.abc import Callable
+
 import numpy as np
 import numpy.typing as npt
 
 from flicker.light import Pulse
 from flicker.trace import FloatArray
+
+IN_STEP = 1e-9  # phases that lie no further apart are the same but for rounding [cycles]
 
 
 def collected(cycles: npt.ArrayLike, duty: float, low_level: float) -> tuple[FloatArray, FloatArray]:
@@ -56,6 +61,7 @@ def contrast(cycles: npt.ArrayLike, duty: float, low_level: float, reach: npt.Ar
     plateau, at the foot of a ramp; hence only the smaller of ramp and reach counts (by hand).
     """
     lowest, ramp = collected(cycles, duty, low_level)
+    reach = np.where(np.asarray(reach) < IN_STEP, 0.0, reach)
     rise = (1.0 - low_level) * np.minimum(ramp, reach)
     total = 2.0 * lowest + rise
     return np.asarray(np.where(total > 0, rise / np.where(total > 0, total, 1.0), 0.0))
@@ -106,13 +112,41 @@ def worst_contrast(pulse: Pulse, exposure: float, delays: FloatArray | None, tol
     _, ramp = collected(edges[best] * exposure, pulse.duty, pulse.low_level)
     if reach >= ramp:
         return float(dense[best])
-    largest = max(
-        float(contrast(f * exposure, pulse.duty, pulse.low_level, distance_to_whole(delays * f).max())) for f in edges
-    )
-    frequencies, reaches = _frequencies_of_delays(pulse, exposure, delays, lowest, highest)
-    if frequencies.size:
-        largest = max(largest, float(contrast(frequencies * exposure, pulse.duty, pulse.low_level, reaches).max()))
+    return _worst_with_lines(pulse, exposure, delays, np.unique(edges), float(edges[best]))
+
+
+def _worst_with_lines(pulse: Pulse, exposure: float, delays: FloatArray, edges: FloatArray, likely: float) -> float:
+    """Search the frequencies between `edges` where phases could lie far enough apart; `likely` is a good start."""
+
+    def dense(frequency: float) -> float:
+        return float(contrast(frequency * exposure, pulse.duty, pulse.low_level))
+
+    near = likely + np.linspace(-1.0, 1.0, 33) / delays.max()
+    tried = np.concatenate([edges, near[(near > edges[0]) & (near < edges[-1])]])
+    reaches = distance_to_whole(delays[:, None] * tried).max(axis=0)
+    largest = float(contrast(tried * exposure, pulse.duty, pulse.low_level, reaches).max())
+    pieces = [(max(dense(low), dense(high)), low, high) for low, high in itertools.pairwise(edges)]
+    for most, low, high in sorted(pieces, reverse=True):
+        if most <= largest:
+            break
+        low, high = _part_above(largest, dense, float(low), float(high))
+        frequencies, reaches = _frequencies_of_delays(pulse, exposure, delays, low, high)
+        if frequencies.size:
+            found = contrast(frequencies * exposure, pulse.duty, pulse.low_level, reaches)
+            largest = max(largest, float(found.max()))
     return largest
+
+
+def _part_above(level: float, dense: Callable[[float], float], low: float, high: float) -> tuple[float, float]:
+    """Part of a piece on which the contrast, monotone there, lies above `level`."""
+    rising = dense(high) > dense(low)
+    if min(dense(low), dense(high)) > level:
+        return low, high
+    left, right = low, high
+    for _ in range(40):
+        middle = 0.5 * (left + right)
+        left, right = (left, middle) if (dense(middle) > level) == rising else (middle, right)
+    return (left, high) if rising else (low, right)
 
 
 def _frequencies_of_edges(pulse: Pulse, exposure: float, lowest: float, highest: float) -> FloatArray:
