@@ -143,6 +143,8 @@ def find_shape(first: Sequence[bytes], later: Sequence[bytes], wanted: Sequence[
     rows = [cells for cells in map(dialect.cells, sample) if any(map(dialect.is_number, cells))]
     fields = Counter(map(len, rows)).most_common(1)[0][0]
     rows = [cells for cells in rows if len(cells) == fields]
+    if len(rows) < 2:
+        return None
     numeric = tuple(column for column in range(fields) if _holds_numbers(dialect, [row[column] for row in rows]))
     numeric = tuple(sorted({*numeric, *(column for column in wanted if column < fields)}))
     if not numeric:

@@ -251,7 +251,7 @@ def _names_of(line: bytes, shape: TableShape) -> dict[int, str] | None:
             len(cells) < 3 and _FACT.fullmatch(cells[0])
         ):
             continue
-        named = {column: cell for column, cell in enumerate(cells) if cell}
+        named = {column: cell for column, cell in enumerate(cells) if cell.strip("-=+:_|")}
         if any(column in named for column in shape.numeric):
             return named
     return None

@@ -1,4 +1,4 @@
-"""Heads of WAV files that are unfinished or cut short, so that the sound library reads what is really there."""
+"""Heads of sound files that are unfinished or cut short, so that the sound library reads what is really there."""
 
 from __future__ import annotations
 
@@ -52,6 +52,9 @@ def patches_for(path: Path) -> dict[int, bytes]:
     with path.open("rb") as file:
         form = file.read(12)
         if form[:4] not in _WAVES or form[8:] != b"WAVE":
+            promised = _promised(form + file.read(12))
+            if promised > total:
+                raise _cut_short(path, promised, total)
             return {}
         patches = {0: b"RF64"} if form[:4] == b"BW64" else {}
         long_size, long_place = None, 0
@@ -80,10 +83,24 @@ def _data_patch(
             return {long_place: struct.pack("<Q", available)}
         return {offset + 4: struct.pack("<I", min(available, _UNKNOWN))}
     if promised > available and promised != _UNKNOWN:
-        raise UnreadableFileError(
-            f"{path}: its head promises {promised} bytes of samples, but it ends after {available}; copy it again"
-        )
+        raise _cut_short(path, promised, available)
     return {}
+
+
+def _promised(head: bytes) -> int:
+    """Bytes that the first 24 of another sound file promise; 0 if they promise nothing."""
+    if head[:4] == b"FORM" and len(head) >= 8:
+        return int(struct.unpack(">I", head[4:8])[0]) + 8
+    if head[:4] == b"riff" and len(head) == 24:
+        return int(struct.unpack("<Q", head[16:])[0])
+    if head[:4] == b".snd" and len(head) >= 12:
+        offset, size = struct.unpack(">II", head[4:12])
+        return 0 if size == _UNKNOWN else int(offset) + int(size)
+    return 0
+
+
+def _cut_short(path: Path, promised: int, found: int) -> UnreadableFileError:
+    return UnreadableFileError(f"{path}: its head promises {promised} bytes, but it ends after {found}; copy it again")
 
 
 def _is_chunk(head: bytes, available: int) -> bool:

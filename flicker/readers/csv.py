@@ -22,9 +22,11 @@ from flicker.trace import Capture, FloatArray, Trace
 
 _FIRST_LINES = 1 << 18  # bytes that are looked at before reading
 _LATER_LINES = 1 << 15
+_MOST_CHANNELS = 64  # that are measured without being asked for, if the rows are few
+_EPOCH = 1e9  # seconds since 1970 that mark times of a calendar [s]
 _SECONDS = {"s": 1.0, "ms": 1e3, "us": 1e6, "ns": 1e9, "min": 1 / 60}  # how many of the unit make a second
 _TIME_NAME = re.compile(
-    r"(?:time|zeit|temps|tiempo|tempo|elapsed|timestamp|seconds?|sec)\b.*|t|x|x-axis", re.IGNORECASE
+    r"(?:time|zeit|temps|tiempo|tempo|elapsed|timestamp|seconds?|sec)\b.*|t|t\d|x|x-axis", re.IGNORECASE
 )
 _INDEX_NAME = re.compile(
     r"(?:index|idx|i|n|no\.?|nr\.?|#|num\w*|sample\w*|sequence|point\w*|count\w*|row|x|record)", re.IGNORECASE
@@ -84,11 +86,18 @@ class _Columns:
             time, index = _time_and_index(shape, head, options)
             if time in named:
                 time = None
-        readings = named or tuple(column for column in shape.numeric if column not in (time, index))
+        readings = named or tuple(
+            column for column in shape.numeric if column not in (time, index) and not _is_timed(column, head)
+        )
         if not readings and index is not None and time is None:
             readings, index = (index,), None
         if not readings:
             raise UnreadableFileError(f"{path}: holds times but no column of readings; export the light as well")
+        if not named and len(readings) > _MOST_CHANNELS > len(shape.values[readings[0]]):
+            raise InputError(
+                f"{path}: has {len(readings)} columns of numbers in few rows; export a row for every sample, or choose "
+                "columns with --column"
+            )
         return cls(time, tuple(column for column in dict.fromkeys(readings) if column != time), index)
 
 
@@ -110,18 +119,22 @@ def _time_and_index(shape: TableShape, head: Head, options: ReadOptions) -> tupl
     """Find the column of times, and a column that only counts."""
     rate_known = options.sample_rate is not None or head.rate is not None or head.last is not None
     counting = [column for column in shape.numeric[:2] if _counts(shape.values[column])]
-    timed = [column for column in shape.numeric if is_time_unit(head.units.get(column, ""))]
-    titled = [column for column in shape.numeric if _TIME_NAME.fullmatch(head.names.get(column, ""))]
-    for column in (*timed, *titled):
-        if column in timed or column not in counting:
+    for column in sorted(shape.numeric, key=lambda one: not is_time_unit(head.units.get(one, ""))):
+        if _is_timed(column, head) and (is_time_unit(head.units.get(column, "")) or column not in counting):
             return column, next((one for one in counting if one != column), None)
     several = len(shape.numeric) > 1
     index = counting[0] if counting and (several or _INDEX_NAME.fullmatch(head.names.get(counting[0], ""))) else None
     if several:
         for column in shape.numeric[:2]:
-            if column != index and _advances(shape.values[column]) and not (rate_known and head.names.get(column)):
+            stated = head.units.get(column) or (rate_known and head.names.get(column))
+            if column != index and not stated and _advances(shape.values[column]):
                 return column, index
     return None, index
+
+
+def _is_timed(column: int, head: Head) -> bool:
+    """Whether name or unit of a column is one of time."""
+    return is_time_unit(head.units.get(column, "")) or bool(_TIME_NAME.fullmatch(head.names.get(column, "")))
 
 
 def _counts(values: FloatArray) -> bool:
@@ -198,6 +211,8 @@ def _timed(
     if not unit:
         unit, why = _guessed_unit(times, options.sample_rate or (head.rate.value if head.rate else None))
         notes.append(Note("time-unit-assumed", "info", f"the time column states no unit; {why}: check the frequency"))
+    if times[0] > _EPOCH * _SECONDS[unit]:
+        times = times - times[0]
     if unit != "s":
         times = times / _SECONDS[unit]
     try:
@@ -220,6 +235,9 @@ def _guessed_unit(times: FloatArray, rate: float | None) -> tuple[str, str]:
         for unit in ("s", "ms", "us", "ns"):
             if abs(steps * _SECONDS[unit] / rate - 1) < 0.02:
                 return unit, f"it agrees with the sample rate {rate:.6g} Hz in {unit}"
+    for unit, factor in _SECONDS.items():
+        if _EPOCH < times[0] / factor < 10 * _EPOCH:
+            return unit, f"it seems to count {unit} since 1970"
     return "s", "seconds are assumed"
 
 

@@ -334,6 +334,30 @@ def test_raw_counts_are_scaled_where_the_head_says_how(written):
     assert trace.light == pytest.approx(np.round(LIGHT * 100) / 100)
 
 
+@pytest.mark.parametrize(("unit", "scale"), [("s", 1), ("ms", 1e3), ("us", 1e6), ("ns", 1e9)])
+def test_times_since_1970_count_from_the_first_row(written, unit, scale):
+    ticks = [f"{(1_764_626_400 + 2 * i) * scale:.0f},{y:.6f}" for i, y in enumerate(LIGHT)]  # one reading in 2 s
+    (trace,) = read(written(joined("timestamp,light", ticks))).traces
+    assert trace.sample_rate == pytest.approx(0.5, rel=1e-9)
+    assert trace.start == 0.0
+    assert unit in trace.notes[0].message
+
+
+def test_every_channel_with_times_of_its_own(written):
+    content = joined("t1,radar,t2,lamp", rows("{t:.6f},{y:.6f},{t:.6f},{i}"))
+    assert [trace.name for trace in read(written(content)).traces] == ["radar", "lamp"]
+
+
+def test_a_column_of_frequencies_is_no_time(written):
+    with pytest.raises(InputError, match="--sample-rate"):
+        read(written(joined("Frequency (Hz),Amplitude (V)", rows("{t:.6f},{y:.6f}"))))
+
+
+def test_rows_instead_of_columns_are_refused(written):
+    with pytest.raises(InputError, match="3000 columns of numbers in few rows"):
+        read(written(joined(*(",".join(f"{value:.6f}" for value in row) for row in (TIMES, LIGHT)))))
+
+
 def test_an_incomplete_last_line_is_left_out(written):
     (trace,) = read(written(PLAIN.rstrip()[:-5])).traces
     assert trace.samples == ROWS - 1
@@ -343,6 +367,12 @@ def test_an_incomplete_last_line_is_left_out(written):
 
 REFUSED = [
     ("a letter from the pilot station\nwithout any numbers\n", "no table of numbers", UnreadableFileError),
+    (
+        "Dear pilot,\nthe lamp of 2026 flickers at 100 Hz,\nseen at 22:00, 3 times.\n",
+        "no table of numbers",
+        UnreadableFileError,
+    ),
+    ('{"light": [1, 2, 3]}\n', "no table of numbers", UnreadableFileError),
     ("time,light\n", "no table of numbers", UnreadableFileError),
     (joined("light", rows("{y:.6f}")), "--sample-rate", InputError),
     (joined(rows("{i},{y:.6f}")), "column 1 only counts", InputError),

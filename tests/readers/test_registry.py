@@ -20,7 +20,7 @@ from flicker.readers import READERS, read
         ("time;light µs\n".encode("latin-1"), "csv"),
         ("time\n".encode("utf-16"), "csv"),
         (bytes(range(256)) * 4, None),
-        (b"\x89PNG\r\n\x1a\n" + bytes(100), None),
+        (b"\x89PNG\r\n\x1a\n\x00\x00\x00\rIHDR" + bytes(range(200)), None),
     ],
 )
 def test_readers_are_told_by_the_first_bytes(head, kind):

@@ -103,6 +103,16 @@ def test_other_sound_files_are_told_by_their_content(tmp_path, kind):
     assert trace.light == pytest.approx(LIGHT, abs=1e-4)
 
 
+@pytest.mark.parametrize("kind", ["FLAC", "AIFF", "W64", "AU", "RF64"])
+def test_other_sound_files_cut_short_are_refused(tmp_path, kind):
+    path = tmp_path / "night.wav"
+    noise = np.random.default_rng(1).normal(0, 0.1, 20_000)
+    soundfile.write(path, noise, RATE, format=kind, subtype="PCM_16")
+    path.write_bytes(path.read_bytes()[:-20_000])
+    with pytest.raises(UnreadableFileError, match="copy it again"):
+        read(path)
+
+
 WHOLE = HEALTHY["16-bit"]
 BROKEN = {
     "half the samples": (WHOLE[:-700], "promises 2002 bytes"),
@@ -154,5 +164,3 @@ def test_blocks_give_the_same_samples_piece_by_piece(tmp_path, dtype):
     assert second.shape == (COUNT, 1)
     known = facts(path)
     assert (known.sample_rate, known.frames, known.channels, known.sample_format) == (RATE, COUNT, 2, "24-bit")
-
-
