@@ -2,17 +2,19 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
 from flicker.camera.bands import Prediction, predict_bands
 from flicker.camera.sensor import Camera, unknown
-from flicker.camera.shutter import CONTRAST_LIMIT, Setting, advise, standing_frame_rates
+from flicker.camera.shutter import CONTRAST_LIMIT, Setting, offered, rank, standing_frame_rates, with_window
 from flicker.errors import InputError
 from flicker.light import Light
 
 _LINES_LISTED = 20
+_ADVISED = 12
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -26,6 +28,7 @@ class Answer:
     tolerance: float | None = None  # share of the frequency; None where nobody stated it
     limit: float = CONTRAST_LIMIT  # contrast up to which a setting is clean
     light_scan: float = 0.0  # [s]
+    nearest_clean: tuple[Setting | None, ...] = ()  # to each exposure predicted, longest window of a staggered one
 
     def to_dict(self) -> dict[str, Any]:
         """Give the JSON form of `docs/json.md`."""
@@ -38,6 +41,7 @@ class Answer:
             "light_scan_s": self.light_scan,
             "predictions": [prediction.to_dict() for prediction in self.predictions],
             "advice": [setting.to_dict() for setting in self.advice],
+            "nearest_clean": [setting.to_dict() if setting else None for setting in self.nearest_clean],
             "standing_frame_rates_hz": []
             if frequency is None
             else list(standing_frame_rates(frequency, self.camera.frame_rate)),
@@ -105,13 +109,37 @@ def predict_all(
     predictions = tuple(
         predict_bands(light, camera, exposure, tolerance or 0.0, light_scan=light_scan, **how) for exposure in wanted
     )
-    first = predictions[0].exposure_s if exposures else None
-    advice = advise(
+    longest = [_longest(one.exposure_s) for one in predictions]
+    ranked = rank(
         light,
         camera,
+        exposures=offered(camera, light.frequency, longest),
         tolerance=tolerance or 0.0,
         limit=limit,
-        wanted=max(first) if isinstance(first, tuple) else first,
+        wanted=longest[0] if exposures else None,
         light_scan=light_scan,
     )
-    return Answer(light, camera, predictions, advice, tolerance, limit, light_scan)
+    nearest = [_nearest_clean(ranked, exposure) for exposure in longest]
+    windowed = {
+        one.exposure_s: with_window(light, camera, one, limit, light_scan)
+        for one in [*ranked[:_ADVISED], *(one for one in nearest if one)]
+    }
+    return Answer(
+        light,
+        camera,
+        predictions,
+        tuple(windowed[one.exposure_s] for one in ranked[:_ADVISED]),
+        tolerance,
+        limit,
+        light_scan,
+        tuple(windowed[one.exposure_s] if one else None for one in nearest),
+    )
+
+
+def _longest(exposure: float | tuple[float, ...]) -> float:
+    return max(exposure) if isinstance(exposure, tuple) else exposure
+
+
+def _nearest_clean(advice: Sequence[Setting], wanted: float) -> Setting | None:
+    clean = [one for one in advice if one.clean]
+    return min(clean, key=lambda one: abs(math.log(one.exposure_s / wanted)), default=None)

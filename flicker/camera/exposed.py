@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from flicker.errors import InputError
-from flicker.light import ChannelLight, ComplexArray, Pulse
+from flicker.light import ChannelLight, ComplexArray, Light, Pulse
 from flicker.trace import FloatArray
 
 GRID = 1024  # phases of a cycle that are looked at, besides those where the blurred light has a corner
@@ -122,6 +122,23 @@ def families_of(channel: ChannelLight) -> tuple[Family, ...]:
     one = np.ones(1)
     singles = zip(channel.frequencies[left], channel.amplitudes[left], strict=True)
     return (*families, *(Family(float(f), one, np.array([a])) for f, a in singles))
+
+
+def deciding_channels(light: Light) -> tuple[tuple[Family, ...], ...]:
+    """
+    Families of the channels that can have the deepest contrast.
+
+    Of channels with the same pulse the fastest emitter is enough: a slower one shows the same pulse averaged over
+    many starts, and an average lies between the extremes.
+    """
+    fastest: dict[object, ChannelLight] = {}
+    for number, channel in enumerate(light):
+        pulse = channel.pulse
+        key = number if pulse is None else (pulse.frequency, pulse.duty, pulse.low_level)
+        other = fastest.get(key)
+        if other is None or (pulse and other.pulse and pulse.decay < other.pulse.decay):
+            fastest[key] = channel
+    return tuple(families_of(channel) for channel in fastest.values())
 
 
 class Blurred:

@@ -27,6 +27,15 @@ def shown_channels(light: Light) -> tuple[str, ...]:
     return (deepest.name,)
 
 
+def need_lines(camera: Camera) -> None:
+    """Refuse a camera whose picture cannot be drawn; `InputError` says what is missing."""
+    line_time, lines = apparent_line_time(camera)
+    if line_time is None:
+        raise InputError(unknown("line_time"))
+    if lines is None:
+        raise InputError(unknown("lines"))
+
+
 def line_light(
     light: Light,
     camera: Camera,
@@ -58,12 +67,10 @@ def line_light(
     InputError
         If the readout time of a rolling shutter is unknown, or the number of lines.
     """
+    need_lines(camera)
     line_time, own = apparent_line_time(camera, light_scan)
-    lines = lines or camera.lines or own
-    if lines is None:
-        raise InputError(unknown("lines"))
-    if line_time is None or own is None:
-        raise InputError(unknown("line_time"))
+    line_time, own = line_time or 0.0, own or 1
+    lines = lines or own
     seen = windows(exposure, binning=camera.line_binning, line_time=camera.line_time)
     begins = np.atleast_1d(np.asarray(frame_starts, dtype=float))
     times = begins[:, None] + (np.arange(lines) + 0.5) * (line_time * own / lines) - line_time / 2

@@ -10,11 +10,11 @@ import numpy as np
 
 from flicker.camera import contrast
 from flicker.camera.bands import check_share, deepest_pulsing, line_delays
-from flicker.camera.exposed import Family, Windows, families_of, windows
+from flicker.camera.exposed import Family, Windows, deciding_channels, windows
 from flicker.camera.sensor import Camera, unknown
 from flicker.camera.shutter import CONTRAST_LIMIT, exposure_label
 from flicker.errors import InputError
-from flicker.light import ChannelLight, Light
+from flicker.light import Light
 from flicker.trace import FloatArray
 
 _FITS = 1 + 1e-6  # a frame must hold exposure and readout, but for rounding
@@ -200,23 +200,6 @@ def _share_of(tolerance: float | Mapping[str, float] | None, name: str) -> float
 def _fits(camera: Camera, exposure: float, frame_rate: float) -> bool:
     longest = max(exposure, camera.readout_time or 0.0 if camera.shutter == "rolling" else 0.0)
     return longest * frame_rate <= _FITS
-
-
-def deciding_channels(light: Light) -> tuple[tuple[Family, ...], ...]:
-    """
-    Families of the channels that can have the deepest contrast.
-
-    Of channels with the same pulse the fastest emitter is enough: a slower one shows the same pulse averaged over
-    many starts, and an average lies between the extremes.
-    """
-    fastest: dict[object, ChannelLight] = {}
-    for number, channel in enumerate(light):
-        pulse = channel.pulse
-        key = number if pulse is None else (pulse.frequency, pulse.duty, pulse.low_level)
-        other = fastest.get(key)
-        if other is None or (pulse and other.pulse and pulse.decay < other.pulse.decay):
-            fastest[key] = channel
-    return tuple(families_of(channel) for channel in fastest.values())
 
 
 class _Table:

@@ -11,7 +11,7 @@ import numpy as np
 
 from flicker.camera import contrast
 from flicker.camera.bands import check_share, deepest_pulsing, line_delays
-from flicker.camera.exposed import Family, Windows, families_of, windows
+from flicker.camera.exposed import Family, Windows, deciding_channels, windows
 from flicker.camera.sensor import Camera
 from flicker.light import Light
 from flicker.trace import FloatArray
@@ -79,11 +79,11 @@ def _angle(exposure: float, frame_rate: float) -> str:
     return f"{float(f'{360 * exposure * frame_rate:.5g}'):.2f}".rstrip("0").rstrip(".") + "°"
 
 
-def offered(camera: Camera, frequency: float | None = None, wanted: float | None = None) -> tuple[float, ...]:
+def offered(camera: Camera, frequency: float | None = None, wanted: Sequence[float] = ()) -> tuple[float, ...]:
     """
     Exposures that can be dialled in [s]: the camera's own, or those in use that fit into a frame.
 
-    In the second case the exact nulls of a light of `frequency` [Hz] that lie nearest to the wanted exposure and to
+    In the second case the exact nulls of a light of `frequency` [Hz] that lie nearest to the wanted exposures and to
     half a frame are among them, for cameras whose shutter is set freely.
     """
     if camera.exposures:
@@ -93,8 +93,8 @@ def offered(camera: Camera, frequency: float | None = None, wanted: float | None
         if camera.frame_rate is not None:
             found = [*found, *(angle / 360.0 / camera.frame_rate for angle in ANGLES)]
         if frequency is not None:
-            centres = [wanted, 0.5 / camera.frame_rate if camera.frame_rate else None]
-            near = {max(1, round(frequency * centre)) + step for centre in centres if centre for step in (-1, 0, 1)}
+            centres = [*wanted, *([0.5 / camera.frame_rate] if camera.frame_rate else [])]
+            near = {max(1, round(frequency * centre)) + step for centre in centres for step in (-1, 0, 1)}
             found = [*found, *(number / frequency for number in near if number >= 1)]
         longest = math.inf if camera.frame_rate is None else (1.0 + 1e-9) / camera.frame_rate
         found = [exposure for exposure in found if exposure <= longest]
@@ -105,7 +105,7 @@ def offered(camera: Camera, frequency: float | None = None, wanted: float | None
     return tuple(different)
 
 
-def advise(
+def rank(
     light: Light,
     camera: Camera,
     *,
@@ -114,8 +114,18 @@ def advise(
     limit: float = CONTRAST_LIMIT,
     wanted: float | None = None,
     light_scan: float = 0.0,
-    most: int = 12,
-) -> tuple[Setting, ...]:
+) -> list[Setting]:
+    """Rank exposures as `advise` does, all of them and without their windows."""
+    check_share(tolerance, "tolerance")
+    if exposures is None:
+        exposures = offered(camera, light.frequency, () if wanted is None else (wanted,))
+    groups = deciding_channels(light)
+    centre = wanted or (0.5 / camera.frame_rate if camera.frame_rate else 1 / 50)
+    settings = [_setting(light, groups, camera, exposure, tolerance, limit, light_scan) for exposure in exposures]
+    return sorted(settings, key=lambda one: (round(one.deepest, 3), abs(math.log(one.exposure_s / centre))))
+
+
+def advise(light: Light, camera: Camera, *, most: int = 12, **how: Any) -> tuple[Setting, ...]:
     """
     Rank exposures by the deepest bands that they leave while the light's frequency is off by up to `tolerance`.
 
@@ -123,6 +133,8 @@ def advise(
     ----------
     light, camera
         As in `predict_bands`.
+    most : int
+        How many settings to give at most.
     exposures : sequence of float or None
         What can be dialled in [s]; None asks `offered`.
     tolerance : float
@@ -133,22 +145,15 @@ def advise(
         Exposure that one would like to have; among equally good ones the nearest comes first. None: half a frame. [s]
     light_scan : float
         As in `predict_bands`. [s]
-    most : int
-        How many settings to give at most.
 
     Returns
     -------
     tuple of Setting
         Best first.
     """
-    check_share(tolerance, "tolerance")
-    if exposures is None:
-        exposures = offered(camera, light.frequency, wanted)
-    groups = [families_of(channel) for channel in light]
-    centre = wanted or (0.5 / camera.frame_rate if camera.frame_rate else 1 / 50)
-    settings = [_setting(light, groups, camera, exposure, tolerance, limit, light_scan) for exposure in exposures]
-    settings.sort(key=lambda one: (round(one.deepest, 3), abs(math.log(one.exposure_s / centre))))
-    return tuple(_with_window(groups, camera, one, limit, light_scan) for one in settings[:most])
+    limit, light_scan = how.get("limit", CONTRAST_LIMIT), how.get("light_scan", 0.0)
+    settings = rank(light, camera, **how)[:most]
+    return tuple(with_window(light, camera, one, limit, light_scan) for one in settings)
 
 
 def _setting(
@@ -184,14 +189,14 @@ def deepest_contrast(
     return max(contrast.worst(families, seen, delays, tolerance) for families in groups)
 
 
-def _with_window(
-    groups: Sequence[Sequence[Family]], camera: Camera, setting: Setting, limit: float, light_scan: float
+def with_window(
+    light: Light, camera: Camera, setting: Setting, limit: float = CONTRAST_LIMIT, light_scan: float = 0.0
 ) -> Setting:
-    if not setting.clean:
+    """Add to a clean setting how far its exposure may be off; arguments as in `advise`."""
+    groups = deciding_channels(light)
+    if not setting.clean or not any(groups):
         return setting
     delays = None if camera.shutter == "global" else line_delays(camera, light_scan)
-    if not any(groups):
-        return setting
 
     def clean(exposure: float) -> bool:
         seen = windows(exposure, binning=camera.line_binning, line_time=camera.line_time)

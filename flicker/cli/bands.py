@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from flicker.cli.options import (
+    DEVIATION,
     PERCENT,
     STAGGERED,
     TIME,
@@ -16,7 +17,7 @@ from flicker.cli.options import (
     light_options,
     several,
 )
-from flicker.cli.output import colour_wanted, make_folder, print_words, terminal_width, write_json
+from flicker.cli.output import colour_wanted, make_folder, print_words, spare_the_captures, terminal_width, write_json
 
 if TYPE_CHECKING:
     from flicker.camera.answer import Answer
@@ -29,8 +30,8 @@ _what_to_predict = several(
         multiple=True,
         help="Exposure, repeatable; 1/50+1/400 is a sensor that takes both, one after the other, and adds them up.",
     ),
-    click.option("--tolerance", type=PERCENT, help="How far the light's frequency may be off."),
-    click.option("--wander", type=PERCENT, help="How far it wanders to either side while the camera looks (dither)."),
+    click.option("--tolerance", type=DEVIATION, help="How far the light's frequency may be off."),
+    click.option("--wander", type=DEVIATION, help="How far it wanders to either side while the camera looks (dither)."),
     click.option("--light-scan", type=TIME, help="By how much a scanning backlight lags at the end of the picture."),
     click.option("--light-scan-against", is_flag=True, help="The backlight scans against the way the lines are read."),
     click.option("--contrast-limit", type=PERCENT, help="Up to which bands a setting is called clean; 1 if left out."),
@@ -77,11 +78,12 @@ def command(
 
     Example:
 
-        flicker bands --frequency 240 --duty 0.05 --line-time 14.8us --lines 1080 --frame-rate 25 --exposure 1/50
+        flicker bands --frequency 240 --duty 0.05 --camera dock-camera.toml
     """
     from flicker.camera.answer import predict_all
     from flicker.report.bands import bands_words
 
+    spare_the_captures([] if capture is None else [capture], [json_target, clip])
     light = light_from_options(capture, options)
     camera = camera_from_options(options)
     answer = predict_all(
@@ -96,17 +98,19 @@ def command(
         gain=1.0 if grade_gain is None else grade_gain,
     )
     notes = _draw(answer, figures, clip, scene) if figures or clip else ()
-    write_json(answer.to_dict(), json_target)
+    write_json({"capture": capture, **answer.to_dict()}, json_target)
     words = bands_words(answer, width=terminal_width(), colour=colour_wanted())
     print_words("\n".join([words, *notes]), json_target)
 
 
 def _draw(answer: Answer, figures: str | None, clip: str | None, scene: str | None) -> list[str]:
     """Write the pictures that are asked for, and say so."""
+    from flicker.camera.filmed import need_lines
     from flicker.plots.clip import read_scene, write_clip
     from flicker.plots.frame import save_frames
     from flicker.report.bands import clip_words
 
+    need_lines(answer.camera)
     still = None if scene is None else read_scene(scene)
     notes = []
     if clip is not None:

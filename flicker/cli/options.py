@@ -52,18 +52,21 @@ class Times(click.ParamType[tuple[float, ...]]):
 
 
 class Percent(click.ParamType[float]):
-    """A share in per cent, with or without the sign; inside the program it is a share of 1."""
+    """A share in per cent below a bound, with or without the sign; inside the program it is a share of 1."""
 
     name = "PERCENT"
 
+    def __init__(self, below: float = 100.0) -> None:
+        self._below = below
+
     def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> float:
-        """Parse, and refuse what is below zero."""
+        """Parse, and refuse what lies outside its range."""
         try:
             percent = float(str(value).removesuffix("%"))
         except ValueError:
             self.fail(f"'{value}' is no number of per cent", param, ctx)
-        if not 0 <= percent < float("inf"):
-            self.fail(f"'{value}' must be 0 % or above", param, ctx)
+        if not 0 <= percent < self._below:
+            self.fail(f"'{value}' must lie between 0 and {self._below:g} %", param, ctx)
         return percent / 100.0
 
 
@@ -73,6 +76,7 @@ MOMENT = Quantity("time", positive=False)
 STAGGERED = Times("S", "+")
 DECAYS = Times("S[,S,S]", ",", positive=False)
 PERCENT = Percent()
+DEVIATION = Percent(below=50.0)
 
 
 def several(*options: Callable[[Function], Function]) -> Callable[[Function], Function]:
@@ -96,7 +100,14 @@ _photodiode_options = several(
         "--column", "columns", multiple=True, metavar="NAME_OR_NUMBER", help="CSV column; numbers count from 1."
     ),
     click.option("--time-column", metavar="NAME_OR_NUMBER", help="CSV column that holds the time."),
-    click.option("--channel", "channels", type=click.IntRange(min=1), multiple=True, help="WAV channel, from 1."),
+    click.option(
+        "--channel",
+        "channels",
+        type=click.IntRange(min=1),
+        multiple=True,
+        metavar="NUMBER",
+        help="WAV channel, from 1.",
+    ),
     click.option("--dark-level", type=float, metavar="LEVEL", help="Reading with the light blocked."),
     click.option("--dark-capture", metavar="FILE", help="Capture taken with the light blocked."),
     click.option("--mean", type=float, metavar="LEVEL", help="True mean level above dark, where AC coupling lost it."),
@@ -126,7 +137,7 @@ light_options = several(
 
 camera_options = several(
     click.option("--camera", "camera_file", metavar="FILE.toml", help="Camera file; the options below override it."),
-    click.option("--lines", type=click.IntRange(min=1), help="Lines of a frame."),
+    click.option("--lines", type=click.IntRange(min=1), metavar="N", help="Lines of a frame."),
     click.option("--line-time", type=TIME, help="From the start of one line to that of the next."),
     click.option("--line-rate", type=FREQUENCY, help="Its inverse, in place of it."),
     click.option(
@@ -139,7 +150,9 @@ camera_options = several(
         metavar="down|up|left|right",
         help="The way the lines are read in the picture as stored; down if left out.",
     ),
-    click.option("--line-binning", type=click.IntRange(min=1), help="Sensor lines that make one line of the picture."),
+    click.option(
+        "--line-binning", type=click.IntRange(min=1), metavar="N", help="Sensor lines that make one of the picture."
+    ),
 )
 
 

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 
 _LABEL = 9
 _NULL = 5e-4  # of a cycle: how near to whole cycles an exposure counts as a null
+_UNCRITICAL = 20.0  # how far off an exposure or a frequency never is [%]
 _SHOWN = 0.05  # frame flicker below which it is not worth a word [%]
 _OPPOSITE = {"down": "up", "up": "down", "left": "right", "right": "left"}
 
@@ -62,7 +63,7 @@ def bands_words(answer: Answer, *, width: int = 100, colour: bool = False) -> st
     answers["Frames"] = list(_frames(light, camera, predictions))
     answers["Dial in"] = list(dial_in(answer))
     blocks.append(list(_answers(answers, width, paint)))
-    notes = list(_notes(predictions, tolerance))
+    notes = list(_notes(answer))
     if notes:
         blocks.append([line for note in notes for line in wrap(note, width, "  ", hang=2)])
     return "\n\n".join("\n".join(block) for block in blocks)
@@ -261,6 +262,7 @@ def dial_in(answer: Answer) -> Iterable[str]:
     size = max((len(one.label) for one in clean), default=0)
     for number, one in enumerate(clean):
         yield f"{one.label:<{size}}  {_left(one, tolerance)}{_window(one, explain=number == 0)}"
+    yield from _nearest(answer, clean)
     if clean:
         return
     best = advice[0]
@@ -269,6 +271,16 @@ def dial_in(answer: Answer) -> Iterable[str]:
         f"with up to {percent(best.deepest)}."
     )
     yield from _what_would_help(answer.light.frequency, answer)
+
+
+def _nearest(answer: Answer, shown: Sequence[Setting]) -> Iterable[str]:
+    """Name the clean exposures nearest to those that are not, unless they are shown already."""
+    named = {one.exposure_s for one in shown}
+    for one, nearest in zip(answer.predictions, answer.nearest_clean, strict=True):
+        if nearest and nearest.exposure_s not in named and one.worst_contrast_percent > 100 * answer.limit:
+            named.add(nearest.exposure_s)
+            words = f"{_left(nearest, answer.tolerance or 0.0)}{_window(nearest, explain=False)}"
+            yield f"nearest to {_name(one, answer.camera)}: {nearest.label}, {words}"
 
 
 def _left(one: Setting, tolerance: float) -> str:
@@ -280,6 +292,8 @@ def _left(one: Setting, tolerance: float) -> str:
 def _window(one: Setting, *, explain: bool) -> str:
     if one.window_percent is None:
         return ""
+    if min(one.window_percent) > _UNCRITICAL:
+        return ", and not critical"
     words = f", clean within ±{quantity(min(one.window_percent), '%', 2)}"
     if one.window_deg is not None:
         words += f" (±{quantity(min(one.window_deg), '', 2)}°)"
@@ -308,8 +322,10 @@ def _what_would_help(frequency: float, answer: Answer) -> Iterable[str]:
     yield f"What would help: {'; '.join(help_)}."
 
 
-def _notes(predictions: Sequence[Prediction], tolerance: float | None) -> Iterable[str]:
-    if tolerance is None:
+def _notes(answer: Answer) -> Iterable[str]:
+    predictions = answer.predictions
+    yield from _misfits(answer)
+    if answer.tolerance is None and answer.light.frequency is not None:
         yield "i The light's frequency is taken as exact: state how far it may be off with --tolerance."
     wander = max((one.wander_contrast_percent or 0.0 for one in predictions), default=0.0)
     if wander:
@@ -319,6 +335,23 @@ def _notes(predictions: Sequence[Prediction], tolerance: float | None) -> Iterab
     for reason in dict.fromkeys(reason for one in predictions for reason in one.reasons.values()):
         if reason.startswith("the camera's"):
             yield f"i {reason[0].upper()}{reason[1:]}."
+
+
+def _misfits(answer: Answer) -> Iterable[str]:
+    """Name exposures and readouts that do not fit into a frame."""
+    rate, readout = answer.camera.frame_rate, answer.camera.readout_time
+    if rate is None:
+        return
+    frame = exposure_label(1 / rate)
+    for one in answer.predictions:
+        total = sum(one.exposure_s) if isinstance(one.exposure_s, tuple) else one.exposure_s
+        if total * rate > 1 + 1e-6:
+            yield f"! {_name(one, answer.camera)} does not fit into a frame of {frame}: check exposure and frame rate."
+    if answer.camera.shutter == "rolling" and readout is not None and readout * rate > 1 + 1e-6:
+        yield (
+            f"! Reading all lines takes {quantity(readout, 's', 3)}, longer than a frame of {frame}: "
+            "check line time, lines and frame rate."
+        )
 
 
 def clip_words(clip: Clip) -> str:
