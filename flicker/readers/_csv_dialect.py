@@ -10,6 +10,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from flicker.readers._csv_clock import time_of_day
 from flicker.readers._csv_numbers import is_number, number
 from flicker.trace import FloatArray
 
@@ -71,6 +72,7 @@ class TableShape:
     head: tuple[bytes, ...]  # lines above the first row
     beside: tuple[bytes, ...]  # cells of columns that hold no numbers, beside the first rows, as lines
     values: Mapping[int, FloatArray]  # numbers of the first rows, by column
+    clock: int | None = None  # a column of times of day, from 0
 
 
 def find_dialect(lines: Sequence[bytes]) -> Dialect | None:
@@ -146,7 +148,9 @@ def find_shape(first: Sequence[bytes], later: Sequence[bytes], wanted: Sequence[
     if len(rows) < 2:
         return None
     numeric = tuple(column for column in range(fields) if _holds_numbers(dialect, [row[column] for row in rows]))
-    numeric = tuple(sorted({*numeric, *(column for column in wanted if column < fields)}))
+    clock = next((column for column in range(fields) if column not in numeric and _is_clock(rows, column)), None)
+    forced = {column for column in wanted if column < fields and column != clock}
+    numeric = tuple(sorted({*numeric, *forced}))
     if not numeric:
         return None
     begin = _first_row(dialect, first, numeric)
@@ -161,7 +165,13 @@ def find_shape(first: Sequence[bytes], later: Sequence[bytes], wanted: Sequence[
         tuple(first[:begin]),
         tuple(dialect.delimiter.join(cells) for cells in beside),
         {column: _finite(dialect, [cells[column] for cells in rows]) for column in numeric},
+        clock,
     )
+
+
+def _is_clock(rows: Sequence[Sequence[bytes]], column: int) -> bool:
+    cells = [cells[column] for cells in rows if column < len(cells)]
+    return bool(cells) and sum(time_of_day(cell) is not None for cell in cells) >= 0.9 * len(cells)
 
 
 def _finite(dialect: Dialect, cells: Sequence[bytes]) -> FloatArray:

@@ -7,6 +7,7 @@ from enum import IntEnum
 import numpy as np
 import numpy.typing as npt
 
+from flicker.readers._csv_clock import times_of_day
 from flicker.readers._csv_dialect import Dialect
 from flicker.readers._csv_numbers import Bytes, Integers, Span, layout_like, numbers
 from flicker.trace import FloatArray
@@ -34,9 +35,10 @@ class Line(IntEnum):
 class RowReader:
     """Reads the wanted columns of a dialect's lines."""
 
-    def __init__(self, dialect: Dialect, wanted: tuple[int, ...]) -> None:
+    def __init__(self, dialect: Dialect, wanted: tuple[int, ...], clock: int | None = None) -> None:
         self._dialect = dialect
         self._wanted = wanted
+        self._clock = clock
         ambiguous = dialect.decimal == dialect.delimiter and not dialect.paired
         self._decimal = b"." if ambiguous else dialect.decimal  # once the quotes are off
 
@@ -143,7 +145,10 @@ class RowReader:
         empty = np.ones(len(first), dtype=bool)
         for index, column in enumerate(self._wanted):
             begins, ends = self._cell(column, starts, stops, first)
-            values[index, whole], bad = numbers(piece, begins, ends, self._decimal)
+            if column == self._clock:
+                values[index, whole], bad = times_of_day(piece, begins, ends)
+            else:
+                values[index, whole], bad = numbers(piece, begins, ends, self._decimal)
             unreadable += bad
             empty &= begins == ends
         kinds[whole] = np.select(

@@ -104,7 +104,7 @@ def read_table(text: TextFile, shape: TableShape, wanted: tuple[int, ...]) -> Ta
     UnreadableFileError
         If there is no row, or many cannot be read.
     """
-    reader = RowReader(shape.dialect, wanted)
+    reader = RowReader(shape.dialect, wanted, shape.clock)
     table, remarks = Table(), _Remarks()
     columns: _Columns | None = None
     skip = lines = len(shape.head)

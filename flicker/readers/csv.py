@@ -10,6 +10,7 @@ import numpy as np
 
 from flicker.errors import InputError, UnreadableFileError
 from flicker.readers import HEAD, ReadOptions, reader
+from flicker.readers._csv_clock import past_midnight
 from flicker.readers._csv_dialect import TableShape, find_shape
 from flicker.readers._csv_head import Head, is_time_unit, read_head
 from flicker.readers._csv_numbers import OVERLOAD
@@ -84,6 +85,8 @@ class _Columns:
             time: int | None = _named(path, options.time_column, "--time-column", shape, head)
         else:
             time, index = _time_and_index(shape, head, options)
+            if time is None and options.sample_rate is None and head.rate is None:
+                time = shape.clock
             if time in named:
                 time = None
         readings = named or tuple(
@@ -104,7 +107,7 @@ class _Columns:
 def _named(path: Path, wanted: str, option: str, shape: TableShape, head: Head) -> int:
     """Find a column by its name, or by its number from 1."""
     for column, name in head.names.items():
-        if name.lower() == wanted.strip().lower() and column in shape.numeric:
+        if name.lower() == wanted.strip().lower() and column in (*shape.numeric, shape.clock):
             return column
     if wanted.isdecimal():
         if 1 <= int(wanted) <= shape.fields:
@@ -164,7 +167,9 @@ def _traces(
     notes: list[Note] = []
     overloads = [_without_overloads(path, column) for column in table.columns[-len(columns.readings) :]]
     if columns.time is not None:
-        base = _timed(path, table.columns.pop(0), table.columns, head, columns.time, options, notes)
+        base = _timed(
+            path, table.columns.pop(0), table.columns, head, columns.time, options, notes, columns.time == shape.clock
+        )
     else:
         base = _counted(path, table, head, columns, options, notes)
     common = (f"a table with {shape.dialect}", *_remarks(table), *base.history)
@@ -198,6 +203,7 @@ def _timed(
     column: int,
     options: ReadOptions,
     notes: list[Note],
+    clock: bool,
 ) -> Evenly:
     """Use the column of times."""
     good = np.isfinite(times.sum()) or np.isfinite(times) & (np.abs(times) < OVERLOAD)
@@ -206,8 +212,11 @@ def _timed(
         notes.append(Note("no-time", "warning", f"{np.size(good) - len(times)} rows without a time were left out"))
     if not len(times):
         raise UnreadableFileError(f"{path}: column {column + 1} holds no times; name the right one with --time-column")
-    unit = head.units.get(column, "") or head.time_unit
-    unit = unit if unit in _SECONDS else ""
+    if clock:
+        times, unit = past_midnight(times), "s"
+    else:
+        unit = head.units.get(column, "") or head.time_unit
+        unit = unit if unit in _SECONDS else ""
     if not unit:
         unit, why = _guessed_unit(times, options.sample_rate or (head.rate.value if head.rate else None))
         notes.append(Note("time-unit-assumed", "info", f"the time column states no unit; {why}: check the frequency"))
@@ -224,7 +233,7 @@ def _timed(
         )
     except InputError as error:
         raise InputError(f"{path}: {error}") from error
-    base.history.insert(0, f"times from column {column + 1} in {unit}")
+    base.history.insert(0, f"times {'of day ' * clock}from column {column + 1} in {unit}")
     return base
 
 

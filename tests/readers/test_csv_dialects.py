@@ -1,10 +1,13 @@
 """One light in every dialect that instruments and spreadsheets write: the same readings at the same times."""
 
+import dataclasses
+
 import numpy as np
 import pytest
 
 from flicker.errors import InputError, UnreadableFileError
 from flicker.readers import read
+from flicker.trace import Segment
 
 RATE = 20_000.0
 ROWS = 3000
@@ -341,6 +344,39 @@ def test_times_since_1970_count_from_the_first_row(written, unit, scale):
     assert trace.sample_rate == pytest.approx(0.5, rel=1e-9)
     assert trace.start == 0.0
     assert unit in trace.notes[0].message
+
+
+@pytest.mark.parametrize(
+    "line",
+    [
+        "{clock},{y:.6f}",
+        "2026-12-{day:02d} {clock},{y:.6f}",
+        "{day:02d}.12.2026 {clock};{y:.6f}",
+        "2026-12-{day:02d} {clock} {y:.6f}",
+        '"2026-12-{day:02d}T{clock}Z","{y:.6f}"',
+    ],
+)
+def test_times_of_day_go_on_past_midnight(written, line):
+    ticks = np.arange(ROWS) * 50 + 86_399_900_000  # microseconds, the last tenth of a second before midnight first
+    lines = []
+    for tick, y in zip(ticks.tolist(), LIGHT, strict=True):
+        day, rest = 1 + tick // 86_400_000_000, tick % 86_400_000_000
+        second, micro = divmod(rest, 1_000_000)
+        clock = f"{second // 3600:02d}:{second // 60 % 60:02d}:{second % 60:02d}.{micro:06d}"
+        lines.append(line.format(clock=clock, day=day, y=y))
+    (trace,) = read(written(joined(lines))).traces
+    assert trace.sample_rate == pytest.approx(RATE, rel=1e-6)
+    assert trace.light == pytest.approx(LIGHT, abs=1e-6)
+    assert len(trace.segments) == 1
+    assert not trace.notes
+
+
+@pytest.mark.parametrize("column", ["Clock", "2"])
+def test_times_of_day_where_the_option_names_them(written, column):
+    content = joined("No,Clock,light (V)", [f"{i},22:59:59.{i * 50:06d},{y:.6f}" for i, y in enumerate(LIGHT)])
+    (trace,) = read(written(content), time_column=column, columns=["light"]).traces
+    assert_same_light(dataclasses.replace(trace, segments=(Segment(0, 0.0),)))
+    assert trace.start == pytest.approx(82_799.0)
 
 
 def test_every_channel_with_times_of_its_own(written):

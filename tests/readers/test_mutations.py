@@ -123,4 +123,4 @@ def test_damaged_files_read_or_are_refused_in_a_sentence(tmp_path, share):
                 assert np.isfinite(trace.times()).all(), seed
                 assert all("\n" not in note.message and "nan" not in note.message for note in trace.notes), seed
         assert time.monotonic() - began < SLOWEST, seed
-    assert read_well > 0.2 * COUNT / SHARES
+    assert read_well > 0.1 * COUNT / SHARES
