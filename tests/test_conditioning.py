@@ -11,7 +11,7 @@ from flicker.conditioning import condition
 from flicker.errors import InputError
 from flicker.results import DEPTH_MEASURES
 from flicker.trace import Capture, Segment, Trace
-from flicker.waveforms import pwm, sampled, sine
+from flicker.waveforms import pwm, rectified_sine, sampled, sine, triangle
 
 RATE = 48_000.0
 
@@ -190,9 +190,22 @@ def test_droop_is_undone_with_a_stated_and_with_a_fitted_corner(corner, duty):
     assert found == pytest.approx(corner, rel=0.1)
 
 
-@pytest.mark.parametrize("light", [sine(97.3, 0.5), pwm(97.3, 0.3, decay=2e-3), pwm(97.3, 0.3)])
-def test_no_droop_is_found_where_there_is_none(light):
-    readings = sampled(light.at, sample_rate=RATE, duration=0.7, noise=0.001, seed=3).light
+@pytest.mark.parametrize("frequency", [47.3, 100.0, 239.7])
+@pytest.mark.parametrize(
+    "make",
+    [
+        lambda frequency: sine(frequency, 0.5),
+        triangle,
+        lambda frequency: rectified_sine(frequency / 2),
+        *(
+            lambda frequency, d=duty, k=decay: pwm(frequency, d, decay=k / frequency)
+            for duty in (0.05, 0.3, 0.8)
+            for decay in (0, 0.1, 0.5)
+        ),
+    ],
+)
+def test_no_droop_is_found_where_there_is_none(make, frequency):
+    readings = sampled(make(frequency).at, sample_rate=RATE, duration=0.7, noise=0.001, seed=3).light
     trace = conditioned(Trace(readings - readings.mean(), RATE), "wav")
     assert not any("droop" in line for line in trace.history)
 

@@ -10,7 +10,8 @@ from flicker.trace import FloatArray, Trace
 
 _SPOTS = 24  # short windows a cycle in which the slope is looked at
 _AGREEING = 0.6  # share of the windows that must agree on a corner
-_LEAST_DROOP = 0.02  # of a plateau a cycle; less is not worth undoing
+_LEAST_DROOP = 0.02  # in a cycle; less is not worth undoing
+_MOST_DROOP = 2.0  # in a cycle; more leaves no plateau
 
 
 def with_mean(trace: Trace, mean: float) -> Trace:
@@ -67,8 +68,9 @@ def fitted_corner(trace: Trace) -> float | None:
     Notes
     -----
     On a plateau :math:`x' = 0`, so that slope over reading is :math:`-\omega` wherever the plateau lies. In short
-    windows along the capture the ratio is taken, and its median (weighted by the reading) counts if most windows agree.
-    A sine, a ramp or a decaying emitter has no such common ratio.
+    windows along the capture the ratio is taken, and its median (weighted by the reading) counts if most windows agree
+    with it up to noise, of the readings above zero as of those below. A sine, a ramp or a decaying emitter has no such
+    common ratio.
     """
     light = trace.light[: min(ENOUGH, trace.segments[1].first if len(trace.segments) > 1 else ENOUGH)]
     light = light - smooth_mean(light)
@@ -81,13 +83,32 @@ def fitted_corner(trace: Trace) -> float | None:
     place = np.arange(length) - 0.5 * (length - 1)
     slopes = windows @ place / np.dot(place, place) * trace.sample_rate
     levels = windows.mean(axis=1)
-    clear = np.abs(levels) > 0.2 * np.abs(levels).max()
-    rates, weights = -slopes[clear] / levels[clear], np.abs(levels[clear])
+    noise = np.sqrt(12 / length**3) * trace.sample_rate * Shape.of(trace).noise
+    rates = [_common_rate(slopes[side], levels[side], noise) for side in (levels > 0, levels < 0)]
+    if None in rates:
+        return None
+    above, below = (float(rate) for rate in rates if rate is not None)
+    rate = 0.5 * (above + below)
+    droop = rate * period / trace.sample_rate
+    if abs(above - below) > 0.3 * rate or not _LEAST_DROOP <= droop <= _MOST_DROOP:
+        return None
+    return rate / (2 * np.pi)
+
+
+def _common_rate(slopes: FloatArray, levels: FloatArray, noise: float) -> float | None:
+    """Ratio of slope to reading, negated, on which most windows of one sign agree; None if there is none. [1/s]"""
+    clear = np.abs(levels) > 0.3 * np.abs(levels).max(initial=0.0)
+    if not clear.any():
+        return None
+    slopes, levels = slopes[clear], levels[clear]
+    rates, weights = -slopes / levels, np.abs(levels)
     order = np.argsort(rates)
     share = np.cumsum(weights[order]) / weights.sum()
-    rate = float(rates[order][np.searchsorted(share, 0.5)])
-    near = np.abs(rates - rate) < 0.25 * abs(rate)
-    agreeing = float(weights[near].sum() / weights.sum())
-    if rate * period / trace.sample_rate < _LEAST_DROOP or agreeing < _AGREEING:
+    middle = float(rates[order][np.searchsorted(share, 0.5)])
+    near = np.abs(rates - middle) < 0.25 * abs(middle) + 3 * noise / weights
+    rate = -float(np.dot(slopes[near], levels[near]) / np.dot(levels[near], levels[near])) if near.any() else 0.0
+    if weights[near].sum() < _AGREEING * weights.sum() or rate < 5 * noise / np.sqrt(
+        np.dot(levels[near], levels[near])
+    ):
         return None
-    return float(np.average(rates[near], weights=weights[near])) / (2 * np.pi)
+    return rate
