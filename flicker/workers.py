@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import os
+import signal
 import threading
 from collections import deque
 from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
 from typing import TYPE_CHECKING, TypeVar
 
 from flicker.errors import InputError
@@ -64,12 +66,26 @@ def side_by_side(function: Callable[[Item], Result], items: Sequence[Item], work
         while waiting:
             yield waiting.popleft().result()
     finally:
-        pool.shutdown(wait=True, cancel_futures=True)
+        with _undisturbed():
+            pool.shutdown(wait=True, cancel_futures=True)
         for name, value in before.items():
             if value is None:
                 os.environ.pop(name, None)
             else:
                 os.environ[name] = value
+
+
+@contextmanager
+def _undisturbed() -> Iterator[None]:
+    """Put off signals: one that breaks into the end of a pool would leave it waiting for ever."""
+    if not hasattr(signal, "pthread_sigmask"):
+        yield
+        return
+    before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT, signal.SIGTERM})
+    try:
+        yield
+    finally:
+        signal.pthread_sigmask(signal.SIG_SETMASK, before)
 
 
 def _end_with_parent() -> None:
