@@ -65,13 +65,15 @@ def evenly(
     resolution = _resolution(times)
     times, readings, step, first = _parts(times, readings, resolution, notes)
     deviation = max(_deviation(times[a:b], step) for a, b in _ranges(first, len(times)))
-    if deviation > 0.05 * step:
-        if deviation > 0.1 * step and deviation > 1.05 * resolution:
-            return _resampled(times, readings, step, first, deviation, notes, history)
+    if deviation > max(0.1 * step, 1.05 * resolution):
+        return _resampled(times, readings, step, first, deviation, notes, history)
+    spread = resolution / (2 * step)  # of steps that were rounded once and added up
+    if deviation > 1e-6 * step:
         step = _fitted_step(times, first)
+        spread = resolution / (times[-1] - times[0])
+    if deviation > 0.05 * step:
         notes.append(_rounded(resolution, step))
     rate = tidy(1.0 / step)
-    spread = resolution / (times[-1] - times[0]) if deviation > 0.05 * step else resolution / (2 * step)
     used = _chosen_rate(rate, stated_rate, spread, trusted, notes, history)
     stretch = rate / used
     origin = times[0]
@@ -118,8 +120,8 @@ def _in_order(times: FloatArray, readings: list[FloatArray], notes: list[Note]) 
     steps = np.diff(times)
     if steps.size == 0 or steps.min() >= 0:
         return times, readings
-    typical = float(np.quantile(np.abs(steps), 0.5))
-    times = _mended(times, steps, typical)
+    if np.count_nonzero(steps < 0) < 0.02 * steps.size + 1:
+        times = _mended(times, steps, float(np.quantile(np.abs(steps), 0.5)))
     back = np.flatnonzero(np.diff(times) < 0)
     if not back.size:
         notes.append(
@@ -128,9 +130,8 @@ def _in_order(times: FloatArray, readings: list[FloatArray], notes: list[Note]) 
         return times, readings
     order = np.argsort(times, kind="stable")
     sorted_steps = np.diff(times[order])
-    if sorted_steps.min() > 0.3 * np.quantile(sorted_steps, 0.5) or (
-        sorted_steps.min() >= 0 and len(back) == len(times) - 1
-    ):
+    reversed_order = sorted_steps.min() >= 0 and len(back) == len(times) - 1
+    if sorted_steps.min() > 0.3 * np.quantile(sorted_steps, 0.5) or reversed_order:
         notes.append(Note("reordered", "info", "the rows were not in order of time and have been sorted by it"))
         return times[order], [column[order] for column in readings]
     bounds = [0, *(back + 1).tolist(), len(times)]
@@ -193,7 +194,7 @@ def _resolution(times: FloatArray) -> float:
         doubt = np.abs(scaled).max() * 1e-15
         if doubt > 1e-2:
             break
-        if np.abs(scaled - np.round(scaled)).max() <= 1e-4 + doubt:
+        if np.abs(scaled - np.round(scaled)).max() <= doubt:
             return float(10.0**-decimals)
     return 0.0
 
