@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import functools
 import math
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -14,28 +14,19 @@ from flicker.errors import InputError
 from flicker.light import ChannelLight, ComplexArray, Pulse
 from flicker.limits.limit import MODULATION, UNITS, Curve, Limit
 from flicker.results import Component, Family, Measure
+from flicker.signal.stroboscopic import BAND, stroboscopic_visibility
 from flicker.trace import FloatArray
 from flicker.waveforms import pwm
 
 if TYPE_CHECKING:
     from flicker.analysis import ChannelReport
 
-_LINES = 200  # of a typed-in pulse that a curve is held against
+_MATTERS = 5e-3  # share of the strongest line below which a line crosses an edge unnoticed
+_SLOW = 200.0  # up to which lines count for the short-term severity [Hz]
 _BY_SHAPE = ("flicker_index", "rms_modulation")
 _CUT = "percent_flicker_below_"
 _LEAST_POINTS = 12  # of a cycle of filtered light, as a power of two
 _RECORD = (20_000.0, 1.0)  # sample rate [Hz] and duration [s] for filtered light of several families, those of JA10.5
-
-
-@dataclass(frozen=True, slots=True)
-class LineFigure:
-    """A measure that follows from the lines alone, in proportion to them; beyond its edges [Hz] lines do not count."""
-
-    of_lines: Callable[[FloatArray, ComplexArray], float]
-    edges: tuple[float, ...]
-
-
-LINE_FIGURES: dict[str, LineFigure] = {}
 
 
 @dataclass(frozen=True, slots=True)
@@ -132,14 +123,17 @@ class TunableLight:
         return np.append(frequencies, lines), np.append(depths, 100.0 * scale * np.abs(amplitudes))
 
     def critical_speeds(self, limit: Limit) -> Sequence[float]:
-        """Speeds at which a line or a family crosses an edge of the rule."""
+        """Speeds at which a family or a line that matters crosses an edge of the rule."""
         if isinstance(limit.bound, Curve):
             edges: tuple[float, ...] = limit.bound.edges
         elif limit.measure.startswith(_CUT):
             edges = (cut_of(limit.measure),)
         else:
-            edges = LINE_FIGURES[limit.measure].edges if limit.measure in LINE_FIGURES else ()
-        frequencies = [*self.channel.frequencies, *(shape.fundamental for shape in self.shapes)]
+            edges = {"svm": BAND, "pst_lm": (_SLOW,)}.get(limit.measure, ())
+        frequencies = [shape.fundamental for shape in self.shapes]
+        if limit.measure != "pst_lm" and self.channel.frequencies.size:  # pst_lm goes smoothly with the frequency
+            heights = np.abs(self.channel.amplitudes)
+            frequencies += self.channel.frequencies[heights >= _MATTERS * heights.max()].tolist()
         return [edge / frequency for edge in edges for frequency in frequencies]
 
     def figure(self, measure: str, speed: float, scale: float) -> float | None:
@@ -150,17 +144,22 @@ class TunableLight:
         if measure == "percent_flicker":
             return faster.percent_flicker(scale)
         if measure.startswith(_CUT):
-            ends = faster.filtered(cut_of(measure))
-            return _depth(scale * ends[0], scale * ends[1])
-        base = faster.linear_figure(measure)
+            above, below = (scale * end for end in faster.filtered(cut_of(measure)))
+            total = 2.0 + above - below  # nothing or less where the cut makes the light swing far below zero
+            return 100.0 * (above + below) / total if total > 0 else math.inf
+        base = _linear_figure(faster, measure)
         return None if base is None else scale * base
 
     def linear_figure(self, measure: str) -> float | None:
         """Give one of the measures that are proportional to the modulation."""
         pulse = self.channel.pulse
-        if measure in LINE_FIGURES:
-            figure = LINE_FIGURES[measure]
-            return figure.of_lines(*self.lines_below(figure.edges[-1]))
+        if measure == "svm":
+            return stroboscopic_visibility(*self.lines_below(BAND[1]))
+        if measure == "pst_lm":
+            from flicker.signal.severity_lines import severity_of_lines
+
+            only = self.shapes[0].fundamental if len(self.shapes) == 1 else None
+            return severity_of_lines(*self.lines_below(_SLOW), only)
         if measure not in _BY_SHAPE:
             return None
         if pulse is None:
@@ -195,7 +194,7 @@ class TunableLight:
         figures = {name: self.figure(name, 1.0, 1.0) for name in names if name != MODULATION}
         measures = {
             name: Measure.missing(UNITS[name], "it cannot be computed from a line spectrum")
-            if value is None
+            if value is None or math.isinf(value)
             else Measure(value, UNITS[name])
             for name, value in figures.items()
         }
@@ -212,6 +211,11 @@ class TunableLight:
 @functools.lru_cache(maxsize=64)
 def _faster(light: TunableLight, speed: float) -> TunableLight:
     return light if speed == 1.0 else light.at(speed, 1.0)
+
+
+@functools.lru_cache(maxsize=64)
+def _linear_figure(light: TunableLight, measure: str) -> float | None:
+    return light.linear_figure(measure)
 
 
 def cut_of(measure: str) -> float:

@@ -15,6 +15,7 @@ from flicker.trace import FloatArray
 
 _ANSWERS = ("least_frequency_hz", "most_percent_flicker", "ripple_factor")
 _HAIR = 1e-12  # kept from the edge on the passing side, more than the rounding of a product
+_CLOSE = 1e-11  # how near to the edge it is looked for, on a logarithmic scale
 _SIDE = 1e-9  # from a critical speed to either side of it
 _SLOWEST, _FASTEST = 1e-9, 1e6  # speeds that stand for nought and for infinity
 _GRID = 160  # speeds tried where a measure goes smoothly up and down with the frequency
@@ -228,7 +229,7 @@ def _edge(keeps: Callable[[float], bool], failing: float, passing: float) -> flo
     """Close in, on a logarithmic scale, on the edge between a value that fails and one that passes."""
     while True:
         middle = math.sqrt(failing * passing)
-        if middle in (failing, passing) or abs(math.log(failing / passing)) < 1e-14:
+        if abs(math.log(failing / passing)) < _CLOSE:
             return passing
         if keeps(middle):
             passing = middle
