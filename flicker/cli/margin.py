@@ -69,7 +69,7 @@ def command(
         flicker margin --frequency 240 --duty 0.3 --limit ieee1789-low-risk
     """
     from flicker.limits import chosen_limits, margin_of
-    from flicker.report.margin import camera_words, margin_words
+    from flicker.report.margin import camera_words, column_notes, margin_words
 
     spare_the_captures(filter(None, [capture, limits_file, *cameras]), [json_target])
     rows = chosen_limits(limits, limits_file, on_date)
@@ -80,12 +80,14 @@ def command(
     )
     width = terminal_width()
     lights = _lights(capture, rows, decision, options)
-    entries = []
+    entries, shown = [], []
     for title, light, verdicts in lights:
         margins = [margin_of(verdict, light) for verdict in verdicts]
         channel = {"channel": light.channel.name} if len(lights) > 1 else {}
         entries += [{**channel, **one.to_dict()} for one in margins]
         print_words(margin_words(title, light, margins, width=width) + "\n", json_target)
+        shown += margins
+    print_words(column_notes(shown, width=width), json_target)
     data: dict[str, Any] = {"light": [_light_data(light) for _, light, _ in lights], "limits": entries}
     data["light"] = data["light"][0] if len(lights) == 1 else data["light"]
     if clean is not None:
@@ -94,7 +96,7 @@ def command(
             "all_from_hz": clean.all_from,
             "frequencies": [choice.to_dict() for choice in clean.choices],
         }
-        print_words(camera_words(clean, contrast or 0.0, len(settings), width=width), json_target)
+        print_words("\n" + camera_words(clean, contrast or 0.0, len(settings), width=width), json_target)
     write_json(data, json_target)
 
 

@@ -62,8 +62,13 @@ def margin_words(title: str, light: TunableLight, margins: Sequence[Margin], *, 
         lines.append("")
     for reason, limits in reasons.items():
         lines += wrap(f"– {', '.join(limits)}: {reason}", width, "", 2)
-    notes = _NOTES + (_RESERVOIR if _HEAD[-1] in head else "")
-    return "\n".join([*lines, "", *wrap(notes, width, "")])
+    return "\n".join(lines)
+
+
+def column_notes(margins: Sequence[Margin], *, width: int = 100) -> str:
+    """Say what the columns of the table mean."""
+    reservoir = _RESERVOIR if any(one.capacitance_factor is not None for one in margins) else ""
+    return "\n".join(wrap(_NOTES + reservoir, width, ""))
 
 
 def _all_at_once(margins: Sequence[Margin]) -> str:
