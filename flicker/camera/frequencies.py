@@ -17,8 +17,8 @@ from flicker.trace import FloatArray
 
 _STEP = 1e-3  # between neighbouring frequencies that are tried, as a share of them
 _ROUND = 50.0  # multiples of this are tried as well [Hz]
-_DUTIES = 9  # tried over the duty range
-_MOST = 200_000  # frequencies tried
+_DUTIES = 33  # tried over the duty range where light is left in the pauses
+_MOST = 50_000  # frequencies tried
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,7 +93,8 @@ def clean_frequencies(
     The contrast is that of an ideal rectangle at the worst frequency within the tolerance, the worst duty cycle
     tried and any phase; an emitter that decays slowly leaves fainter bands. Tried are all frequencies at which an
     exposure holds whole cycles, the places between, and steps of 0.1 %. Once an exposure holds N cycles no duty cycle
-    leaves more than 1 / (2 N + 1) (by hand): from some frequency on every one is clean.
+    leaves more than 1 / (2 N + 1) (by hand): from some frequency on every one is clean. Where the light goes out in
+    the pauses the narrowest pulse leaves the deepest bands; else the whole duty range is tried.
     """
     if not settings:
         raise InputError("no camera: give --camera, with exposures_s in its file or --exposure")
@@ -105,7 +106,7 @@ def clean_frequencies(
     cycles = math.ceil((1.0 / limit - 1.0) / 2.0 - 1e-9)
     all_from = cycles / float(exposures.min()) / (1.0 - tolerance)
     tried = _tried(exposures, lowest, all_from)
-    widths = np.linspace(*duties, _DUTIES) if duties[1] > duties[0] else np.array(duties[:1])
+    widths = np.linspace(*duties, _DUTIES) if low_level > 0.0 else np.array(duties[:1])
     at_centre = np.max(
         [contrast(tried * exposure, duty, low_level) for exposure in np.unique(exposures) for duty in widths], axis=0
     )
@@ -155,9 +156,17 @@ def _judged(
     """Find the camera and exposure on which a frequency leaves its deepest bands."""
     deepest = {
         exposure: max(
-            worst_contrast(Pulse(frequency, float(duty), low_level), exposure, None, tolerance) for duty in duties
+            worst_contrast(Pulse(frequency, float(duty), low_level), exposure, None, tolerance)
+            for duty in _with_kinks(duties, frequency * exposure, tolerance)
         )
         for exposure in {exposure for _, exposure in settings}
     }
     camera, exposure = max(settings, key=lambda setting: deepest[setting[1]])
     return Choice(frequency, deepest[exposure], camera.name, exposure)
+
+
+def _with_kinks(duties: FloatArray, cycles: float, tolerance: float) -> FloatArray:
+    """Add the duty cycles within the range at which the contrast of so many cycles changes its course (by hand)."""
+    rests = np.array([cycles * (1 - tolerance), cycles, cycles * (1 + tolerance)]) % 1.0
+    kinks = np.concatenate([rests, 1.0 - rests, [0.5]])
+    return np.concatenate([duties, kinks[(kinks > duties[0]) & (kinks < duties[-1])]])
