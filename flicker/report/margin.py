@@ -90,7 +90,8 @@ def _all_at_once(margins: Sequence[Margin]) -> str:
         fold = quantity(round_up(worst.ripple_factor or 1.0), "", 3)
         ways.append(f"shrink the modulation {fold}-fold ({quantity(worst.ripple_decibels or 0.0, 'dB', 3)})")
     cure = " or ".join(ways) if ways else "no single change helps"
-    return f"To keep all {len(broken)} broken limits: {cure}.{tail}".replace("all 1 broken limits", "the broken limit")
+    those = "the broken limit" if len(broken) == 1 else f"the {len(broken)} broken limits"
+    return f"To keep {those}: {cure}.{tail}"
 
 
 def _row(one: Margin) -> tuple[str, ...]:
@@ -135,7 +136,7 @@ def camera_words(found: CleanFrequencies, limit: float, settings: int, *, width:
     if not found.choices:
         lines.append("  none below the frequency from which on all are")
     lines += wrap(
-        f"From {quantity(round_up(found.all_from), 'Hz')} on every frequency does. The first column of figures is the "
+        f"From {quantity(round_up(found.all_from), 'Hz')} on every frequency does. The percentage is that of the "
         "deepest band within the oscillator's tolerance, at the worst duty cycle of the range.",
         width,
         "  ",

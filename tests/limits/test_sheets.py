@@ -1,4 +1,6 @@
 import datetime
+import re
+from pathlib import Path
 
 import pytest
 
@@ -165,3 +167,11 @@ def test_a_sheet_that_cannot_be_read_is_named(tmp_path):
         known_limits(tmp_path / "bytes.toml")
     with pytest.raises(InputError, match="at least one"):
         known_limits(sheet(tmp_path, 'title = "a"\nsource = "b"\nbasis = "c"\n'))
+
+
+def test_the_sheet_in_the_method_note_is_accepted(tmp_path):
+    note = Path(__file__).resolve().parents[2] / "docs" / "methods" / "verdicts.md"
+    (text,) = re.findall(r"^```toml\n(.*?)^```", note.read_text(encoding="utf-8"), re.M | re.S)
+    known = known_limits(sheet(tmp_path, text))
+    assert known["bridge-display-depth"].bound == 40.0
+    assert known["chart-table-modulation"].bound.at(1000.0) == pytest.approx(50.0)
