@@ -260,7 +260,7 @@ def _clocked(
 def _fitted_exposure(harmonics: dict[str, Harmonics], longest: float) -> tuple[float | None, list[PulseShape]]:
     """Exposure from the shape of the bands, and the pulses that fit as well with another; None if it cannot be had."""
     best = max(harmonics.values(), key=lambda one: float(np.abs(one.amplitudes[0])))
-    if int((np.abs(best.amplitudes) > 4 * np.sqrt(best.variances)).sum()) < 3:
+    if int((np.abs(best.amplitudes) > 3 * np.sqrt(best.variances)).sum()) < 3:
         return None, []
     pulse, others = fit_exposure(best, longest)
     return (pulse.exposure, others) if is_rectangle(pulse) else (None, [])
@@ -322,7 +322,7 @@ def _doubts(
     if line_time is None:
         notes.append(Note("line-time-unknown", "warning", "without --line-time the frequency is one of the alternatives"))
     if exposure is None:
-        message = f"without --exposure only the bands are known: contrast {100 * bands.contrast:.3g} %, the light is deeper"
+        message = f"without --exposure only the bands are known: contrast {100 * min(bands.contrast, 1.0):.3g} %, the light is deeper"
         notes.append(Note("exposure-unknown", "warning", message))
     elif not told:
         message = f"the exposure was not stated; the shape of the bands speaks for {exposure:.4g} s"

@@ -70,6 +70,22 @@ class Percent(click.ParamType[float]):
         return percent / 100.0
 
 
+class Region(click.ParamType[tuple[int, int, int, int]]):
+    """Part of a picture: `X,Y,WIDTH,HEIGHT` in pixels."""
+
+    name = "X,Y,WIDTH,HEIGHT"
+
+    def convert(
+        self, value: Any, param: click.Parameter | None, ctx: click.Context | None
+    ) -> tuple[int, int, int, int]:
+        """Parse four whole numbers."""
+        parts = str(value).split(",")
+        if len(parts) != 4 or not all(part.strip().isdecimal() for part in parts):
+            self.fail(f"'{value}' is no region: write four whole numbers, X,Y,WIDTH,HEIGHT", param, ctx)
+        x, y, width, height = (int(part) for part in parts)
+        return x, y, width, height
+
+
 TIME = Quantity("time")
 FREQUENCY = Quantity("frequency")
 MOMENT = Quantity("time", positive=False)
@@ -118,8 +134,33 @@ _photodiode_options = several(
     click.option("--duration", type=TIME, help="How much of the capture to use."),
 )
 
-reading_options = several(
+_picture_options = several(
     click.option("--frame-rate", type=FREQUENCY, help="Frame rate at which a video was really shot."),
+    click.option("--region", type=Region(), help="Part of the picture of a video, as stored, in pixels."),
+    click.option(
+        "--transfer",
+        metavar="NAME|GAMMA",
+        help="How code values of a video relate to light: srgb, bt709, linear, hlg, pq or an exponent.",
+    ),
+)
+
+video_options = several(
+    _picture_options,
+    click.option("--line-time", type=TIME, help="From the start of one line to that of the next."),
+    click.option("--line-rate", type=FREQUENCY, help="Its inverse, in place of it."),
+    click.option("--readout-time", type=TIME, help="Of all lines of a frame, in place of it."),
+    click.option(
+        "--read-direction",
+        metavar="down|up|left|right",
+        help="The way the lines are read in the picture as stored.",
+    ),
+    click.option("--start", type=MOMENT, help="Where to begin in the video."),
+    click.option("--duration", type=TIME, help="How much of the video to use."),
+)
+
+reading_options = several(
+    _picture_options,
+    click.option("--exposure", type=TIME, help="Exposure of each frame of a video, to undo what it takes."),
     _photodiode_options,
 )
 

@@ -41,6 +41,8 @@ class VideoFile:
     def __enter__(self) -> VideoFile:
         import av
 
+        if not self.path.is_file():
+            raise UnreadableFileError(f"{self.path}: there is no such file; check the name and the folder")
         # damage is noticed here; without this, the decoders' own remarks go to standard error
         av.logging.set_level(av.logging.PANIC)
         try:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import hashlib
 from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
@@ -233,7 +234,7 @@ def read_footage(
         film.meter.code_step,
         film.transfer,
         path,
-        None,
+        _sha256(path),
         notes,
         (_understood(film),),
         dict(file.details),
@@ -254,6 +255,11 @@ def _gathering(usable: npt.NDArray[np.float32], blocks: int) -> tuple[npt.NDArra
         return np.stack(means, axis=1)
 
     return weight.astype(float), gather
+
+
+def _sha256(path: Path) -> str:
+    with path.open("rb") as file:
+        return hashlib.file_digest(file, "sha256").hexdigest()
 
 
 def _moment(file: VideoFile, number: int, frame_rate: float | None) -> float:

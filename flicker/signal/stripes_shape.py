@@ -74,6 +74,21 @@ def low_level_of(duty: float, share: float) -> float:
     return duty * (1.0 - share) / (share * (1.0 - duty) + duty)
 
 
+def _coarse(seen: Harmonics, exposure: float) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Best share, phase and loss (chi-square less that of nothing) for each duty of the grid, each of shape (d,)."""
+    left = seen.left_by(exposure)
+    weights = 1.0 / seen.variances
+    kernels = 2.0 * np.sinc(np.outer(_DUTIES, seen.numbers)) * left
+    spectrum = np.zeros((_DUTIES.size, _PHASES // 2 + 1), dtype=complex)
+    spectrum[:, seen.numbers.astype(int)] = weights * kernels * seen.amplitudes
+    match = scipy.fft.irfft(spectrum, _PHASES, axis=1) * (_PHASES / 2)
+    strength = (weights * kernels**2).sum(axis=1)
+    phase = match.argmax(axis=1)
+    best = match[np.arange(_DUTIES.size), phase]
+    share = np.clip(best / np.maximum(strength, 1e-30), 0.0, 1.0)
+    return share, phase, strength * share**2 - 2 * best * share
+
+
 def fit_pulse(seen: Harmonics, exposure: float) -> PulseShape:
     """
     Fit a rectangular pulse without decay, blurred by an exposure.
@@ -92,17 +107,8 @@ def fit_pulse(seen: Harmonics, exposure: float) -> PulseShape:
     """
     left = seen.left_by(exposure)
     data = seen.amplitudes
-    weights = 1.0 / seen.variances
-    kernels = 2.0 * np.sinc(np.outer(_DUTIES, seen.numbers)) * left
-    spectrum = np.zeros((_DUTIES.size, _PHASES // 2 + 1), dtype=complex)
-    spectrum[:, seen.numbers.astype(int)] = weights * kernels * data
-    match = scipy.fft.irfft(spectrum, _PHASES, axis=1) * (_PHASES / 2)
-    strength = (weights * kernels**2).sum(axis=1)
-    best_phase = match.argmax(axis=1)
-    best = match[np.arange(_DUTIES.size), best_phase]
-    share = np.clip(best / np.maximum(strength, 1e-30), 0.0, 1.0)
-    loss = strength * share**2 - 2 * best * share
-    root = np.sqrt(weights)
+    share, best_phase, loss = _coarse(seen, exposure)
+    root = 1.0 / np.sqrt(seen.variances)
 
     def residual(p: FloatArray) -> FloatArray:
         model = 2.0 * p[1] * np.sinc(seen.numbers * p[0]) * np.exp(-2j * np.pi * seen.numbers * p[2]) * left
@@ -151,10 +157,13 @@ def fit_exposure(seen: Harmonics, longest: float) -> tuple[PulseShape, list[Puls
     """
     turns = np.unique(np.concatenate([np.geomspace(0.01, 1.0, 40), np.arange(1.0, min(longest * seen.frequency, 12.0), 0.05)]))
     exposures = turns[turns <= longest * seen.frequency] / seen.frequency
-    fits = [fit_pulse(seen, float(exposure)) for exposure in exposures]
-    rough = min(range(len(fits)), key=lambda k: fits[k].chi_square)
-    lower, upper = exposures[max(rough - 1, 0)], exposures[min(rough + 1, len(fits) - 1)]
-    fits += [fit_pulse(seen, float(exposure)) for exposure in np.linspace(lower, upper, 15)]
+    losses = np.array([_coarse(seen, float(exposure))[2].min() for exposure in exposures])
+    dips = np.flatnonzero((losses <= np.r_[losses[1:], np.inf]) & (losses <= np.r_[np.inf, losses[:-1]]))
+    near = dips[np.argsort(losses[dips])][:3]
+    fits = []
+    for dip in near:
+        lower, upper = exposures[max(dip - 1, 0)], exposures[min(dip + 1, len(exposures) - 1)]
+        fits += [fit_pulse(seen, float(exposure)) for exposure in np.linspace(lower, upper, 15)]
     best = min(fits, key=lambda fit: fit.chi_square)
     freedom = max(2 * seen.numbers.size - 4, 1)
     # 95 % of one parameter: chi-square grows by 3.84 times its best reduced value

@@ -1,0 +1,125 @@
+"""What was read from a video, in words."""
+
+from __future__ import annotations
+
+import textwrap
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from flicker.report.answer import REGION_MARKS, REGION_WORDS
+from flicker.report.figures import measure_name, measured, quantity
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable
+
+    from flicker.camera.stripes import ChannelStripes
+    from flicker.filmed import FilmReport
+    from flicker.results import Measure, Note
+
+_NOTE_MARKS = {"error": "!!", "warning": "! ", "info": "i "}
+_SHOWN = ("percent_flicker", "flicker_index", "rms_modulation", "duty_cycle", "svm", "decay_time")
+
+
+def stripes_words(report: FilmReport, *, width: int = 100) -> str:
+    """
+    Put the light of a video into words: the answer first, then a table of the channels, then the doubts.
+
+    Parameters
+    ----------
+    report : FilmReport
+        From `flicker.filmed.read_back`.
+    width : int
+        Columns that a line may fill.
+
+    Returns
+    -------
+    str
+        Lines without a line break at the end.
+    """
+    stripes, footage = report.stripes, report.stripes.footage
+    lines = [Path(report.path).name]
+    line = f"{quantity(stripes.line_time, 's')} a line" if stripes.line_time else "line time unknown"
+    told = "" if stripes.exposure_told else " (fitted)"
+    exposure = f"exposure {quantity(stripes.exposure, 's')}{told}" if stripes.exposure else "exposure unknown"
+    lines.append(
+        f"{quantity(footage.duration, 's')}: {footage.frames} frames at {quantity(footage.frame_rate, 'Hz', 5)}, "
+        f"{footage.lines} lines read {footage.read_direction}, {line}, {exposure}"
+    )
+    lines.append("")
+    deepest = max(stripes.channels, key=lambda channel: channel.measures["percent_flicker"].value or 0.0)
+    answers = {"What": _what(stripes.frequency), "Depth": _depth(deepest), "Risk": _risk(report), "Next": _next(report)}
+    for label, text in answers.items():
+        lines += _wrapped(text, width, f"  {label:<5}  ", "         ")
+    lines.append("")
+    lines += list(_table(stripes.channels))
+    if stripes.frequency.value is None and stripes.alternatives:
+        lines += ["", "  pairs of frequency and line time that fit alike"]
+        lines += [
+            f"    {quantity(pair['frequency_hz'], 'Hz', 6):<12}  {quantity(pair['line_time_s'], 's')}"
+            for pair in stripes.alternatives[:12]
+        ]
+    lines += list(notes_words(stripes.notes, width))
+    return "\n".join(lines)
+
+
+def _what(frequency: Measure) -> str:
+    if frequency.value is None:
+        return f"no frequency: {frequency.reason}"
+    value, interval = measured(frequency)
+    return f"{value} {interval}, by the camera's clock".replace("  ", " ")
+
+
+def _depth(channel: ChannelStripes) -> str:
+    measure = channel.measures["percent_flicker"]
+    if measure.value is None:
+        return f"not known: {measure.reason}"
+    value, interval = measured(measure)
+    return f"percent flicker {value} ({interval}) in {channel.name}; bands of {quantity(100 * min(channel.bands.contrast, 1.0), '%')}"
+
+
+def _risk(report: FilmReport) -> str:
+    regions = [region for channel in report.stripes.channels if (region := report.region(channel)) is not None]
+    if not regions:
+        return "not known without the depth"
+    order = list(REGION_WORDS)
+    worst = max(regions, key=lambda region: order.index(region.region))
+    return f"{REGION_MARKS[worst.region]} {REGION_WORDS[worst.region]} (IEEE 1789-2015, from the deepest channel)"
+
+
+def _next(report: FilmReport) -> str:
+    stripes = report.stripes
+    if stripes.line_time is None:
+        return "measure the camera's line time: film a light of known frequency and run flicker line-time"
+    if stripes.exposure is None:
+        return "state --exposure, or film with a shorter one so that the bands show more harmonics"
+    broken = next((note for note in stripes.notes if note.severity != "info"), None)
+    return f"mend the capture first: see {broken.code} below" if broken else "hold it against limits: flicker limits lists them"
+
+
+def _table(channels: Iterable[ChannelStripes]) -> Iterable[str]:
+    channels = list(channels)
+    shown = [name for name in _SHOWN if any(channel.measures[name].value is not None for channel in channels)]
+    cells = [["", *(channel.name for channel in channels)]]
+    for name in shown:
+        row = [measure_name(name)]
+        for channel in channels:
+            measure = channel.measures[name]
+            row.append("-" if measure.value is None else " ".join(part for part in measured(measure) if part))
+        cells.append(row)
+    wide = [max(len(row[column]) for row in cells) for column in range(len(channels) + 1)]
+    for row in cells if shown else []:
+        yield "  " + "  ".join(cell.ljust(size) for cell, size in zip(row, wide, strict=True)).rstrip()
+
+
+def notes_words(notes: Iterable[Note], width: int) -> Iterable[str]:
+    """Give the doubts, the gravest first, after an empty line."""
+    order = list(_NOTE_MARKS)
+    found = sorted(notes, key=lambda note: order.index(note.severity))
+    if found:
+        yield ""
+    for note in found:
+        yield from _wrapped(f"{note.code}: {note.message}", width, f"  {_NOTE_MARKS[note.severity]} ", "     ")
+
+
+def _wrapped(text: str, width: int, first: str, rest: str) -> list[str]:
+    return textwrap.wrap(text, width, initial_indent=first, subsequent_indent=rest, break_long_words=False)
