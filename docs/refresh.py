@@ -160,11 +160,18 @@ def stale_pages() -> dict[Path, str]:
 def draw_pictures() -> None:
     """Draw the pictures of the manual anew."""
     import flicker
+    from flicker.camera import Camera
+    from flicker.camera.answer import predict_all
+    from flicker.light import pwm_light
+    from flicker.plots.frame import save_frames
     from flicker.plots.pictures import write_pictures
 
     name = "bridge-display-night"
     report = flicker.measure(flicker.read(ROOT / "fixtures" / f"{name}.csv", dark_level=0.012))
     write_pictures(report.captures[0], ROOT / "docs" / "pictures", name)
+    light = pwm_light(frequency=240.0, duty=0.3, decay=(8.5e-3, 0.0, 0.0))
+    camera = Camera.load(ROOT / "fixtures" / "dock-camera.toml")
+    save_frames(predict_all(light, camera, exposures=(1 / 100,)), ROOT / "docs" / "pictures")
 
 
 def main(arguments: list[str]) -> int:
