@@ -1,4 +1,10 @@
-"""Numbers from text equal Python's `float()`, whose rounding is correct (David Gay's algorithm), to the last bit."""
+"""
+Numbers from text equal Python's `float()`, whose rounding is correct (David Gay's algorithm), to the last bit.
+
+A few thousand in the default run; `FLICKER_NUMBERS=200000 pytest tests/readers/test_csv_numbers.py` for many.
+"""
+
+import os
 
 import numpy as np
 import pytest
@@ -8,7 +14,7 @@ from hypothesis import strategies as st
 from flicker.readers import read
 from flicker.readers._csv_numbers import is_number, number, numbers
 
-COUNT = 4000
+COUNT = int(os.environ.get("FLICKER_NUMBERS", "4000"))
 
 
 def random_numbers(count, seed=1):
@@ -79,7 +85,8 @@ def test_halfway_cases_round_to_even():
 def test_every_way_through_a_file_equals_float(tmp_path, spelling, path):
     words = [SPELLINGS[spelling](value) for value in random_numbers(COUNT, seed=3)]
     if path == "lines of one length":
-        words = [word.rjust(max(map(len, words))) for word in words]
+        width = max(map(len, words))
+        words = [word.rjust(width) for word in words]
     quote = '"' if path == "quotes" else ""
     content = "".join(f"{quote}{i:06d}{quote},{quote}{word}{quote}\n" for i, word in enumerate(words))
     file = tmp_path / "capture.csv"
