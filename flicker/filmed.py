@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import dataclasses
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 from flicker import __version__
 from flicker.camera import Camera
+from flicker.camera.line_time import LineTime, measure_line_time
 from flicker.camera.stripes import ChannelStripes, Stripes, read_stripes
 from flicker.errors import InputError
 from flicker.footage import ReadDirection
@@ -163,3 +165,56 @@ def from_camera(file: str | Path, how: dict[str, Any]) -> dict[str, Any]:
         filled["line_time"] = camera.line_time
     filled["read_direction"] = how.get("read_direction") or camera.read_direction
     return filled
+
+
+def find_line_time(
+    path: str | Path,
+    light_frequency: float,
+    *,
+    light_ppm: float = 0.0,
+    frame_rate: float | None = None,
+    region: Region | None = None,
+    transfer: str | None = None,
+    read_direction: str | None = None,
+    start: float | None = None,
+    duration: float | None = None,
+) -> LineTime:
+    """
+    Measure a camera's line time from a video of a light of known frequency; any read direction is found.
+
+    Parameters
+    ----------
+    path : str or Path
+        The video.
+    light_frequency : float
+        [Hz]
+    light_ppm : float
+        Standard uncertainty of it. [1e-6]
+    frame_rate, region, transfer, start, duration
+        See `flicker.readers.video.read_footage`.
+    read_direction : {"down", "up", "left", "right"}, optional
+        Looked for if not given.
+
+    Returns
+    -------
+    LineTime
+        Its `camera` is a `Camera` for prediction.
+    """
+    how: dict[str, Any] = {"frame_rate": frame_rate, "region": region, "transfer": transfer, "colour": False}
+    how |= {"start": start or 0.0, "duration": duration}
+    directions = (read_direction,) if read_direction else ("down", "right")
+    views = []
+    for direction in directions:
+        view = read_footage(path, read_direction=direction, **how)  # type: ignore[arg-type]
+        views.append(view)
+        if not read_direction:
+            opposite: Any = {"down": "up", "right": "left"}[direction]
+            turned = dataclasses.replace(
+                view,
+                light=view.light[:, ::-1],
+                weight=view.weight[::-1],
+                read_direction=opposite,
+                first_line=view.lines_of_frame - view.first_line - view.lines,
+            )
+            views.append(turned)
+    return measure_line_time(views, light_frequency, uncertainty=1e-6 * light_ppm)

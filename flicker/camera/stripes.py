@@ -124,7 +124,7 @@ def read_stripes(
             measures |= figures_of(draws[name], bands.frequency, fit.noise, step, _loose(footage), alike)
             measures["decay_time"] = _decay(shapes[name])
         else:
-            measures |= _unknown(line_time)
+            measures |= _unknown(line_time, exposure)
         components, light = _lines(name, draws.get(name), bands, footage, exposure, means[name])
         channels.append(ChannelStripes(name, means[name], fit, measures, components, light))
     return Stripes(
@@ -279,7 +279,10 @@ def _shapes(harmonics: dict[str, Harmonics], exposure: float) -> dict[str, Pulse
             lag = 2 * math.pi * one.frequency * slow.decay
             if lag > 0.2 and slow.decay > 4 * slow.decay_error and slow.chi_square < max(1.5 * own[name].chi_square, 1.5):
                 shape = slow
-        shapes[name] = shape if is_rectangle(shape) else undo_exposure(one, exposure)
+        if is_rectangle(shape):
+            shapes[name] = shape
+        elif (free := undo_exposure(one, exposure)).numbers.size:
+            shapes[name] = free
     return shapes
 
 
@@ -302,11 +305,13 @@ def _decay(shape: PulseShape | FreeShape) -> Measure:
     return Measure.missing("s", "the channel does not lag the fastest one measurably")
 
 
-def _unknown(line_time: float | None) -> dict[str, Measure]:
+def _unknown(line_time: float | None, exposure: float | None) -> dict[str, Measure]:
     """Say what keeps the depth from being known."""
     reason = (
         "the line time is not known, and with it neither the frequency nor what the exposure takes: state --line-time"
         if line_time is None
+        else "no harmonic of this channel stands out of the noise and of what compression does"
+        if exposure is not None
         else "the exposure is not known and the bands show too few harmonics to find it: state --exposure"
     )
     units = {"percent_flicker": "%", "flicker_index": "1", "rms_modulation": "%", "duty_cycle": "1", "svm": "1"}

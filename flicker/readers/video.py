@@ -17,6 +17,7 @@ from flicker.footage import Footage, ReadDirection
 from flicker.readers import ReadOptions, reader
 from flicker.readers._video_decode import VideoFile, true_times
 from flicker.readers._video_light import Block, LightMeter
+from flicker.registry import did_you_mean
 from flicker.results import Note
 from flicker.signal.transfer import transfer_gamma
 from flicker.trace import Capture, Segment, Trace
@@ -186,6 +187,8 @@ def read_footage(
         If the region or a name does not fit, or fewer than three frames are left.
     """
     path = Path(path)
+    if read_direction not in ("down", "up", "left", "right"):
+        raise InputError(did_you_mean("read direction", read_direction, ["down", "up", "left", "right"]))
     sideways = read_direction in ("left", "right")
     kept: list[Block] = []
     with VideoFile(path) as file:

@@ -12,6 +12,7 @@ from flicker.report.figures import measure_name, measured, quantity
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
+    from flicker.camera.line_time import LineTime
     from flicker.camera.stripes import ChannelStripes
     from flicker.filmed import FilmReport
     from flicker.results import Measure, Note
@@ -109,6 +110,45 @@ def _table(channels: Iterable[ChannelStripes]) -> Iterable[str]:
     wide = [max(len(row[column]) for row in cells) for column in range(len(channels) + 1)]
     for row in cells if shown else []:
         yield "  " + "  ".join(cell.ljust(size) for cell, size in zip(row, wide, strict=True)).rstrip()
+
+
+def line_time_words(found: LineTime, path: str, written: str | None, *, width: int = 100) -> str:
+    """
+    Put a line time into words.
+
+    Parameters
+    ----------
+    found : LineTime
+        From `flicker.filmed.find_line_time`.
+    path : str
+        The video.
+    written : str or None
+        Camera file that was written.
+    width : int
+        Columns that a line may fill.
+
+    Returns
+    -------
+    str
+        Lines without a line break at the end.
+    """
+    footage = found.footage
+    lines = [Path(path).name, ""]
+    for label, measure in (
+        ("line time", found.line_time),
+        ("line rate", found.line_rate),
+        ("readout time", found.readout_time),
+    ):
+        value, interval = measured(measure)
+        lines.append(f"  {label:<12}  {value} {interval}".rstrip())
+    lines.append(f"  {'lines':<12}  {footage.lines_of_frame}, read {footage.read_direction}")
+    lines.append(f"  {'frames':<12}  {footage.frames} at {quantity(footage.frame_rate, 'Hz', 6)}")
+    bands = abs(found.bands.turns_per_line) * footage.lines_of_frame
+    contrast = quantity(100 * min(found.bands.contrast, 1.0), "%")
+    lines += [f"  {'bands':<12}  {bands:.3g} a frame, contrast {contrast}", ""]
+    advice = f"written to {written}" if written else "keep it with --camera-out FILE.toml"
+    lines += _wrapped(f"{advice}; it holds for this mode of the camera only", width, "  ", "  ")
+    return "\n".join([*lines, *notes_words(found.notes, width)])
 
 
 def notes_words(notes: Iterable[Note], width: int) -> Iterable[str]:

@@ -126,7 +126,7 @@ def fit_pulse(seen: Harmonics, exposure: float) -> PulseShape:
     found = min(tries, key=lambda one: one.cost)
     freedom = max(2 * data.size - 3, 1)
     reduced = 2.0 * float(found.cost) / freedom
-    covariance = np.linalg.pinv(found.jac.T @ found.jac) * max(reduced, 0.02)
+    covariance = np.linalg.pinv(found.jac.T @ found.jac) * max(reduced, 0.25)
     return PulseShape(
         float(found.x[0]),
         float(found.x[1]),
@@ -205,7 +205,7 @@ def fit_decay(seen: Harmonics, fastest: PulseShape) -> PulseShape:
     reduced = 2.0 * float(found.cost) / max(2 * seen.numbers.size - 1, 1)
     steep = float((found.jac**2).sum())
     decay = math.exp(float(found.x[0]))
-    error = decay * math.sqrt(max(reduced, 0.02) / max(steep, 1e-30))
+    error = decay * math.sqrt(max(reduced, 1.0) / max(steep, 1e-30))
     return PulseShape(
         fastest.duty, fastest.share, fastest.middle, fastest.covariance, reduced, fastest.exposure, decay, error
     )
@@ -213,7 +213,7 @@ def fit_decay(seen: Harmonics, fastest: PulseShape) -> PulseShape:
 
 def is_rectangle(fit: PulseShape) -> bool:
     """Whether the lines speak for the pulse."""
-    return fit.chi_square < _MUCH_WORSE
+    return fit.chi_square < _MUCH_WORSE and fit.share > 0
 
 
 @dataclass(frozen=True, slots=True, eq=False)
