@@ -20,6 +20,8 @@ DEPTH_MEASURES = (
     "percent_flicker_below_200hz",
     "percent_flicker_below_400hz",
     "percent_flicker_below_1000hz",
+    "display_flicker_level",
+    "display_flicker_contrast",
 )
 
 

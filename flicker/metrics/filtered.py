@@ -103,13 +103,13 @@ def filtered_depth(trace: Trace, observation: Observation, cut: float) -> Measur
 
     .. math:: 100 \, \frac{a - b}{a + b}
 
-    The cut is a brick wall, as the method asks for: transform, zero, back. It rings on edges, and what is left of a short
-    pulse swings below zero: a PWM of 120 Hz and 10 % duty reads 197 % below 200 Hz. The figure is given as it is, not
-    clipped at 100.
+    The cut is a brick wall, as the method asks for: transform, zero, back. It rings on edges, and what is left of a
+    short pulse swings below zero: a PWM of 120 Hz and 10 % duty reads 197 % below 200 Hz. The figure is given as it
+    is, not clipped at 100.
 
-    The extremes of noise only ever lie too far apart. Hence lines are taken from the fit to all samples, and of what lies
-    between them only that counts which rises above the noise; drifts and single events do. A line that
-    lies on the cut to within its uncertainty counts, and the interval then holds the figure with and without it.
+    The extremes of noise only ever lie too far apart. Hence lines are taken from the fit to all samples, and of what
+    lies between them only that counts which rises above the noise; drifts and single events do. A line that lies on
+    the cut to within its uncertainty counts, and the interval then holds the figure with and without it.
     """
     _refuse(trace, cut)
     level, families, series = observation.level, observation.search.families, observation.series

@@ -38,8 +38,8 @@ def pst_lm(trace: Trace, observation: Observation) -> Measure:
     Returns
     -------
     Measure
-        1 where the average observer sees the flicker half of the time, with its 95 % interval; of a capture of several windows of 180 s
-        the largest. [1]
+        1 where the average observer sees the flicker half of the time, with its 95 % interval; of a capture of
+        several windows of 180 s the largest. [1]
 
     Raises
     ------
@@ -48,13 +48,14 @@ def pst_lm(trace: Trace, observation: Observation) -> Measure:
 
     Notes
     -----
-    The chain of `flicker.signal.severity`: decimation behind a real filter, deviation from the mean, high-pass 0.05 Hz,
-    low-pass 35 Hz, weighting of eye and brain, squaring, smoothing, percentiles. Of a capture longer than 180 s up to 20 s are
-    dropped at its start, where a lamp warms up.
+    The chain of `flicker.signal.severity`: decimation behind a real filter, deviation from the mean, high-pass 0.05
+    Hz, low-pass 35 Hz, weighting of eye and brain, squaring, smoothing, percentiles. Of a capture longer than 180 s
+    up to 20 s are dropped at its start, where a lamp warms up.
 
     Everything that moves between 0.3 and 80 Hz counts: a hand before the sensor, a lamp that warms up, a voltage that
-    sags. Noise of the sensor counts as well; what it alone would read stands in the method and is taken off the lower end of the
-    interval (two lights together never read more than the sum of what each reads). Light that was sampled without a filter against aliases may show a beat that is not there.
+    sags. Noise of the sensor counts as well; what it alone would read stands in the method and is taken off the lower
+    end of the interval (two lights together never read more than the sum of what each reads). Light that was sampled
+    without a filter against aliases may show a beat that is not there.
     """
     light = _one_run(trace)
     felt, rate, mean, noise = _sensation(light, trace.sample_rate, observation.level, float(trace.dark_level or 0.0))
@@ -82,7 +83,8 @@ def severity_series(trace: Trace, observation: Observation) -> tuple[tuple[float
     Returns
     -------
     tuple of (float, float)
-        Start of each window of 180 s [s], and its Pst LM [1]; the last windows overlap where the capture is no multiple of 180 s.
+        Start of each window of 180 s [s], and its Pst LM [1]; the last windows overlap where the capture is no
+        multiple of 180 s.
 
     Raises
     ------
@@ -114,7 +116,7 @@ def _one_run(trace: Trace) -> FloatArray:
 def _sensation(
     readings: FloatArray, sample_rate: float, level: float, dark: float
 ) -> tuple[FloatArray, float, float, float]:
-    """Sensation over time, its sample rate [Hz], the mean level above dark, and the severity that noise alone would read."""
+    """Sensation over time, its sample rate [Hz], the mean above dark, and the severity that noise alone would read."""
     light, rate = severity.decimated(readings - dark, sample_rate)
     mean = float(light.mean())
     if not mean > 0:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 import numpy.typing as npt
@@ -22,6 +23,7 @@ _SHORTEST = 1.0  # [s]
 _ALMOST = 0.995  # a rate read from time stamps may miss the second by so much
 _FULL = 6  # families after which the search stops, whether or not lines are left
 _ROUNDS = 3
+_NEGLIGIBLE = 1e-3  # amplitude over the mean, below which lines that were left do not move the figure
 _FEWEST_GROUPS = 8
 
 
@@ -54,12 +56,14 @@ def svm(trace: Trace, observation: Observation) -> Measure:
 
     .. math:: M = \Big( \sum_m \big( C_m / T(f_m) \big)^{3.7} \Big)^{1 / 3.7}
 
-    over the lines from 80 Hz to 2 kHz, both included. Lines are fitted to the samples, never read from the bins of a transform, which
-    read a line between two bins up to 23 % low. Every harmonic of every family that was found counts, weak ones too; what
-    noise adds to their moduli is taken off (half the variance times the Laplacian of :math:`M`, by hand).
+    over the lines from 80 Hz to 2 kHz, both included. Lines are fitted to the samples, never read from the bins of a
+    transform, which read a line between two bins up to 23 % low. Every harmonic of every family that was found
+    counts, weak ones too; what noise adds to their moduli is taken off (half the variance times the Laplacian of
+    :math:`M`, by hand).
 
-    A line that lies on an end of the band to within its uncertainty counts, and the interval then reaches from the figure without it to
-    the one with it. A dark level that was not taken off lowers the figure in proportion, and so does light of other lamps.
+    A line that lies on an end of the band to within its uncertainty counts, and the interval then reaches from the
+    figure without it to the one with it. A dark level that was not taken off lowers the figure in proportion, and so
+    does light of other lamps.
     """
     _refuse(trace)
     level = observation.level
@@ -80,14 +84,15 @@ def svm(trace: Trace, observation: Observation) -> Measure:
 def _refuse(trace: Trace) -> None:
     if trace.sample_rate <= 2 * BAND[1]:
         raise NotMeasurable(
-            f"lines up to 2 kHz count, and at {trace.sample_rate:.6g} Hz only those below {trace.sample_rate / 2:.6g} Hz "
-            "are seen: record above 4 kHz, better at 20 kHz"
+            f"lines up to 2 kHz count, and at {trace.sample_rate:.6g} Hz only those below "
+            f"{trace.sample_rate / 2:.6g} Hz are seen: record above 4 kHz, better at 20 kHz"
         )
     if trace.duration < _ALMOST * _SHORTEST:
         raise NotMeasurable(f"at least 1 s is needed, and the capture has {trace.duration:.3g} s: record longer")
     if trace.exposure * BAND[1] > 0.5:
         raise NotMeasurable(
-            f"each sample averages over {trace.exposure:.3g} s, which hides lines up to 2 kHz: expose for at most 0.25 ms"
+            f"each sample averages over {trace.exposure:.3g} s, which hides lines up to 2 kHz: expose for at most "
+            "0.25 ms"
         )
 
 
@@ -148,7 +153,7 @@ def _all_families(observation: Observation) -> tuple[HarmonicFit, ...]:
     """Families of lines; where the search stopped because it had found enough of them, what it left is searched too."""
     families, newest = observation.search.families, observation.search.families
     for _ in range(_ROUNDS):
-        if len(newest) < _FULL:
+        if len(newest) < _FULL or np.abs(newest[-1].amplitudes).max() < _NEGLIGIBLE * observation.level:
             break
         newest = find_families(observation.search.without(observation.series, families)).families
         families += newest
@@ -156,22 +161,20 @@ def _all_families(observation: Observation) -> tuple[HarmonicFit, ...]:
 
 
 def _half_width(observation: Observation, lines: _Lines) -> float:
-    """Half of the 95 % interval: from the spread between groups of cycles, or from the lines' errors where cycles are few."""
+    """Half of the 95 % interval: from the spread between groups of cycles, and no less than the lines' errors make."""
     half = 0.0
     for fit, cycle in zip(observation.search.families, observation.cycles, strict=True):
         number = np.arange(1, min(fit.amplitudes.size, (cycle.size - 1) // 2) + 1)
         if cycle.groups < _FEWEST_GROUPS or not number.size:
             return 1.96 * lines.error  # too few for a spread
-        frequencies = number * fit.frequency
-        own = (frequencies >= BAND[0]) & (frequencies <= BAND[1])
-        rest = ~np.isin(lines.frequencies, frequencies)
-
-        def figure(
-            levels: FloatArray, frequencies: FloatArray = frequencies, own: BoolArray = own, rest: BoolArray = rest
-        ) -> float:
-            heights = np.abs(np.fft.rfft(levels)[1 : frequencies.size + 1][own]) * 2 / levels.size
-            every = np.append(frequencies[own], np.clip(lines.frequencies[rest], *BAND))
-            return stroboscopic_visibility(every, np.append(heights / levels.mean(), lines.amplitudes[rest]))
-
-        half = math.hypot(half, cycle.interval(figure)[1])
+        frequencies = np.asarray(number * fit.frequency)
+        rest = lines.only(~np.isin(lines.frequencies, frequencies))
+        half = math.hypot(half, cycle.interval(partial(_of_levels, frequencies=frequencies, rest=rest))[1])
     return max(half, 1.96 * lines.error)
+
+
+def _of_levels(levels: FloatArray, frequencies: FloatArray, rest: _Lines) -> float:
+    """Visibility of a cycle whose harmonics lie at the given frequencies, beside the lines of other families."""
+    heights = np.abs(np.fft.rfft(levels)[1 : frequencies.size + 1]) * 2 / (levels.size * levels.mean())
+    every = np.append(frequencies, np.clip(rest.frequencies, *BAND))
+    return stroboscopic_visibility(every, np.append(heights, rest.amplitudes))

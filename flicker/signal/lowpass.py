@@ -1,4 +1,4 @@
-"""Light with everything above a frequency taken out, as a rule book wants it, without the noise that would swell its extremes."""
+"""Light with everything above a frequency taken out, without the noise that would swell its extremes."""
 
 from __future__ import annotations
 
@@ -41,9 +41,11 @@ class LeftOver:
 
     def below(self, cut: float, least: float = 0.0) -> tuple[FloatArray, float]:
         """
-        Coefficients below a frequency [Hz] that rise above the noise and `least`, the others zero, and the noise of one.
+        Coefficients below a frequency [Hz] that rise above the noise and `least`, the others zero, and the noise of
+        one.
 
-        The noise is read above the cut, from the median, which lines do not move; where there is nothing above, below it.
+        The noise is read above the cut, from the median, which lines do not move; where there is nothing above, below
+        it.
         """
         first = min(int(2.0 * cut * self.duration) + 1, self.coefficients.size)
         inside, above = self.coefficients[:first].copy(), self.coefficients[first : 10 * first]
@@ -57,8 +59,9 @@ def harmonics_below(fit: HarmonicFit, cut: float, doubt: float = 1.0) -> Complex
     """
     Amplitudes of a family's harmonics up to a frequency [Hz], shape (k,), without what noise adds.
 
-    A harmonic that lies on the cut to within `doubt` times its uncertainty counts. Each modulus is shrunk by 1 - variance /
-    modulus squared, to nothing where that is negative (after James and Stein 1961): strong lines stay, lines of noise vanish.
+    A harmonic that lies on the cut to within `doubt` times its uncertainty counts. Each modulus is shrunk by 1 -
+    variance / modulus squared, to nothing where that is negative (after James and Stein 1961): strong lines stay,
+    lines of noise vanish.
     """
     reach = doubt * (1.96 * fit.frequency_error + 1e-9 * fit.frequency)
     amplitudes = fit.amplitudes[: int(cut / max(fit.frequency - reach, 1e-300))]
@@ -103,8 +106,9 @@ def ends_below(
 
     Notes
     -----
-    Lines are those of the fits and so need no whole number of periods in the record; the rest is transformed, set to zero
-    above the cut and transformed back. What the harmonics beyond the fitted ones may leave as aliases does not count.
+    Lines are those of the fits and so need no whole number of periods in the record; the rest is transformed, set to
+    zero above the cut and transformed back. What the harmonics beyond the fitted ones may leave as aliases does not
+    count.
     """
     lines = [(fit, harmonics_below(fit, cut, doubt)) for fit in families]
     lines = [(fit, amplitudes) for fit, amplitudes in lines if amplitudes.any()]
@@ -125,7 +129,7 @@ def ends_below(
 
 
 def unfitted(fit: HarmonicFit) -> float:
-    """Amplitude that harmonics beyond the fitted ones may have: three times the root mean square of the last quarter."""
+    """Amplitude that harmonics beyond the fitted ones may have: thrice the root mean square of the last quarter."""
     if fit.amplitudes.size < 16:
         return 0.0
     return 3.0 * float(np.sqrt(np.mean(np.abs(fit.amplitudes[-(fit.amplitudes.size // 4) :]) ** 2)))

@@ -52,8 +52,8 @@ def decimated(light: FloatArray, sample_rate: float) -> tuple[FloatArray, float]
 
     Notes
     -----
-    Polyphase (`scipy.signal.upfirdn`), Kaiser window for 100 dB (Kaiser 1974; `scipy.signal.kaiserord`). Only what the filter
-    sees whole is given: some milliseconds are lost at both ends.
+    Polyphase (`scipy.signal.upfirdn`), Kaiser window for 100 dB (Kaiser 1974; `scipy.signal.kaiserord`). Only what
+    the filter sees whole is given: some milliseconds are lost at both ends.
     """
     factor = int(sample_rate // _LOWEST_RATE)
     if factor < 2:
@@ -160,8 +160,8 @@ def severity_of(sensation: FloatArray) -> float:
     -----
     .. math:: \sqrt{0.0314 P_{0.1} + 0.0525 P_{1s} + 0.0657 P_{3s} + 0.28 P_{10s} + 0.08 P_{50s}}
 
-    with :math:`P_x` exceeded during x % of the time; those with an s are means of neighbouring ones (IEC 61000-4-15:2010, from
-    memory). A steady sensation P reads :math:`\sqrt{0.5096 P}`.
+    with :math:`P_x` exceeded during x % of the time; those with an s are means of neighbouring ones (IEC
+    61000-4-15:2010, from memory). A steady sensation P reads :math:`\sqrt{0.5096 P}`.
     """
     shares = [share for _, group in _PERCENTILES for share in group]
     levels = dict(zip(shares, np.percentile(sensation, [100.0 - share for share in shares]), strict=True))
@@ -187,8 +187,8 @@ def light_of_lamp(voltage: FloatArray, sample_rate: float) -> FloatArray:
 
     Notes
     -----
-    Two poles: what remains of the voltage's weighting for 230 V when the light's weighting is taken out (computed from the constants
-    of IEC 61000-4-15:2010, from memory).
+    Two poles: what remains of the voltage's weighting for 230 V when the light's weighting is taken out (computed
+    from the constants of IEC 61000-4-15:2010, from memory).
     """
     from scipy.signal import bilinear, sosfilt, sosfilt_zi, tf2sos
 
@@ -200,7 +200,7 @@ def light_of_lamp(voltage: FloatArray, sample_rate: float) -> FloatArray:
 
 @cache
 def noise_reading(sample_rate: float) -> float:
-    """Sensation in the mean that white noise of standard deviation 1 over the light's mean leaves behind the filters."""
+    """Mean sensation of white noise whose standard deviation is the light's mean."""
     from scipy.signal import sosfilt
 
     impulse = np.zeros(int(10 * sample_rate))

@@ -32,8 +32,8 @@ def sine_threshold(frequency: npt.ArrayLike) -> FloatArray:
     -----
     .. math:: T(f) = \frac{1}{1 + e^{-a (f - b)}} + 20 \, e^{-f / 10}
 
-    with :math:`a` = 0.00518 s and :math:`b` = 306.6 Hz: the form of IEC TR 63158:2018 and CIE TN 006:2016 (from memory), which
-    regulations mean.
+    with :math:`a` = 0.00518 s and :math:`b` = 306.6 Hz: the form of IEC TR 63158:2018 and CIE TN 006:2016 (from
+    memory), which regulations mean.
 
     Examples
     --------
@@ -60,8 +60,8 @@ def power_law_threshold(frequency: npt.ArrayLike) -> FloatArray:
 
     Notes
     -----
-    :math:`2.865 \cdot 10^{-5} (f / \mathrm{Hz})^{1.543} + 0.225`, J. Opt. Soc. Am. A 35 (2018) 309 (from a public summary).
-    It differs from the form of IEC TR 63158 by 1.4 % at 100 Hz, and by a factor of 3.8 at 2 kHz.
+    :math:`2.865 \cdot 10^{-5} (f / \mathrm{Hz})^{1.543} + 0.225`, J. Opt. Soc. Am. A 35 (2018) 309 (from a public
+    summary). It differs from the form of IEC TR 63158 by 1.4 % at 100 Hz, and by a factor of 3.8 at 2 kHz.
     """
     return np.asarray(2.865e-5 * np.asarray(frequency, dtype=float) ** 1.543 + 0.225)
 
