@@ -14,11 +14,11 @@ from flicker.report.verdicts import OUTCOME_WORDS
 from flicker.sweep.course import Change, Course, Point, weight
 
 _MOST_ROWS = 60
-_KEEP = {
-    "fail": "break a limit",
-    "undecided": "cannot be decided",
-    "pass": "keep every limit",
-    "not-applicable": "fall under no limit",
+_KEEP = {  # of one, of several
+    "fail": ("breaks a limit", "break a limit"),
+    "undecided": ("cannot be decided", "cannot be decided"),
+    "pass": ("keeps every limit", "keep every limit"),
+    "not-applicable": ("falls under no limit", "fall under no limit"),
 }
 _MODES = {
     "amplitude": "by amplitude",
@@ -61,9 +61,9 @@ def _headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -> str
     counts = Counter(point.verdict for point in points)
     judged = len({point.capture for point in points})
     what = "captures" if judged == len(points) else f"channels of {judged} captures"
-    parts = [f"{counts[outcome]} {_KEEP[outcome]}" for outcome in OUTCOMES if counts[outcome]]
+    parts = [f"{counts[outcome]} {_KEEP[outcome][counts[outcome] > 1]}" for outcome in OUTCOMES if counts[outcome]]
     if errors:
-        parts.append(f"{len(errors)} captures could not be read")
+        parts.append(f"{len(errors)} more could not be read")
     answer = next((OUTCOME_WORDS[outcome].upper() for outcome in OUTCOMES if counts[outcome]), "NOTHING JUDGED")
     return f"{answer}: of {len(points)} {what}, {', '.join(parts)}"
 
