@@ -19,6 +19,8 @@ UNITS = {
     "percent_flicker": "%",
     "flicker_index": "1",
     "rms_modulation": "%",
+    "display_flicker_level": "dB",
+    "display_flicker_contrast": "%",
     "svm": "1",
     "pst_lm": "1",
     "percent_flicker_below_40hz": "%",

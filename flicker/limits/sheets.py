@@ -102,7 +102,7 @@ class _Sheet:
             id=self.identifier(row, start),
             name=self.text(row, "name", start) if "name" in row else self.text(row, "id", start),
             measure=measure,
-            bound=self.curve(row, start) if given == ["band"] else self.number(row, given[0], start),
+            bound=self.curve(row, start) if given == ["band"] else self.number(row, given[0], start, UNITS[measure]),
             clause=self.text(row, "clause", start),
             applies=self.text(row, "applies", start),
             title=self.data["title"],
@@ -148,13 +148,13 @@ class _Sheet:
             )
         return Curve(tuple(bands))
 
-    def number(self, row: dict[str, Any], key: str, start: int) -> float:
+    def number(self, row: dict[str, Any], key: str, start: int, unit: str = "") -> float:
         value = row[key]
         try:
             number = float(Fraction(value)) if isinstance(value, str) else float(value)
         except (TypeError, ValueError, ZeroDivisionError):
             raise self.error(start, key, f"must be a number or a fraction like '1/30', not {value!r}") from None
-        if isinstance(value, bool) or not math.isfinite(number) or number < 0:
+        if isinstance(value, bool) or not math.isfinite(number) or (number < 0 and unit != "dB"):
             raise self.error(start, key, f"must be a number from 0 up, not {value!r}")
         return number
 

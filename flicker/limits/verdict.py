@@ -43,7 +43,7 @@ class Verdict:
         """How far the value lies under the bound, in percent of the bound; negative beyond it."""
         if self.value is None or not self.bound:
             return None
-        return 100.0 * (self.bound - self.value) / self.bound
+        return 100.0 * (self.bound - self.value) / abs(self.bound)
 
     @classmethod
     def from_dict(cls, limit: Limit, data: Mapping[str, Any]) -> Verdict:

@@ -5,8 +5,10 @@ from pathlib import Path
 import pytest
 
 from flicker.errors import InputError, UnreadableFileError
-from flicker.limits import all_rows, chosen_limits, default_limits, known_limits
-from flicker.limits.limit import UNITS
+from flicker.limits import all_rows, chosen_limits, default_limits, judge, known_limits
+from flicker.limits.limit import MODULATION, UNITS
+from flicker.metrics import METRICS
+from flicker.results import Measure
 
 GOOD = """\
 title  = "House rule of the pilot station"
@@ -175,3 +177,17 @@ def test_the_sheet_in_the_method_note_is_accepted(tmp_path):
     known = known_limits(sheet(tmp_path, text))
     assert known["bridge-display-depth"].bound == 40.0
     assert known["chart-table-modulation"].bound.at(1000.0) == pytest.approx(50.0)
+
+
+def test_a_level_in_decibels_may_be_negative(tmp_path):
+    text = GOOD.replace('"percent_flicker"', '"display_flicker_level"').replace("at_most = 40", "at_most = -30")
+    limit = known_limits(sheet(tmp_path, text))["bridge-display-depth"]
+    assert (limit.bound, limit.unit) == (-30.0, "dB")
+    level = {"display_flicker_level": Measure(-36.0, "dB", -36.1, -35.9)}
+    verdict = judge(limit, level, (), ())
+    assert (verdict.verdict, verdict.margin) == ("pass", 20.0)
+
+
+def test_every_measure_that_can_be_limited_is_one_that_is_taken():
+    taken = {name: metric.unit for name, metric in METRICS.items()}
+    assert {name: unit for name, unit in UNITS.items() if name != MODULATION}.items() <= taken.items()
