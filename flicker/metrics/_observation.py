@@ -69,7 +69,8 @@ class Observation:
     @cached_property
     def family_extremes(self) -> tuple[Extremes, ...]:
         """Largest and smallest level of each family's cycle."""
-        return tuple(extremes(cycle) for cycle in self.cycles)
+        pairs = zip(self.cycles, self.search.families, strict=True)
+        return tuple(extremes(cycle, fit.amplitudes.size) for cycle, fit in pairs)
 
     @cached_property
     def fit(self) -> HarmonicFit:
@@ -84,6 +85,13 @@ class Observation:
         if not self.search.families:
             raise NotMeasurable(self._steady_reason())
         return self.cycles[self._deepest]
+
+    @property
+    def cycle_extremes(self) -> Extremes:
+        """Largest and smallest level of the deepest family's cycle; `NotMeasurable` for steady light."""
+        if not self.search.families:
+            raise NotMeasurable(self._steady_reason())
+        return self.family_extremes[self._deepest]
 
     @cached_property
     def _deepest(self) -> int:

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 
 import numpy as np
 
 from flicker.metrics import Observation, metric
 from flicker.metrics._observation import percent_between
 from flicker.results import Measure
+from flicker.signal.cycle import Cycle
 from flicker.trace import FloatArray
 
 
@@ -118,8 +120,10 @@ def rms_modulation(observation: Observation) -> Measure:
     for cycle in observation.cycles:
         noise = float(np.mean(cycle.standard_error**2))
 
-        def rms(levels: FloatArray, noise: float = noise) -> float:
-            return 100 * math.sqrt(max(float(levels.var()) - noise, 0.0)) / float(levels.mean())
+        def rms(levels: FloatArray, cycle: Cycle = cycle, noise: float = noise) -> float:
+            levels, shares = cycle.distribution(levels)
+            mean = float(shares @ levels)
+            return 100 * math.sqrt(max(float(shares @ (levels - mean) ** 2) - noise, 0.0)) / mean
 
         value, half = cycle.interval(rms)
         total, spread = math.hypot(total, value), math.hypot(spread, half)
@@ -131,13 +135,14 @@ def rms_modulation(observation: Observation) -> Measure:
 _STEADY = "no period rises above the noise; the upper end is the depth a sine would need to be seen"
 
 
-def _index(levels: FloatArray) -> float:
-    mean = float(levels.mean())
-    return float(np.maximum(levels - mean, 0.0).mean()) / mean
-
-
-def _of_cycle(observation: Observation, figure: object, unit: str) -> Measure:
-    value, half = observation.cycle.interval(figure)  # type: ignore[arg-type]
+def _of_cycle(observation: Observation, figure: Callable[[Cycle, FloatArray], float], unit: str) -> Measure:
+    cycle = observation.cycle
+    value, half = cycle.interval(lambda levels: figure(cycle, levels))
     half = math.hypot(half, 1.96 * value * observation.dark_uncertainty / observation.level)
-    method = "mean cycle, spread between groups of cycles"
-    return Measure(value, unit, max(value - half, 0.0), value + half, method)
+    return Measure(value, unit, max(value - half, 0.0), value + half, "mean cycle, spread between groups of cycles")
+
+
+def _index(cycle: Cycle, levels: FloatArray) -> float:
+    levels, shares = cycle.distribution(levels)
+    mean = float(shares @ levels)
+    return float(shares @ np.maximum(levels - mean, 0.0)) / mean

@@ -8,6 +8,7 @@ from flicker.errors import NotMeasurable
 from flicker.metrics import metric
 from flicker.results import Measure
 from flicker.signal.cycle import Cycle
+from flicker.signal.extremes import Extremes
 from flicker.trace import FloatArray
 
 
@@ -41,7 +42,7 @@ def fundamental_frequency(fundamental: Measure) -> Measure:
 
 
 @metric(unit="1", source="definition: share of the period above half level", order=50)
-def duty_cycle(cycle: Cycle) -> Measure:
+def duty_cycle(cycle: Cycle, cycle_extremes: Extremes) -> Measure:
     """
     Share of the period in which the light lies above the middle of its two ends.
 
@@ -49,6 +50,8 @@ def duty_cycle(cycle: Cycle) -> Measure:
     ----------
     cycle : Cycle
         Mean cycle of the deepest family.
+    cycle_extremes : Extremes
+        Its largest and smallest level.
 
     Returns
     -------
@@ -62,26 +65,17 @@ def duty_cycle(cycle: Cycle) -> Measure:
 
     Notes
     -----
-    The ends are the medians of what lies above and below the middle of the swing, so that ringing does not move them.
-    Works on AC-coupled captures too, as long as the coupling's droop is small over one period. For a sine it is
-    0.5 by this definition.
+    Works on AC-coupled captures too, as long as the coupling's droop is small over one period. For a sine it is 0.5 by
+    this definition. Ringing moves the middle, but hardly the time at which a steep edge crosses it.
     """
 
-    def duty(levels: FloatArray) -> float:
-        return _share_above(levels, 0.5 * (_end(levels, 1) + _end(levels, -1)))
-
-    value, half = cycle.interval(duty)
+    middle = 0.5 * (cycle_extremes.high + cycle_extremes.low)
+    value, half = cycle.interval(lambda levels: _share_above(levels, middle))
     if not np.isfinite(half):
         raise NotMeasurable("too few cycles for a duty cycle: record at least two")
     half = max(half, 0.29 / cycle.size)
     method = "mean cycle, crossings of the middle level"
     return Measure(value, "1", max(value - half, 0.0), min(value + half, 1.0), method)
-
-
-def _end(levels: FloatArray, sign: int) -> float:
-    """Typical level of the upper (1) or lower (-1) end: the mean of the levels in the outer half of the swing."""
-    middle = 0.5 * (float(levels.max()) + float(levels.min()))
-    return float(np.median(levels[sign * (levels - middle) >= 0]))
 
 
 def _share_above(levels: FloatArray, threshold: float) -> float:

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
+import numpy.typing as npt
 
 from flicker.errors import NotMeasurable
 from flicker.signal.harmonics import Series, longest_gap
@@ -30,6 +31,7 @@ class Cycle:
     counts: FloatArray  # shape (groups, m)
     noise: float  # standard deviation of single samples about the mean cycle, away from edges
     first_phase: float  # phase of the first bin's centre at time 0 [cycles]
+    edges: npt.NDArray[np.bool_]  # bins inside which the light jumps, shape (m,)
 
     @property
     def groups(self) -> int:
@@ -68,9 +70,37 @@ class Cycle:
         """Standard error of `levels` for white noise, shape (m,)."""
         return np.asarray(self.noise / np.sqrt(self.counts.sum(axis=0)))
 
+    def distribution(self, levels: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """
+        Levels and the shares of the period that the light spends on them.
+
+        A bin with an edge inside is no level of its own: its mean tells how its neighbours' levels share it.
+
+        Parameters
+        ----------
+        levels : ndarray, shape (m,)
+            As `levels`, or without one group.
+
+        Returns
+        -------
+        (ndarray, ndarray), shapes (m,)
+            Levels and shares; the shares add up to 1.
+        """
+        shares = np.full(self.size, 1.0 / self.size)
+        for place in np.flatnonzero(self.edges):
+            before, after = place - 1, (place + 1) % self.size
+            step = levels[after] - levels[before]
+            if self.edges[before] or self.edges[after] or step == 0.0:
+                continue
+            late = float(np.clip((levels[place] - levels[before]) / step, 0.0, 1.0))
+            shares[after] += late / self.size
+            shares[before] += (1 - late) / self.size
+            shares[place] = 0.0
+        return levels, shares
+
     def part(self, groups: slice) -> Cycle:
         """Cycle of some of the groups; every second one, say."""
-        return Cycle(self.frequency, self.sums[groups], self.counts[groups], self.noise, self.first_phase)
+        return replace(self, sums=self.sums[groups], counts=self.counts[groups])
 
     def interval(self, figure: Callable[[FloatArray], float]) -> tuple[float, float]:
         """
@@ -144,9 +174,11 @@ def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cy
         bins = max(2, min(bins - 1, int(bins * 0.93)))
         first = float((series.segments[0].start - series.centre) * frequency) - 0.5 / bins
     levels = sums.sum(axis=0) / np.maximum(counts.sum(axis=0), 1)
-    noise = _noise(square - levels * sums.sum(axis=0), counts.sum(axis=0))
+    squares = np.maximum(square - levels * sums.sum(axis=0), 0.0)
+    noise = _noise(squares, counts.sum(axis=0))
+    edges = _edges(levels, squares, counts.sum(axis=0), noise)
     offset = (0.5 / bins + first + series.centre * -frequency) % 1.0
-    return Cycle(frequency, sums, counts, noise, offset)
+    return Cycle(frequency, sums, counts, noise, offset, edges)
 
 
 def _noise(squares: FloatArray, counts: FloatArray) -> float:
@@ -158,9 +190,18 @@ def _noise(squares: FloatArray, counts: FloatArray) -> float:
     freedom = counts - 1
     if not (freedom > 0).any():
         return 0.0
-    variances = np.maximum(squares, 0.0)[freedom > 0] / freedom[freedom > 0]
+    variances = squares[freedom > 0] / freedom[freedom > 0]
     typical = float(np.median(freedom[freedom > 0]))
     return float(np.sqrt(np.median(variances) / (1 - 2 / (9 * typical)) ** 3))
+
+
+def _edges(levels: FloatArray, squares: FloatArray, counts: FloatArray, noise: float) -> npt.NDArray[np.bool_]:
+    """Find the bins whose samples differ by more than noise and whose neighbours lie on either side of them."""
+    freedom = np.maximum(counts - 1, 1)
+    restless = squares / freedom > noise**2 * (1 + 5 * np.sqrt(2 / freedom))
+    before, after = np.roll(levels, 1), np.roll(levels, -1)
+    between = (levels - before) * (after - levels) > 0
+    return np.asarray(restless & between & (np.abs(after - before) > 8 * noise / np.sqrt(counts)))
 
 
 def _index(times: FloatArray, frequency: float, first: float, bins: int) -> np.ndarray:

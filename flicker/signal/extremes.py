@@ -13,11 +13,11 @@ from flicker.signal.cycle import Cycle
 from flicker.signal.intervals import student_quantile
 from flicker.trace import FloatArray
 
-_CONTRADICTION = 2.5  # standard errors by which a wide window may differ from a narrower one
-_STEPS_BACK = (
-    2  # from the widest window not contradicted: its bias is of the size of its error, that of a narrower is not
-)
-_KINDS = ((0, "right"), (0, "left"), (0, "about"), (1, "right"), (1, "left"), (2, "about"))  # degree, side
+_CONTRADICTION = 2.0  # standard errors by which a wide window may differ from a narrower one
+# steps back from the widest window that is not contradicted, whose bias is of the size of its error: plateaus on
+# either side of the place or about it, and two shapes that bend
+_STEPS_BACK = {"right": 2, "left": 2, "about": 2, "parabola": 3, "hinge": 3}
+_FEW_HARMONICS = 6  # with more, a corner may hide behind the noise
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,7 +37,7 @@ class Extremes:
         return value - half, value + half
 
 
-def extremes(cycle: Cycle) -> Extremes:
+def extremes(cycle: Cycle, harmonics: int) -> Extremes:
     """
     Read the largest and the smallest level of a mean cycle.
 
@@ -45,6 +45,8 @@ def extremes(cycle: Cycle) -> Extremes:
     ----------
     cycle : Cycle
         Light above dark.
+    harmonics : int
+        How many harmonics rise above the noise; few of them describe the cycle whole.
 
     Returns
     -------
@@ -52,51 +54,94 @@ def extremes(cycle: Cycle) -> Extremes:
 
     Notes
     -----
-    The largest of noisy values only ever lies too high. So the cycles are split in two halves: one half says where the
-    extreme lies and over how wide a window it may be averaged, the other half what the level is there, and the other
-    way round; what selection adds falls away. A window may be as wide as the narrower ones do not contradict
-    (intersection of confidence intervals; Goldenshluger and Nemirovski, Math. Methods Statist. 6 (1997) 135), to the
-    left, to the right or about the place, so that a plateau is averaged and an edge is not. The interval comes from the
-    spread between groups of neighbouring cycles.
+    The largest of noisy values only ever lies too high.
+
+    A smooth cycle is the sum of its few harmonics; its maximum is too high by half the variance of its slope over its
+    curvature (second order, by hand), which is taken off.
+
+    A cycle with edges is split in two halves of its cycles: one says where the extreme lies and over how wide a window
+    it may be averaged, the other what the level is there, and the other way round; what selection adds falls away. A
+    window may be as wide as the narrower ones do not contradict (intersection of confidence intervals; Goldenshluger
+    and Nemirovski, Math. Methods Statist. 6 (1997) 135). Its shape is a plateau to the left, to the right or about the
+    place, a parabola, or a hinge of two lines, whichever has the smallest error, so that a plateau is averaged, a
+    corner kept and an edge not crossed. What the window next in width reads otherwise is added to the interval.
+
+    The interval comes from the spread between groups of neighbouring cycles.
     """
+    if harmonics <= _FEW_HARMONICS and cycle.size > 4 * harmonics:
+        return _of_few_harmonics(cycle, harmonics)
     halves = cycle.part(slice(0, None, 2)), cycle.part(slice(1, None, 2))
     places = [_places(half) for half in halves]
-    values, scores = [], np.zeros((2, cycle.groups))
-    for row, which in zip(scores, ("high", "low"), strict=True):
+    values, doubts, scores = [], np.zeros(2), np.zeros((2, cycle.groups))
+    for end, which in enumerate(("high", "low")):
         here = _Reading(halves[1], places[0][which])
         there = _Reading(halves[0], places[1][which])
         values.append(0.5 * (here.level + there.level))
-        row[1::2] += 0.5 * here.scores
-        row[0::2] += 0.5 * there.scores
+        doubts[end] = 0.5 * (here.doubt + there.doubt)
+        scores[end, 1::2] = 0.5 * here.scores
+        scores[end, 0::2] = 0.5 * there.scores
+    freedom = max(cycle.groups - 2, 1)
+    systematic = np.diag((doubts / student_quantile(freedom)) ** 2)
     correction = cycle.groups / max(cycle.groups - 1, 1)
-    return Extremes(values[0], values[1], correction * (scores @ scores.T), max(cycle.groups - 2, 1))
+    return Extremes(values[0], values[1], correction * (scores @ scores.T) + systematic, freedom)
+
+
+def _of_few_harmonics(cycle: Cycle, harmonics: int) -> Extremes:
+    number = np.arange(1, harmonics + 1)
+    loss = np.sinc(number / cycle.size)  # of a harmonic, by the width of the bins
+    coefficients = scipy.fft.rfft(cycle.levels)[1 : harmonics + 1] * (2 / cycle.size) / loss
+
+    def weights(phase: float, derivative: int) -> FloatArray:
+        turns = (
+            np.exp(2j * np.pi * np.outer(number, phase - cycle.phase)) * (2j * np.pi * number[:, None]) ** derivative
+        )
+        steady = 1.0 if derivative == 0 else 0.0
+        return np.asarray((steady + 2 * (turns / loss[:, None]).real.sum(axis=0)) / cycle.size)
+
+    def at(phase: FloatArray) -> FloatArray:
+        return np.asarray((coefficients @ np.exp(2j * np.pi * np.outer(number, phase))).real)
+
+    fine = np.arange(64 * harmonics) / (64 * harmonics)
+    correction = cycle.groups / max(cycle.groups - 1, 1)
+    values, scores = [], np.zeros((2, cycle.groups))
+    for end, sign in enumerate((1.0, -1.0)):
+        near = fine[int(np.argmax(sign * at(fine)))] + np.linspace(-1, 1, 129) / (64 * harmonics)
+        top = float(near[int(np.argmax(sign * at(near)))])
+        level, slope = _Reading(cycle, (weights(top, 0),) * 2), _Reading(cycle, (weights(top, 1),) * 2)
+        curvature = float((coefficients @ (np.exp(2j * np.pi * number * top) * (2j * np.pi * number) ** 2)).real)
+        scores[end] = level.scores
+        error = float(np.sqrt(correction * (level.scores @ level.scores)))
+        excess = 0.5 * correction * float(slope.scores @ slope.scores) / max(-sign * curvature, 1e-300)
+        values.append(level.level - sign * min(excess, error))
+    return Extremes(values[0], values[1], correction * (scores @ scores.T), max(cycle.groups - 1, 1))
 
 
 class _Reading:
-    """Weighted level of some bins in one half of the cycles, and what each group adds to its deviation."""
+    """Weighted level of some bins, what each group adds to its deviation, and how far a second weighting differs."""
 
-    def __init__(self, half: Cycle, weights: FloatArray) -> None:
-        counts = half.counts.sum(axis=0)
-        levels = half.sums.sum(axis=0) / counts
-        self.level = float(weights @ levels)
-        self.scores = (half.sums - half.counts * levels) @ (weights / counts)
+    def __init__(self, cycle: Cycle, weights: tuple[FloatArray, FloatArray]) -> None:
+        chosen, narrower = weights
+        counts, levels = cycle.counts.sum(axis=0), cycle.levels
+        self.level = float(chosen @ levels)
+        self.doubt = abs(self.level - float(narrower @ levels))
+        self.scores = (cycle.sums - cycle.counts * levels) @ (chosen / counts)
 
 
-def _places(half: Cycle) -> dict[str, FloatArray]:
-    """Weights over the bins that read the largest and the smallest level of one half, each of shape (m,)."""
+def _places(half: Cycle) -> dict[str, tuple[FloatArray, FloatArray]]:
+    """Weights that read the largest and the smallest level of one half, by the window and by the next narrower one."""
     m = half.size
     counts = half.counts.sum(axis=0)
     single, single_error = half.sums.sum(axis=0) / counts, half.noise / np.sqrt(counts)
     levels, variances = scipy.fft.rfft(single), scipy.fft.rfft(single_error**2)
     means, errors, kernels = [], [], []
-    for degree, side in _KINDS:
-        widths = _widths(m, degree, side)
+    for shape, steps_back in _STEPS_BACK.items():
+        widths = _widths(m, shape)
         below, above = single - _CONTRADICTION * single_error, single + _CONTRADICTION * single_error
         alive = np.ones(m, dtype=bool)
         ladder: list[tuple[FloatArray, FloatArray]] = []
         reached = np.zeros(m, dtype=int)
         for step, width in enumerate(widths):
-            kernel = _kernel(m, width, degree, side)
+            kernel = _kernel(m, width, shape)
             mean = _correlate(levels, kernel)
             error = np.sqrt(np.maximum(_correlate(variances, kernel**2), 0.0))
             below = np.maximum(below, mean - _CONTRADICTION * error)
@@ -106,17 +151,18 @@ def _places(half: Cycle) -> dict[str, FloatArray]:
             if not alive.any():
                 break
             reached[alive] = step
-        chosen = np.maximum(reached - _STEPS_BACK, 0)
+        chosen = np.maximum(reached - steps_back, 0)
         means.append(_pick(ladder, chosen, 0))
         errors.append(_pick(ladder, chosen, 1))
-        kernels.append([(widths[step], degree, side) for step in chosen])
+        kernels.append([(widths[step], widths[max(step - 1, 0)], shape) for step in chosen])
     kind = np.argmin(errors, axis=0)
     every = np.arange(m)
     mean, error = np.array(means)[kind, every], np.array(errors)[kind, every]
     readings = {}
     for which, sign in (("high", 1.0), ("low", -1.0)):
         top = int(np.argmax(sign * mean - 2.0 * error))
-        readings[which] = np.roll(_kernel(m, *kernels[kind[top]][top]), top)
+        width, narrower, shape = kernels[kind[top]][top]
+        readings[which] = (np.roll(_kernel(m, width, shape), top), np.roll(_kernel(m, narrower, shape), top))
     return readings
 
 
@@ -129,24 +175,25 @@ def _correlate(transform: ComplexArray, kernel: FloatArray) -> FloatArray:
 
 
 @cache
-def _kernel(bins: int, width: int, degree: int, side: str) -> FloatArray:
-    """Weights of a least-squares polynomial over a window, read at bin 0, shape (bins,)."""
-    first = {"right": 0, "left": 1 - width, "about": -(width // 2)}[side]
+def _kernel(bins: int, width: int, shape: str) -> FloatArray:
+    """Weights of a least-squares shape over a window, read at bin 0, shape (bins,)."""
+    first = {"right": 0, "left": 1 - width}.get(shape, -(width // 2))
     offsets = np.arange(first, first + width)
-    basis = np.vander(offsets / max(width, 2), degree + 1, increasing=True)
+    x = offsets / max(width, 2)
+    curves = {"parabola": [x, x * x], "hinge": [np.minimum(x, 0), np.maximum(x, 0)]}.get(shape, [])
     kernel = np.zeros(bins)
-    kernel[offsets % bins] = np.linalg.pinv(basis)[0]
+    kernel[offsets % bins] = np.linalg.pinv(np.column_stack([np.ones(width), *curves]))[0]
     kernel.flags.writeable = False
     return kernel
 
 
-def _widths(bins: int, degree: int, side: str) -> list[int]:
+def _widths(bins: int, shape: str) -> list[int]:
     """Widths of the windows, each a quarter more than the one before, up to half a cycle."""
     widths: list[int] = []
-    width = 1.0 if degree == 0 else 2.0 * degree + 1.0
+    width = 5.0 if shape in ("parabola", "hinge") else 1.0
     while width <= max(1, bins // 2):
         whole = int(width)
-        whole += (whole + 1) % 2 if side == "about" else 0
+        whole += (whole + 1) % 2 if shape not in ("left", "right") else 0
         if (not widths or whole > widths[-1]) and whole <= bins:
             widths.append(whole)
         width *= 1.25

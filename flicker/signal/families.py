@@ -106,16 +106,8 @@ def _next_line(now: Spectrum, lowest: float, highest: float, families: list[Harm
             a, b = int((middle - reach) / now.spacing), int((middle + reach) / now.spacing) + 2
             amplitudes[max(a, 0) : b] = 0.0
     line = replace(now, amplitudes=amplitudes).strongest_line(lowest, highest, noise)
-    unmodelled = max((_tail(fit) for fit in families), default=0.0)
+    unmodelled = max((3 * fit.unresolved for fit in families), default=0.0)
     return line if line is not None and line[1] > unmodelled else None
-
-
-def _tail(fit: HarmonicFit) -> float:
-    """Amplitude that the harmonics beyond the fitted ones may have: three times the last quarter's root mean square."""
-    if fit.amplitudes.size < 16:
-        return 0.0
-    last = fit.amplitudes[-fit.amplitudes.size // 4 :]
-    return 3.0 * float(np.sqrt(np.mean(np.abs(last) ** 2)))
 
 
 def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicFit:
@@ -132,7 +124,7 @@ def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicF
         if lower.amplitudes.size < 2 * divisor:
             continue
         heights = np.abs(lower.amplitudes[np.array(places) - 1])
-        least = max(4.0 * lower.amplitude_error, _tail(fit))
+        least = max(4.0 * lower.amplitude_error, 3 * fit.unresolved)
         if np.count_nonzero(heights > least) * 2 >= len(places):
             whole = fit_harmonics(series, lower.frequency)
             if whole.noise < fit.noise:

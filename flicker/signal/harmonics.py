@@ -111,6 +111,13 @@ class HarmonicFit:
         """Standard error of the modulus of one amplitude, sqrt(2 / n) times the noise (Kay 1993, example 3.14)."""
         return float(self.noise * (2.0 / self.samples) ** 0.5)
 
+    @property
+    def unresolved(self) -> float:
+        """Typical amplitude of the last quarter of the harmonics; those beyond, not fitted, may be as high."""
+        if self.amplitudes.size < 16:
+            return 0.0
+        return float(np.sqrt(np.mean(np.abs(self.amplitudes[-(self.amplitudes.size // 4) :]) ** 2)))
+
     def at(self, times: FloatArray) -> FloatArray:
         """Evaluate the fit at times, shape (n,), through a table of its cycle."""
         table = self.table(_BINS)
@@ -245,10 +252,12 @@ def _with_robust_error(series: Series, fit: HarmonicFit) -> HarmonicFit:
 
     White residuals give the error of the fit; steps between samples, wander and other lights leave residuals that hang
     together, and the spread of the blocks' scores says how much that costs (cluster-robust variance, White 1984).
+    Edges faster than the samples are known only to within the phases that no sample has seen.
     """
     blocks = int(min(_BLOCKS, series.span * fit.frequency))
+    unresolved = 0.4 * fit.longest_gap / series.span if fit.unresolved > 4 * fit.amplitude_error else 0.0
     if blocks < 8:
-        return fit
+        return dataclasses.replace(fit, frequency_error=float(np.hypot(fit.frequency_error, unresolved)))
     table = fit.table(_BINS)
     number = np.arange(fit.amplitudes.size + 1)
     slope = _evaluate(np.concatenate([[0j], 0.5 * fit.amplitudes]) * 2j * np.pi * number, _BINS)
@@ -262,7 +271,8 @@ def _with_robust_error(series: Series, fit: HarmonicFit) -> HarmonicFit:
         block = np.minimum(((times - first) * (blocks / series.span)).astype(np.intp), blocks - 1)
         scores += np.bincount(block, along * (series.values[part] - table[index]), minlength=blocks)
     robust = float(np.sqrt(np.square(scores).sum() * blocks / (blocks - 1))) / max(information, 1e-300)
-    return dataclasses.replace(fit, frequency_error=max(fit.frequency_error, robust))
+    error = float(np.hypot(max(fit.frequency_error, robust), unresolved))
+    return dataclasses.replace(fit, frequency_error=error)
 
 
 def _worth_it(before: HarmonicFit, after: HarmonicFit) -> bool:
