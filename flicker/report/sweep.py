@@ -46,15 +46,29 @@ def sweep_words(points: Sequence[Point], errors: Sequence[tuple[str, str]], *, w
     str
         A headline, then a table; of very many captures the worst ones only.
     """
-    lines = [_headline(points, errors), ""]
+    lines = [_headline(points, errors)]
     shown = list(points)
     if len(shown) > _MOST_ROWS:
         shown = sorted(points, key=weight)[:_MOST_ROWS]
         lines += [f"the {_MOST_ROWS} worst of {len(points)}; --csv writes them all"]
     if shown:
-        lines += _table(shown, width)
-    lines += [f"  not read: {Path(path).name}: {reason}" for path, reason in errors]
+        lines += ["", *_table(shown, width), *_reasons(shown, width)]
+    for path, reason in errors:
+        lines += wrap(f"not read: {Path(path).name}: {reason}", width, "  ", 2)
     return "\n".join(lines)
+
+
+def _reasons(points: Sequence[Point], width: int) -> list[str]:
+    """Say why captures are undecided, each reason once with all that it holds for."""
+    reasons: dict[str, list[str]] = {}
+    for point in points:
+        if point.verdict == "undecided" and point.reason:
+            reasons.setdefault(f"{point.limit}: {point.reason}", []).append(Path(point.capture).name)
+    lines = [""] if reasons else []
+    for reason, names in reasons.items():
+        more = f" and {len(names) - 3} more" if len(names) > 3 else ""
+        lines += wrap(f"undecided: {', '.join(names[:3])}{more}: {reason}", width, "  ", 2)
+    return lines
 
 
 def _headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -> str:
@@ -69,26 +83,29 @@ def _headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -> str
 
 
 def _table(points: Sequence[Point], width: int) -> list[str]:
-    several = len({point.channel for point in points}) > 1
+    channels = Counter(point.capture for point in points)
+    limits = len({point.limit for point in points}) > 1
     units = len({point.unit for point in points}) > 1
     head = [
         *(["unit"] if units else []),
         *(["level"] if any(point.level is not None for point in points) else []),
         "capture",
-        *("frequency", "flicker", "risk region", "verdict", "decided by", "margin"),
+        *("frequency", "flicker"),
+        *(["verdict", "decided by"] if limits else ["risk region", "verdict"]),
+        "margin",
     ]
     rows = []
     for point in points:
-        name = Path(point.capture).name + (f", {point.channel}" if several else "")
+        name = Path(point.capture).name + (f", {point.channel}" if channels[point.capture] > 1 else "")
         row = [
             *([point.unit] if units else []),
             *([_amount(point.level, "%")] if "level" in head else []),
             name,
             _amount(point.frequency, "Hz"),
             _amount(point.depth, "%", 3),
-            REGION_WORDS[point.region] if point.region else "not known",
+            *([] if limits else [REGION_WORDS[point.region] if point.region else "not known"]),
             OUTCOME_WORDS[point.verdict],
-            point.limit,
+            *([point.limit] if limits else []),
             "" if point.margin is None else f"{point.margin:+.0f} %",
         ]
         rows.append(row)

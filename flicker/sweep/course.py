@@ -31,6 +31,7 @@ class Point:
     verdict: Outcome
     margin: float | None  # smallest over the limits, of those that decide the verdict [%]
     limit: str  # the limit of that margin
+    reason: str = ""  # why its verdict is not plain
 
     @property
     def peak(self) -> float | None:
@@ -59,6 +60,7 @@ class Point:
             "verdict": self.verdict,
             "margin_percent": self.margin,
             "limit": self.limit or None,
+            "reason": self.reason,
         }
 
 
@@ -73,7 +75,7 @@ def points_of(capture: Mapping[str, Any]) -> tuple[Point, ...]:
 def _point(path: str, unit: str, level: float | None, channel: Mapping[str, Any]) -> Point:
     measures, region = channel["measures"], channel["risk_region"]
     families = channel["families"]
-    verdict, margin, limit = _deciding(channel["verdicts"])
+    verdict, margin, limit, reason = _deciding(channel["verdicts"])
     return Point(
         path,
         channel["name"],
@@ -87,20 +89,21 @@ def _point(path: str, unit: str, level: float | None, channel: Mapping[str, Any]
         verdict,
         margin,
         limit,
+        reason,
     )
 
 
-def _deciding(verdicts: Sequence[Mapping[str, Any]]) -> tuple[Outcome, float | None, str]:
-    """Outcome, margin and limit of the verdict that decides: the worst outcome, then the smallest margin."""
+def _deciding(verdicts: Sequence[Mapping[str, Any]]) -> tuple[Outcome, float | None, str, str]:
+    """Outcome, margin, limit and reason of the verdict that decides: the worst outcome, then the smallest margin."""
     if not verdicts:
-        return "not-applicable", None, ""
+        return "not-applicable", None, "", ""
 
     def weight(verdict: Mapping[str, Any]) -> tuple[int, float]:
         margin = verdict["margin_percent"]
         return OUTCOMES.index(verdict["verdict"]), math.inf if margin is None else margin
 
     worst = min(verdicts, key=weight)
-    return worst["verdict"], worst["margin_percent"], worst["limit"]
+    return worst["verdict"], worst["margin_percent"], worst["limit"], worst["reason"]
 
 
 @dataclass(frozen=True, slots=True)

@@ -87,7 +87,7 @@ def test_of_very_many_captures_the_worst_are_shown():
     ]
     lines = sweep_words(points, [("torn.csv", "torn.csv: is empty")]).splitlines()
     assert lines[0] == "FAIL: of 100 captures, 1 breaks a limit, 99 keep every limit, 1 more could not be read"
-    assert "the 60 worst of 100" in lines[2]
+    assert "the 60 worst of 100" in lines[1]
     assert "77.csv" in lines[4]
     assert lines[-1] == "  not read: torn.csv: torn.csv: is empty"
 

@@ -99,10 +99,10 @@ def test_a_capture_that_was_not_read_gives_no_point():
 
 def test_the_limit_that_decides_is_the_worst_one():
     verdicts = [
-        {"verdict": "pass", "margin_percent": 2.0, "limit": "a"},
-        {"verdict": "fail", "margin_percent": -5.0, "limit": "b"},
-        {"verdict": "fail", "margin_percent": -9.0, "limit": "c"},
-        {"verdict": "undecided", "margin_percent": None, "limit": "d"},
+        {"verdict": "pass", "margin_percent": 2.0, "limit": "a", "reason": ""},
+        {"verdict": "fail", "margin_percent": -5.0, "limit": "b", "reason": ""},
+        {"verdict": "fail", "margin_percent": -9.0, "limit": "c", "reason": ""},
+        {"verdict": "undecided", "margin_percent": None, "limit": "d", "reason": "too short"},
     ]
     channel = {
         "name": "light",
