@@ -10,7 +10,7 @@ from flicker.limits import OUTCOMES
 from flicker.report.answer import REGION_WORDS
 from flicker.report.figures import quantity
 from flicker.report.typesetting import wrap
-from flicker.report.verdicts import OUTCOME_WORDS
+from flicker.report.verdicts import OUTCOME_WORDS, margin_in_words
 from flicker.sweep.course import Change, Course, Point, weight
 
 _MOST_ROWS = 60
@@ -106,7 +106,7 @@ def _table(points: Sequence[Point], width: int) -> list[str]:
             *([] if limits else [REGION_WORDS[point.region] if point.region else "not known"]),
             OUTCOME_WORDS[point.verdict],
             *([point.limit] if limits else []),
-            "" if point.margin is None else f"{point.margin:+.0f} %",
+            margin_in_words(point.margin),
         ]
         rows.append(row)
     wide = [max(len(row[column]) for row in (head, *rows)) for column in range(len(head))]

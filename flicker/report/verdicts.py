@@ -91,7 +91,13 @@ def _all(count: int) -> str:
 def _table(verdicts: Sequence[Verdict], width: int) -> list[str]:
     head = ("verdict", "limit", "value (95 % interval)", "bound", "margin")
     rows = [
-        (OUTCOME_WORDS[verdict.verdict], verdict.limit.id, value_words(verdict), bound_words(verdict), _margin(verdict))
+        (
+            OUTCOME_WORDS[verdict.verdict],
+            verdict.limit.id,
+            value_words(verdict),
+            bound_words(verdict),
+            margin_in_words(verdict.margin),
+        )
         for verdict in verdicts
     ]
     wide = [max(len(row[column]) for row in (head, *rows)) for column in range(len(head))]
@@ -127,14 +133,13 @@ def bound_words(verdict: Verdict) -> str:
     return f"{'<' if verdict.limit.strict else '≤'} {quantity(verdict.bound, verdict.limit.unit)}"
 
 
-def _margin(verdict: Verdict) -> str:
-    return (
-        ""
-        if verdict.margin is None
-        else f"{verdict.margin:+.0f} %"
-        if abs(verdict.margin) >= 10
-        else f"{verdict.margin:+.1f} %"
-    )
+def margin_in_words(margin: float | None) -> str:
+    """Say how much room is left in percent of the bound, or of very much too much how many times the bound it is."""
+    if margin is None:
+        return ""
+    if margin < -999.5:
+        return f"{1.0 - margin / 100.0:.0f} × bound"
+    return f"{margin:+.{0 if abs(margin) >= 10 else 1}f} %"
 
 
 # ---- the limits themselves ---------------------------------------------------------------------------------------
