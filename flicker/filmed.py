@@ -10,9 +10,10 @@ from typing import Any
 from flicker import __version__
 from flicker.camera import Camera
 from flicker.camera.line_time import LineTime, measure_line_time
+from flicker.camera.screen import ScreenMap, map_screen
 from flicker.camera.stripes import ChannelStripes, Stripes, read_stripes
 from flicker.errors import InputError
-from flicker.footage import ReadDirection
+from flicker.footage import Footage, ReadDirection
 from flicker.light import Light
 from flicker.limits import risk_region
 from flicker.readers.video import Region, read_footage
@@ -137,9 +138,6 @@ def read_back(
     NotMeasurable
         If no moving bands are found.
     """
-    given = [value for value in (line_time, line_rate, readout_time) if value is not None]
-    if len(given) > 1:
-        raise InputError(f"give one of line time, line rate and readout time, not {len(given)}")
     footage = read_footage(
         path,
         read_direction=read_direction or "down",
@@ -149,10 +147,7 @@ def read_back(
         start=start or 0.0,
         duration=duration,
     )
-    if line_rate is not None:
-        line_time = 1.0 / line_rate
-    elif readout_time is not None:
-        line_time = readout_time / footage.lines_of_frame
+    line_time = _line_time(footage, line_time, line_rate, readout_time)
     stripes = read_stripes(footage, line_time=line_time, exposure=exposure, clock=1e-6 * (clock_ppm or 0.0))
     return FilmReport(str(path), stripes)
 
@@ -218,3 +213,63 @@ def find_line_time(
             )
             views.append(turned)
     return measure_line_time(views, light_frequency, uncertainty=1e-6 * light_ppm)
+
+
+def _line_time(
+    footage: Footage, line_time: float | None, line_rate: float | None, readout_time: float | None
+) -> float | None:
+    given = [value for value in (line_time, line_rate, readout_time) if value is not None]
+    if len(given) > 1:
+        raise InputError(f"give one of line time, line rate and readout time, not {len(given)}")
+    if line_rate is not None:
+        return 1.0 / line_rate
+    return line_time if readout_time is None else readout_time / footage.lines_of_frame
+
+
+def map_video(
+    path: str | Path,
+    *,
+    rows: int = 12,
+    columns: int = 16,
+    line_time: float | None = None,
+    line_rate: float | None = None,
+    readout_time: float | None = None,
+    exposure: float | None = None,
+    read_direction: ReadDirection | None = None,
+    frame_rate: float | None = None,
+    region: Region | None = None,
+    transfer: str | None = None,
+    start: float | None = None,
+    duration: float | None = None,
+) -> ScreenMap:
+    """
+    Map the flicker over the picture of a video.
+
+    Parameters
+    ----------
+    path : str or Path
+        The video.
+    rows, columns : int
+        Cells of the grid, in the picture as stored.
+    line_time, line_rate, readout_time, exposure, read_direction, frame_rate, region, transfer, start, duration
+        See `read_back`.
+
+    Returns
+    -------
+    ScreenMap
+        Grids and zones.
+    """
+    sideways = read_direction in ("left", "right")
+    footage = read_footage(
+        path,
+        read_direction=read_direction or "down",
+        blocks=rows if sideways else columns,
+        colour=False,
+        frame_rate=frame_rate,
+        region=region,
+        transfer=transfer,
+        start=start or 0.0,
+        duration=duration,
+    )
+    time = _line_time(footage, line_time, line_rate, readout_time)
+    return map_screen(footage, columns if sideways else rows, line_time=time, exposure=exposure)

@@ -16,6 +16,8 @@ from flicker.signal.stripes_figures import Samples, figures_of
 from flicker.signal.stripes_fit import STANDING, Rows, StripeFit, fit_stripes, fit_wave, standing_of
 from flicker.signal.stripes_search import Deviation, search_frequency, search_turns
 from flicker.signal.stripes_shape import (
+    CHROMA_FLOOR,
+    FLOOR,
     FreeShape,
     Harmonics,
     PulseShape,
@@ -29,6 +31,7 @@ from flicker.trace import FloatArray
 
 _FAINTEST = 1e-3  # share of the variation that a tone must explain
 _FRAMES_USED = 120
+_STAMPS = 2e-7  # relative standard uncertainty of a frequency that rests on rounded time stamps
 _RATES = (24.0, 25.0, 30.0, 48.0, 50.0, 60.0)
 _LUMA = (0.2126, 0.7152, 0.0722)  # ITU-R BT.709
 _LISTED = 60  # lines of the spectrum that a channel lists
@@ -99,7 +102,8 @@ def read_stripes(
     bands = find_bands(footage, line_time)
     seen = {name: fit_wave(_rows(footage, name), bands) for name in footage.channels}
     strongest = max(float(np.abs(fit.amplitudes).max()) for fit in seen.values())
-    harmonics = {name: Harmonics.of(fit, strongest) for name, fit in seen.items()}
+    floors = {"red": CHROMA_FLOOR, "blue": CHROMA_FLOOR}
+    harmonics = {name: Harmonics.of(fit, strongest, floors.get(name, FLOOR)) for name, fit in seen.items()}
     frequency, fitted, alternatives, notes = _clocked(footage, bands, line_time, clock)
     told = exposure is not None
     others: list[PulseShape] = []
@@ -233,7 +237,7 @@ def _clocked(
         )
         unknown = Measure.missing("Hz", reason)
         return unknown, Measure.missing("s", reason), tuple(pairs), ()
-    error = math.hypot(bands.frequency_error, clock * bands.frequency)
+    error = math.hypot(bands.frequency_error, clock * bands.frequency, _STAMPS * bands.frequency)
     half = 1.96 * error
     method = f"phase of {len(bands.harmonics)} harmonics over {footage.frames} frames"
     method += "" if clock else "; the camera's clock taken as exact"
@@ -277,7 +281,7 @@ def _shapes(harmonics: dict[str, Harmonics], exposure: float) -> dict[str, Pulse
         if name not in (fastest, "all") and is_rectangle(own[fastest]):
             slow = fit_decay(one, own[fastest])
             lag = 2 * math.pi * one.frequency * slow.decay
-            if lag > 0.2 and slow.decay > 4 * slow.decay_error and slow.chi_square < max(1.5 * own[name].chi_square, 1.5):
+            if lag > 0.2 and slow.decay > 2 * slow.decay_error and slow.chi_square < max(1.5 * own[name].chi_square, 2.5):
                 shape = slow
         if is_rectangle(shape):
             shapes[name] = shape

@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterable
 
     from flicker.camera.line_time import LineTime
+    from flicker.camera.screen import ScreenMap
     from flicker.camera.stripes import ChannelStripes
     from flicker.filmed import FilmReport
     from flicker.results import Measure, Note
@@ -148,6 +149,46 @@ def line_time_words(found: LineTime, path: str, written: str | None, *, width: i
     lines += [f"  {'bands':<12}  {bands:.3g} a frame, contrast {contrast}", ""]
     advice = f"written to {written}" if written else "keep it with --camera-out FILE.toml"
     lines += _wrapped(f"{advice}; it holds for this mode of the camera only", width, "  ", "  ")
+    return "\n".join([*lines, *notes_words(found.notes, width)])
+
+
+def map_words(found: ScreenMap, path: str, *, width: int = 100) -> str:
+    """
+    Put a map into words: what the zones do together, then one line a zone.
+
+    Parameters
+    ----------
+    found : ScreenMap
+        From `flicker.filmed.map_video`.
+    path : str
+        The video.
+    width : int
+        Columns that a line may fill.
+
+    Returns
+    -------
+    str
+        Lines without a line break at the end.
+    """
+    rows, columns = found.mean.shape
+    dark = int(found.dark.sum())
+    footage = found.footage
+    lines = [
+        Path(path).name,
+        f"{footage.frames} frames at {quantity(footage.frame_rate, 'Hz', 5)}, a grid of {rows} x {columns} cells",
+        "",
+        f"  {len(found.zones)} zones that flicker ({found.kind}); {dark} cells are dark",
+    ]
+    if found.zones:
+        lines += ["", "  zone  cells  frequency     percent flicker  duty cycle  phase (cycles)  level"]
+    for number, zone in enumerate(found.zones[:40], 1):
+        frequency = "-" if zone.frequency is None else quantity(zone.frequency, "Hz", 6)
+        duty = "-" if zone.duty is None else f"{zone.duty:.3f}"
+        phase = "-" if zone.phase is None else f"{zone.phase:+.3f}"
+        depth = quantity(zone.percent_flicker, "%", 4)
+        lines.append(
+            f"  {number:<4}  {len(zone.cells):<5}  {frequency:<12}  {depth:<15}  {duty:<10}  {phase:<14}  {zone.mean:.3f}"
+        )
     return "\n".join([*lines, *notes_words(found.notes, width)])
 
 

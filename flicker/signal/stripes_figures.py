@@ -42,6 +42,12 @@ class Samples:
             return cls(np.array(waves), np.full(count + 1, np.nan), method, shape.blind_bound)
         best = np.array([shape.duty, shape.share, shape.middle])
         draws = rng.multivariate_normal(best, np.array(shape.covariance), count, method="svd") if count else np.empty((0, 3))
+        if count and len(shape.duties) > 3:  # the best one has far neighbours: draw among all
+            chances = np.array([chance for *_, chance in shape.duties])
+            chosen = rng.choice(len(chances), count, p=chances / chances.sum())
+            offset = draws[:, 1] - shape.share if shape.covariance[1][1] < 0.01 else 0.0
+            draws[:, 0] = np.array(shape.duties)[chosen, 0]
+            draws[:, 1] = np.array(shape.duties)[chosen, 1] + offset
         draws = np.vstack([best, draws])
         draws[:, 0] = np.clip(draws[:, 0], 2e-3, 0.998)
         draws[:, 1] = np.clip(draws[:, 1], 1e-6, 1.0)

@@ -170,9 +170,11 @@ class _Work:
         )
         gram[1, 0] = gram[0, 1]
         pulls = np.stack([(pull * along).sum(axis=1), (pull * across).sum(axis=1)])  # of each frame
-        inverse = np.linalg.inv(gram)
+        inverse = np.linalg.pinv(gram)
         step = inverse @ pulls.sum(axis=1)
-        spread = inverse @ ((pulls * len(along) / max(len(along) - 1, 1)) @ pulls.T) @ inverse
+        # a codec carries errors on from frame to frame: whole runs of frames are what scatters
+        runs = np.add.reduceat(pulls, np.unique(np.linspace(0, pulls.shape[1], 11)[:-1].astype(int)), axis=1)
+        spread = inverse @ (runs @ runs.T) @ inverse * 1.6
         return float(step[0]), float(step[1]), float(np.sqrt(spread[0, 0])), float(np.sqrt(spread[1, 1]))
 
     def finish(self) -> StripeFit:
@@ -187,7 +189,7 @@ class _Work:
         noise = float(np.sqrt((weights * left**2).mean()))
         least = noise * np.sqrt(2.0 / left.size)
         # groups are few: an error is held against those of the harmonics around it
-        errors = np.sqrt(np.maximum(spread, scipy_median(spread)) + least**2 * 0.25) / np.sqrt(self.free)
+        errors = np.sqrt(np.maximum(spread, _running_median(spread)) + least**2 * 0.25) / np.sqrt(self.free)
         wave = evaluate(self.harmonics, self.amplitudes, _BINS)
         standing = standing_of(harmonic_numbers(self.turns, left.size), self.frequency, self.rows.times)
         return StripeFit(
@@ -206,7 +208,7 @@ class _Work:
         )
 
 
-def scipy_median(spread: FloatArray) -> FloatArray:
+def _running_median(spread: FloatArray) -> FloatArray:
     """Running median over seven harmonics, shape (k,)."""
     from scipy.ndimage import median_filter
 
@@ -264,3 +266,39 @@ def fit_wave(rows: Rows, known: StripeFit, *, rounds: int = 5) -> StripeFit:
     for _ in range(rounds):
         work.update(clock=False)
     return dataclasses.replace(work.finish(), frequency_error=known.frequency_error, turns_error=known.turns_error)
+
+
+def fit_at(rows: Rows, frequency: float, turns: float, *, frame_rate: float | None = None, rounds: int = 3) -> StripeFit:
+    """
+    Fit the wave of a few lines at a known frequency.
+
+    Parameters
+    ----------
+    rows : Rows
+        Lines at their true times.
+    frequency, turns : float
+        Of the light. [Hz], [cycles a line]
+    frame_rate : float, optional
+        Where each frame counts as one sample: harmonics that meet in the alias are left out. [Hz]
+    rounds : int
+        Rounds of alternation.
+
+    Returns
+    -------
+    StripeFit
+        See `fit_stripes`.
+    """
+    work = _Work.begin(rows, frequency, turns, most=24)
+    if frame_rate is not None:
+        apart = 1.5 / float(rows.times[-1] - rows.times[0]) / frame_rate
+        kept: list[int] = []
+        taken: list[float] = []
+        for place, number in enumerate(work.harmonics):
+            alias = abs((number * frequency / frame_rate + 0.5) % 1.0 - 0.5)
+            if apart < alias < 0.5 - apart and all(abs(alias - other) > apart for other in taken):
+                kept.append(place)
+                taken.append(alias)
+        work.harmonics, work.amplitudes, work.free = work.harmonics[kept], work.amplitudes[kept], work.free[kept]
+    for _ in range(rounds):
+        work.update(clock=False)
+    return work.finish()

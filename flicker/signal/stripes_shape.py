@@ -15,6 +15,8 @@ from flicker.trace import FloatArray
 
 BLIND = 0.08  # what the exposure leaves of a harmonic: below this it is blind
 FLOOR = 0.003  # of the strongest harmonic: what compression does to every other one, whatever the noise
+CHROMA_FLOOR = 0.008  # the same for red and blue, which video codes more coarsely
+_LEAST = 4e-4  # of the mean: the same for faint bands
 _DUTIES = np.concatenate([np.geomspace(0.004, 0.1, 24, endpoint=False), np.linspace(0.1, 0.9, 41), 1 - np.geomspace(0.1, 0.01, 12)])
 _PHASES = 1024
 _MUCH_WORSE = 4.0  # reduced chi-square above which no rectangle is believed
@@ -31,9 +33,10 @@ class Harmonics:
     frequency: float  # [Hz]
 
     @classmethod
-    def of(cls, fit: StripeFit, strongest: float) -> Harmonics:
+    def of(cls, fit: StripeFit, strongest: float, floor: float = FLOOR) -> Harmonics:
         """Take them from a fit; `strongest` is the largest amplitude of any channel."""
-        return cls(fit.harmonics, fit.amplitudes, fit.errors**2 + (FLOOR * strongest) ** 2, fit.frequency)
+        variances = fit.errors**2 + (floor * strongest) ** 2 + _LEAST**2
+        return cls(fit.harmonics, fit.amplitudes, variances, fit.frequency)
 
     def left_by(self, exposure: float) -> FloatArray:
         """What an exposure [s] leaves of each harmonic, signed, shape (k,)."""
@@ -57,6 +60,7 @@ class PulseShape:
     exposure: float  # [s]
     decay: float = 0.0  # [s]
     decay_error: float = 0.0
+    duties: tuple[tuple[float, float, float], ...] = ()  # duty, share and probability of all that fit
 
     @property
     def low_level(self) -> float:
@@ -87,6 +91,11 @@ def _coarse(seen: Harmonics, exposure: float) -> tuple[FloatArray, FloatArray, F
     best = match[np.arange(_DUTIES.size), phase]
     share = np.clip(best / np.maximum(strength, 1e-30), 0.0, 1.0)
     return share, phase, strength * share**2 - 2 * best * share
+
+
+def pulse_loss(seen: Harmonics, exposure: float) -> float:
+    """Chi-square of the best pulse less that of no light, on a coarse grid."""
+    return float(_coarse(seen, exposure)[2].min())
 
 
 def fit_pulse(seen: Harmonics, exposure: float) -> PulseShape:
@@ -134,7 +143,17 @@ def fit_pulse(seen: Harmonics, exposure: float) -> PulseShape:
         tuple(tuple(float(c) for c in row) for row in covariance),
         reduced,
         exposure,
+        duties=_all_that_fit(seen, exposure, max(reduced, 0.25)),
     )
+
+
+def _all_that_fit(seen: Harmonics, exposure: float, scale: float) -> tuple[tuple[float, float, float], ...]:
+    """Duties and shares that fit nearly as well as the best: few harmonics leave one to trade against the other."""
+    share, _, loss = _coarse(seen, exposure)
+    probability = np.exp(-0.5 * (loss - loss.min()) / scale) * np.gradient(_DUTIES)
+    probability /= probability.sum()
+    kept = np.flatnonzero(probability > 1e-3)
+    return tuple((float(_DUTIES[k]), float(share[k]), float(probability[k])) for k in kept)
 
 
 def fit_exposure(seen: Harmonics, longest: float) -> tuple[PulseShape, list[PulseShape]]:
@@ -207,13 +226,48 @@ def fit_decay(seen: Harmonics, fastest: PulseShape) -> PulseShape:
     decay = math.exp(float(found.x[0]))
     error = decay * math.sqrt(max(reduced, 1.0) / max(steep, 1e-30))
     return PulseShape(
-        fastest.duty, fastest.share, fastest.middle, fastest.covariance, reduced, fastest.exposure, decay, error
+        fastest.duty,
+        fastest.share,
+        fastest.middle,
+        fastest.covariance,
+        reduced,
+        fastest.exposure,
+        decay,
+        error,
+        fastest.duties,
     )
 
 
 def is_rectangle(fit: PulseShape) -> bool:
     """Whether the lines speak for the pulse."""
     return fit.chi_square < _MUCH_WORSE and fit.share > 0
+
+
+def duty_of(seen: Harmonics, exposure: float) -> tuple[float, float] | None:
+    """
+    Fit the duty cycle of a pulse that goes out, which even one harmonic tells.
+
+    Parameters
+    ----------
+    seen : Harmonics
+        Of one channel.
+    exposure : float
+        [s]
+
+    Returns
+    -------
+    duty, middle : float
+        And the phase of the pulse's middle [cycles]; None where the light does not go out.
+    """
+    left = seen.left_by(exposure)
+    middle = -float(np.angle(seen.amplitudes[0] * np.sign(left[0]))) / (2 * np.pi)
+    duties = np.linspace(0.005, 0.995, 991)
+    turned = np.exp(-2j * np.pi * seen.numbers * middle)
+    model = 2.0 * np.sinc(np.outer(duties, seen.numbers)) * left * turned
+    losses = (np.abs(model - seen.amplitudes) ** 2 / seen.variances).sum(axis=1)
+    best = int(losses.argmin())
+    signal = float((np.abs(seen.amplitudes) ** 2 / seen.variances).sum())
+    return (float(duties[best]), middle) if losses[best] < max(4.0 * 2 * seen.numbers.size, 2e-3 * signal) else None
 
 
 @dataclass(frozen=True, slots=True, eq=False)
