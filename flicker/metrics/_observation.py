@@ -70,7 +70,7 @@ class Observation:
     def family_extremes(self) -> tuple[Extremes, ...]:
         """Largest and smallest level of each family's cycle."""
         pairs = zip(self.cycles, self.search.families, strict=True)
-        return tuple(extremes(cycle, fit.amplitudes.size) for cycle, fit in pairs)
+        return tuple(extremes(cycle, fit) for cycle, fit in pairs)
 
     @cached_property
     def fit(self) -> HarmonicFit:

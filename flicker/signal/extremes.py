@@ -10,6 +10,7 @@ import scipy.fft
 
 from flicker.light import ComplexArray
 from flicker.signal.cycle import Cycle
+from flicker.signal.harmonics import HarmonicFit
 from flicker.signal.intervals import student_quantile
 from flicker.trace import FloatArray
 
@@ -37,7 +38,7 @@ class Extremes:
         return value - half, value + half
 
 
-def extremes(cycle: Cycle, harmonics: int) -> Extremes:
+def extremes(cycle: Cycle, fit: HarmonicFit) -> Extremes:
     """
     Read the largest and the smallest level of a mean cycle.
 
@@ -45,8 +46,8 @@ def extremes(cycle: Cycle, harmonics: int) -> Extremes:
     ----------
     cycle : Cycle
         Light above dark.
-    harmonics : int
-        How many harmonics rise above the noise; few of them describe the cycle whole.
+    fit : HarmonicFit
+        Its harmonics as far as they rise above the noise; few of them describe the cycle whole.
 
     Returns
     -------
@@ -68,8 +69,8 @@ def extremes(cycle: Cycle, harmonics: int) -> Extremes:
 
     The interval comes from the spread between groups of neighbouring cycles.
     """
-    if harmonics <= _FEW_HARMONICS and cycle.size > 4 * harmonics:
-        return _of_few_harmonics(cycle, harmonics)
+    if fit.amplitudes.size <= _FEW_HARMONICS and cycle.size > 2 * fit.amplitudes.size:
+        return _of_few_harmonics(cycle, fit)
     halves = cycle.part(slice(0, None, 2)), cycle.part(slice(1, None, 2))
     places = [_places(half) for half in halves]
     values, doubts, scores = [], np.zeros(2), np.zeros((2, cycle.groups))
@@ -86,34 +87,36 @@ def extremes(cycle: Cycle, harmonics: int) -> Extremes:
     return Extremes(values[0], values[1], correction * (scores @ scores.T) + systematic, freedom)
 
 
-def _of_few_harmonics(cycle: Cycle, harmonics: int) -> Extremes:
-    number = np.arange(1, harmonics + 1)
-    loss = np.sinc(number / cycle.size)  # of a harmonic, by the width of the bins
-    coefficients = scipy.fft.rfft(cycle.levels)[1 : harmonics + 1] * (2 / cycle.size) / loss
+def _of_few_harmonics(cycle: Cycle, fit: HarmonicFit) -> Extremes:
+    number = np.arange(1, fit.amplitudes.size + 1)
+    bins = cycle.phase + cycle.first_phase + fit.centre * fit.frequency  # in the phase of the fit
 
     def weights(phase: float, derivative: int) -> FloatArray:
-        turns = (
-            np.exp(2j * np.pi * np.outer(number, phase - cycle.phase)) * (2j * np.pi * number[:, None]) ** derivative
-        )
+        turns = np.exp(2j * np.pi * np.outer(number, phase - bins)) * (2j * np.pi * number[:, None]) ** derivative
         steady = 1.0 if derivative == 0 else 0.0
-        return np.asarray((steady + 2 * (turns / loss[:, None]).real.sum(axis=0)) / cycle.size)
+        return np.asarray((steady + 2 * turns.real.sum(axis=0)) / cycle.size)
 
-    def at(phase: FloatArray) -> FloatArray:
-        return np.asarray((coefficients @ np.exp(2j * np.pi * np.outer(number, phase))).real)
+    def at(phase: FloatArray | float, derivative: int = 0) -> FloatArray:
+        turned = fit.amplitudes * (2j * np.pi * number) ** derivative
+        return np.asarray((turned @ np.exp(2j * np.pi * np.multiply.outer(number, phase))).real)
 
-    fine = np.arange(64 * harmonics) / (64 * harmonics)
+    step = 1 / (64 * number.size)
+    fine = np.arange(0, 1, step)
     correction = cycle.groups / max(cycle.groups - 1, 1)
     values, scores = [], np.zeros((2, cycle.groups))
     for end, sign in enumerate((1.0, -1.0)):
-        near = fine[int(np.argmax(sign * at(fine)))] + np.linspace(-1, 1, 129) / (64 * harmonics)
+        near = fine[int(np.argmax(sign * at(fine)))] + np.linspace(-step, step, 129)
         top = float(near[int(np.argmax(sign * at(near)))])
-        level, slope = _Reading(cycle, (weights(top, 0),) * 2), _Reading(cycle, (weights(top, 1),) * 2)
-        curvature = float((coefficients @ (np.exp(2j * np.pi * number * top) * (2j * np.pi * number) ** 2)).real)
-        scores[end] = level.scores
-        error = float(np.sqrt(correction * (level.scores @ level.scores)))
-        excess = 0.5 * correction * float(slope.scores @ slope.scores) / max(-sign * curvature, 1e-300)
-        values.append(level.level - sign * min(excess, error))
+        scores[end], slopes = (_scores(cycle, weights(top, derivative)) for derivative in (0, 1))
+        error = float(np.sqrt(correction * (scores[end] @ scores[end])))
+        excess = 0.5 * correction * float(slopes @ slopes) / max(-sign * float(at(top, 2)), 1e-300)
+        values.append(fit.mean + float(at(top)) - sign * min(excess, error))
     return Extremes(values[0], values[1], correction * (scores @ scores.T), max(cycle.groups - 1, 1))
+
+
+def _scores(cycle: Cycle, weights: FloatArray) -> FloatArray:
+    """What each group of cycles adds to the deviation of a weighted level, shape (groups,)."""
+    return np.asarray((cycle.sums - cycle.counts * cycle.levels) @ (weights / cycle.counts.sum(axis=0)))
 
 
 class _Reading:
@@ -121,10 +124,9 @@ class _Reading:
 
     def __init__(self, cycle: Cycle, weights: tuple[FloatArray, FloatArray]) -> None:
         chosen, narrower = weights
-        counts, levels = cycle.counts.sum(axis=0), cycle.levels
-        self.level = float(chosen @ levels)
-        self.doubt = abs(self.level - float(narrower @ levels))
-        self.scores = (cycle.sums - cycle.counts * levels) @ (chosen / counts)
+        self.level = float(chosen @ cycle.levels)
+        self.doubt = abs(self.level - float(narrower @ cycle.levels))
+        self.scores = _scores(cycle, chosen)
 
 
 def _places(half: Cycle) -> dict[str, tuple[FloatArray, FloatArray]]:

@@ -15,6 +15,7 @@ from flicker.trace import FloatArray
 _MOST_FAMILIES = 6
 _MOST_DIVISOR = 8
 _FEWEST_CYCLES = 1.5
+_FEWEST_CYCLES_BELOW = 3.0  # of a fundamental below the strongest line: fewer could be drift
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -114,7 +115,7 @@ def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicF
     """Where the strongest line is a harmonic, go down to the fundamental that fills the places between."""
     for divisor in (2, 3, 4, 5):
         fundamental = fit.frequency / divisor
-        if fundamental < _FEWEST_CYCLES * now.resolution:
+        if fundamental < _FEWEST_CYCLES_BELOW * now.resolution:
             break
         places = [n for n in range(1, 2 * divisor) if n % divisor]
         places = [n for n in places if n * fundamental < series.sample_rate / 2]
@@ -140,6 +141,8 @@ def _merge_related(series: Series, families: list[HarmonicFit]) -> list[Harmonic
         if ratio.numerator == 0 or ratio.numerator > _MOST_DIVISOR:
             continue
         fundamental = other.frequency / ratio.denominator
+        if fundamental * series.span < _FEWEST_CYCLES_BELOW:
+            continue
         error = np.hypot(newest.frequency_error / ratio.numerator, other.frequency_error / ratio.denominator)
         if abs(newest.frequency / ratio.numerator - fundamental) > 4 * error:
             continue
