@@ -82,7 +82,7 @@ def decay_time(cycle: Cycle) -> Measure:
     short piece of its tail only, and the interval is wide then. The sensor's own pole looks the same: its time is
     0.16 over its bandwidth. Times to 10 %, which some data sheets call persistence, are 2.303 times as long.
     """
-    tail = decay_tail(cycle.levels, float(np.median(cycle.standard_error)))
+    tail = decay_tail(cycle.levels, float(np.quantile(cycle.standard_error, 0.5)))
     if tail is None:
         raise NotMeasurable("nothing falls exponentially in this cycle: a decay time needs light that is switched off")
     value, half = cycle.interval(tail.time_of)
@@ -98,7 +98,7 @@ def _edge(cycle: Cycle, sign: int) -> Measure:
     share = between(levels)
     if share > _MOST_BETWEEN:
         raise NotMeasurable(f"the light has no edges: it spends {100 * share:.0f} % of the cycle between its two ends")
-    if float(np.median(cycle.standard_error)) > _NOISIEST * float(np.ptp(levels)):
+    if float(np.quantile(cycle.standard_error, 0.5)) > _NOISIEST * float(np.ptp(levels)):
         raise NotMeasurable("the mean cycle is too noisy for its edges: record longer, or with more light")
 
     def width(values: FloatArray) -> float:

@@ -191,8 +191,8 @@ def _noise(squares: FloatArray, counts: FloatArray) -> float:
     if not (freedom > 0).any():
         return 0.0
     variances = squares[freedom > 0] / freedom[freedom > 0]
-    typical = float(np.median(freedom[freedom > 0]))
-    return float(np.sqrt(np.median(variances) / (1 - 2 / (9 * typical)) ** 3))
+    typical = float(np.quantile(freedom[freedom > 0], 0.5))
+    return float(np.sqrt(np.quantile(variances, 0.5) / (1 - 2 / (9 * typical)) ** 3))
 
 
 def _edges(levels: FloatArray, squares: FloatArray, counts: FloatArray, noise: float) -> npt.NDArray[np.bool_]:

@@ -31,7 +31,7 @@ class Edge:
 def plateaus(levels: FloatArray) -> tuple[float, float]:
     """Typical level of the lower and the upper end: medians of what lies below and above the middle of the swing."""
     middle = 0.5 * (float(levels.max()) + float(levels.min()))
-    return float(np.median(levels[levels <= middle])), float(np.median(levels[levels >= middle]))
+    return float(np.quantile(levels[levels <= middle], 0.5)), float(np.quantile(levels[levels >= middle], 0.5))
 
 
 def between(levels: FloatArray) -> float:

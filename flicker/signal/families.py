@@ -58,7 +58,7 @@ def find_families(series: Series) -> Search:
     lowest = _FEWEST_CYCLES * first.resolution
     families: list[HarmonicFit] = []
     left, now = series, first
-    floor = float(np.sqrt(np.median(first.noise_power()) * np.log(first.amplitudes.size * 1e3)))
+    floor = float(np.sqrt(np.quantile(first.noise_power(), 0.5) * np.log(first.amplitudes.size * 1e3)))
     while len(families) < _MOST_FAMILIES:
         line = _next_line(now, lowest, series.sample_rate / 2, families)
         if line is None:
@@ -68,7 +68,7 @@ def find_families(series: Series) -> Search:
         families = _merge_related(series, families)
         left = _without(series, families)
         now = spectrum(_longest_run(left), series.sample_rate)
-        floor = float(np.sqrt(np.median(now.noise_power()) * np.log(now.amplitudes.size * 1e3)))
+        floor = float(np.sqrt(np.quantile(now.noise_power(), 0.5) * np.log(now.amplitudes.size * 1e3)))
     if len(families) > 1:
         families = [
             fit_harmonics(_without(series, families[:place] + families[place + 1 :]), fit.frequency)

@@ -38,7 +38,7 @@ class Spectrum:
         power = self.amplitudes**2
         edges = _band_edges(power.size, least=int(128 * self.resolution / self.spacing))
         centres = 0.5 * (edges[:-1] + edges[1:])
-        levels = np.array([np.median(power[a:b]) for a, b in itertools.pairwise(edges)]) / np.log(2)
+        levels = np.array([np.quantile(power[a:b], 0.5) for a, b in itertools.pairwise(edges)]) / np.log(2)
         return np.asarray(np.interp(np.arange(power.size), centres, levels))
 
     def strongest_line(self, above: float, below: float, noise: FloatArray | None = None) -> tuple[float, float] | None:
