@@ -126,7 +126,7 @@ def _tone(view: Footage, frequency: float) -> tuple[float, float] | None:
         off = abs((per_frame - expected + 0.5) % 1.0 - 0.5)
         whole = turns * view.lines_of_frame * view.frame_rate / frequency  # readout over frame time
         least = max(100.0 / (deviation.lines * len(deviation.times)), 1e-3)
-        if off < 2.0 / len(deviation.times) + 3e-3 * frequency / view.frame_rate and 0.02 < whole < 1.1 and power > least:
+        if off < 1.5 / len(deviation.times) + 1e-3 * frequency / view.frame_rate and 0.02 < whole < 1.1 and power > least:
             best = max(best or (0.0, 0.0), (power, turns))
     return best
 

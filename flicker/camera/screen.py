@@ -207,7 +207,7 @@ class _Cells:
         for bin_ in np.unique(chosen[~self.dark]):
             members = (chosen == bin_) & ~self.dark
             found[members] = self._refined(deviation[members], window, bin_ / size * self.footage.frame_rate)
-        clear = np.take_along_axis(power, chosen[..., None], axis=2)[..., 0] > 60 * floor
+        clear = np.take_along_axis(power, chosen[..., None], axis=2)[..., 0] > 25 * floor
         clear &= deviation.std(axis=2) > 1e-3
         return np.where(clear, found, np.nan)
 

@@ -29,7 +29,8 @@ from flicker.signal.stripes_shape import (
 )
 from flicker.trace import FloatArray
 
-_FAINTEST = 1e-3  # share of the variation that a tone must explain
+_FAINTEST = 5e-3  # share of the variation that a tone must explain
+_LOWEST_BAND = 2e-3  # amplitude over the mean below which compression makes bands of its own
 _FRAMES_USED = 120
 _STAMPS = 2e-7  # relative standard uncertainty of a frequency that rests on rounded time stamps
 _RATES = (24.0, 25.0, 30.0, 48.0, 50.0, 60.0)
@@ -156,7 +157,7 @@ def find_bands(footage: Footage, line_time: float | None) -> StripeFit:
         longer = fit_stripes(_rows(footage, "all"), fit.frequency, fit.turns_per_line)
         if longer.noise < 1.5 * fit.noise:
             fit = longer
-    if not (np.abs(fit.amplitudes) > 5 * fit.errors).any():
+    if not (np.abs(fit.amplitudes) > np.maximum(5 * fit.errors, _LOWEST_BAND)).any():
         raise NotMeasurable(_no_bands(lines, footage, line_time))
     return fit
 
@@ -206,7 +207,7 @@ def _no_bands(lines: FloatArray, footage: Footage, line_time: float | None) -> s
             multiple = max(round(about / footage.frame_rate), 1)
             place = f" (about {about:.0f} Hz, perhaps {multiple} times the frame rate = {multiple * footage.frame_rate:.6g} Hz)"
         return (
-            f"bands are there but stand still{place}: they keep step with the frames and cannot be told from the scene; {cure}"
+            f"no band moves; a pattern of lines stands still{place}: bands that keep step with the frames, or the scene; {cure}"
         )
     return (
         "no light was found that changes from line to line and from frame to frame: it is steady, its bands stand still, "
@@ -277,11 +278,13 @@ def _shapes(harmonics: dict[str, Harmonics], exposure: float) -> dict[str, Pulse
     fastest = max(colours, key=lambda name: float(np.abs(harmonics[name].amplitudes[0])))
     shapes: dict[str, PulseShape | FreeShape] = {}
     for name, one in harmonics.items():
+        if name not in ("red", "blue") and not (np.abs(one.amplitudes) > 3 * np.sqrt(one.variances)).any():
+            continue
         shape: PulseShape | FreeShape = own[name]
         if name not in (fastest, "all") and is_rectangle(own[fastest]):
             slow = fit_decay(one, own[fastest])
             lag = 2 * math.pi * one.frequency * slow.decay
-            if lag > 0.2 and slow.decay > 2 * slow.decay_error and slow.chi_square < max(1.5 * own[name].chi_square, 2.5):
+            if lag > 0.2 and slow.decay > 3 * slow.decay_error and slow.chi_square < max(1.5 * own[name].chi_square, 2.5):
                 shape = slow
         if is_rectangle(shape):
             shapes[name] = shape

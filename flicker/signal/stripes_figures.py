@@ -127,7 +127,9 @@ def figures_of(
     others = np.concatenate([one.waves[:1] for one in alike]) if alike else waves[:0]
 
     def measure(unit: str, values: FloatArray, beside: FloatArray, top: float, widen: float = 0.0) -> Measure:
-        low, high = np.quantile(values[1:], [0.025, 0.975])
+        low, early, late, high = np.quantile(values[1:], [0.025, 0.16, 0.84, 0.975])
+        best = float(values[0]) if early <= values[0] <= late else float(np.median(values[1:]))
+        values = np.r_[best, values[1:]]
         low, high = (float(np.min([low, values[0], *beside])), float(np.max([high, values[0], *beside])))
         low, high = max(low * (1 - loose) - widen, 0.0), min(high * (1 + loose) + widen, top)
         return Measure(float(min(values[0], top)), unit, min(low, float(values[0])), high, drawn.method)

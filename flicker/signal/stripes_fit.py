@@ -88,21 +88,29 @@ def harmonic_numbers(turns: float, samples: int, most: int = _MOST_HARMONICS) ->
     return np.arange(1.0, max(1, min(most, carried, samples // 40)) + 1)
 
 
-def _solve(phase_bins: FloatArray, values: FloatArray, weights: FloatArray, harmonics: FloatArray) -> ComplexArray:
-    """Least squares of values (deviation, any mean) on harmonics, all phases in bins; weights as in the sums."""
-    count = np.bincount(phase_bins, weights, minlength=_BINS)
-    total = np.bincount(phase_bins, weights * values, minlength=_BINS)
+def _gram(bins: FloatArray, weights: FloatArray, harmonics: FloatArray) -> ComplexArray:
+    """Normal matrix of harmonics -k..-1, 0, 1..k, shape (2 k + 1, 2 k + 1); phases in bins, known by their middle."""
     highest = int(harmonics[-1]) if harmonics.size else 0
-    turn = np.exp(-1j * np.pi * np.arange(2 * highest + 1) / _BINS)  # bins are known by their middle
-    moments = scipy.fft.rfft(count)[: 2 * highest + 1] * turn
+    count = np.bincount(bins, weights, minlength=_BINS)
+    moments = scipy.fft.rfft(count)[: 2 * highest + 1] * np.exp(-1j * np.pi * np.arange(2 * highest + 1) / _BINS)
     numbers = np.concatenate([-harmonics[::-1], [0.0], harmonics]).astype(int)
     apart = np.subtract.outer(numbers, numbers)
     gram = np.where(apart >= 0, moments[np.abs(apart)], moments[np.abs(apart)].conj())
-    right = (scipy.fft.rfft(total)[: highest + 1] * turn[: highest + 1])[np.abs(numbers)]
-    right = np.where(numbers < 0, right.conj(), right)
     gram[np.diag_indices_from(gram)] += 1e-9 * float(count.sum())
+    return np.asarray(gram)
+
+
+def _right(bins: FloatArray, values: FloatArray, harmonics: FloatArray) -> ComplexArray:
+    """Right-hand side of the normal equations for weighted values, shape (2 k + 1,)."""
+    total = np.bincount(bins, values, minlength=_BINS)
+    one_side = scipy.fft.rfft(total)[harmonics.astype(int)] * np.exp(-1j * np.pi * harmonics / _BINS)
+    return np.concatenate([one_side[::-1].conj(), [total.sum()], one_side])
+
+
+def _amplitudes(gram: ComplexArray, right: ComplexArray) -> ComplexArray:
+    """Least squares: peak amplitudes of the positive harmonics, shape (k,) or (k, g)."""
     found = scipy.linalg.solve(gram, right, assume_a="her")
-    return np.asarray(2.0 * found[harmonics.size + 1 :])
+    return np.asarray(2.0 * found[len(gram) // 2 + 1 :])
 
 
 @dataclass(slots=True)
@@ -143,7 +151,8 @@ class _Work:
         light /= self.gain[:, None]
         left = self.relative() - light
         weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
-        step = _solve(bins.ravel(), left.ravel(), weights.ravel(), self.harmonics)
+        gram = _gram(bins.ravel(), weights.ravel(), self.harmonics)
+        step = _amplitudes(gram, _right(bins.ravel(), (weights * left).ravel(), self.harmonics))
         self.amplitudes = self.amplitudes + step / self.free
         if clock:
             frequency, turns, *_ = self.clock(bins, left, weights)
@@ -184,8 +193,10 @@ class _Work:
         weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
         _, _, frequency_error, turns_error = self.clock(bins, left, weights)
         groups = np.array_split(np.arange(len(left)), max(2, min(_GROUPS, len(left) // 3)))
-        parts = np.array([_solve(bins[g].ravel(), left[g].ravel(), weights[g].ravel(), self.harmonics) for g in groups])
-        spread = (np.abs(parts - parts.mean(axis=0)) ** 2).sum(axis=0) / (2 * len(groups) * (len(groups) - 1))
+        pull = weights * left
+        rights = np.stack([_right(bins[g].ravel(), pull[g].ravel(), self.harmonics) for g in groups], axis=1)
+        parts = _amplitudes(_gram(bins.ravel(), weights.ravel(), self.harmonics), rights)
+        spread = (np.abs(parts) ** 2).sum(axis=1) * len(groups) / (2 * (len(groups) - 1))
         noise = float(np.sqrt((weights * left**2).mean()))
         least = noise * np.sqrt(2.0 / left.size)
         # groups are few: an error is held against those of the harmonics around it

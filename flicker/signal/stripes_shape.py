@@ -16,7 +16,7 @@ from flicker.trace import FloatArray
 BLIND = 0.08  # what the exposure leaves of a harmonic: below this it is blind
 FLOOR = 0.003  # of the strongest harmonic: what compression does to every other one, whatever the noise
 CHROMA_FLOOR = 0.008  # the same for red and blue, which video codes more coarsely
-_LEAST = 4e-4  # of the mean: the same for faint bands
+_LEAST = 0.5  # of the floors, as a share of the mean: a fraction of a code value, whatever the bands
 _DUTIES = np.concatenate([np.geomspace(0.004, 0.1, 24, endpoint=False), np.linspace(0.1, 0.9, 41), 1 - np.geomspace(0.1, 0.01, 12)])
 _PHASES = 1024
 _MUCH_WORSE = 4.0  # reduced chi-square above which no rectangle is believed
@@ -35,7 +35,7 @@ class Harmonics:
     @classmethod
     def of(cls, fit: StripeFit, strongest: float, floor: float = FLOOR) -> Harmonics:
         """Take them from a fit; `strongest` is the largest amplitude of any channel."""
-        variances = fit.errors**2 + (floor * strongest) ** 2 + _LEAST**2
+        variances = fit.errors**2 + floor**2 * (strongest**2 + _LEAST**2)
         return cls(fit.harmonics, fit.amplitudes, variances, fit.frequency)
 
     def left_by(self, exposure: float) -> FloatArray:
@@ -267,7 +267,7 @@ def duty_of(seen: Harmonics, exposure: float) -> tuple[float, float] | None:
     losses = (np.abs(model - seen.amplitudes) ** 2 / seen.variances).sum(axis=1)
     best = int(losses.argmin())
     signal = float((np.abs(seen.amplitudes) ** 2 / seen.variances).sum())
-    return (float(duties[best]), middle) if losses[best] < max(4.0 * 2 * seen.numbers.size, 2e-3 * signal) else None
+    return (float(duties[best]), middle) if losses[best] < max(4.0 * 2 * seen.numbers.size, 1e-2 * signal) else None
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -310,6 +310,8 @@ def undo_exposure(seen: Harmonics, exposure: float) -> FreeShape:
     for number in unseen:
         beside = np.abs(amplitudes[np.abs(numbers - number) == 1.0])
         bound += float(beside.max()) if beside.size else 0.0
+    if numbers.size:  # harmonics above the last one seen, if they fall as those of a cusp do: 1 / h^2
+        bound += float(np.abs(amplitudes[-1])) * highest
     return FreeShape(numbers, amplitudes, errors, unseen, bound)
 
 

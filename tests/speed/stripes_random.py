@@ -58,7 +58,7 @@ def main() -> None:
     rows: list[tuple[float, float, float, bool, bool]] = []
     decays: list[float] = []
     clock: list[tuple[float, bool]] = []
-    refused = 0
+    refused = unknown = 0
     for seed in range(first, first + count):
         shot, truth, codec = random_shot(seed)
         begin = time.perf_counter()
@@ -79,7 +79,11 @@ def main() -> None:
         words = [f"{seed} {codec:8} f {light.frequency:7.1f} duty {light.duty:.2f} low {light.low_level:.2f} fTe {light.frequency * shot.exposure:5.2f} {off:+6.2f} ppm"]
         for channel in found.channels[:3]:
             true, got = truth[channel.name].percent_flicker, channel.measures["percent_flicker"]
-            value = got.value if got.value is not None else np.nan
+            if got.value is None:
+                unknown += 1
+                words.append(f"{channel.name} unknown")
+                continue
+            value = got.value
             inside = (got.low or 0.0) <= true <= (got.high or 0.0)
             contrast = 100 * channel.bands.contrast
             rows.append((value - true, contrast, true, inside, channel.name == "red"))
@@ -98,6 +102,7 @@ def main() -> None:
         for what, chosen, bound in (("deep", some & (contrast > 10), 3.0), ("shallow", some & (contrast <= 10), 1.5)):
             if chosen.any():
                 print(f"{name}, {what}: {chosen.sum()} depths, within {bound} points {np.mean(np.abs(error[chosen]) <= bound):.0%}, median {np.median(np.abs(error[chosen])):.2f}, worst {np.abs(error[chosen]).max():.2f}, in the interval {np.mean(inside[chosen]):.0%}")
+    print(f"{unknown} depths said to be unknown")
     print(f"all intervals: {inside.mean():.0%} hold the truth")
     if decays:
         print(f"decay: {len(decays)} found, median error {np.median(np.abs(decays)):.1%}, within 8 % {np.mean(np.abs(decays) <= 0.08):.0%}, worst {np.abs(decays).max():.1%}")
