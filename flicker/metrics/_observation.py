@@ -17,6 +17,8 @@ from flicker.signal.intervals import power_threshold
 from flicker.trace import FloatArray, Trace
 
 _MOST_COMPONENTS = 400
+_BLOCKS = 32  # of time, for slow movement
+_MOVED = 0.01  # of the mean: slower movement than this counts as drift of a steady light
 _NO_MEAN = (
     "the capture has lost the mean level (AC coupling), so that no depth can be told: "
     "record with DC coupling, or give the mean light with --mean"
@@ -98,10 +100,27 @@ class Observation:
         swings = [one.high - one.low for one in self.family_extremes]
         return int(np.argmax(swings))
 
-    @property
+    @cached_property
     def steady(self) -> bool:
-        """Whether no periodic modulation rises above the noise."""
-        return not self.search.families
+        """
+        Whether no periodic modulation rises above the noise.
+
+        `NotMeasurable` where the level moves, but less than one and a half cycles of what moves it were recorded: that
+        is neither steady nor a flicker that could be told.
+        """
+        if self.search.families:
+            return False
+        values = self.series.values
+        size = max(values.size // _BLOCKS, 1)
+        blocks = values[: values.size // size * size].reshape(-1, size).mean(axis=1)
+        noise = float(np.std(np.diff(values))) / np.sqrt(2 * size) if values.size > 1 else 0.0
+        moved = float(np.ptp(blocks))
+        if moved > _MOVED * abs(self.mean) and moved > 8 * noise:
+            raise NotMeasurable(
+                f"the level moves by {100 * moved / abs(self.mean):.2g} % within {self.series.span:.3g} s without "
+                "repeating: slow flicker and drift cannot be told apart, record at least two cycles, better ten"
+            )
+        return True
 
     def _steady_reason(self) -> str:
         floor = f" of {100 * self.search.floor / self.mean:.2g} %" if self.trace.mean_known and self.mean > 0 else ""

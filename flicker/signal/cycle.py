@@ -177,7 +177,7 @@ def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cy
     squares = np.maximum(square - levels * sums.sum(axis=0), 0.0)
     noise = _noise(squares, counts.sum(axis=0))
     edges = _edges(levels, squares, counts.sum(axis=0), noise)
-    offset = (0.5 / bins + first + series.centre * -frequency) % 1.0
+    offset = (0.5 / bins + first + series.centre * frequency) % 1.0
     return Cycle(frequency, sums, counts, noise, offset, edges)
 
 

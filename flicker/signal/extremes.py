@@ -18,6 +18,7 @@ _CONTRADICTION = 2.0  # standard errors by which a wide window may differ from a
 # steps back from the widest window that is not contradicted, whose bias is of the size of its error: plateaus on
 # either side of the place or about it, and two shapes that bend
 _STEPS_BACK = {"right": 2, "left": 2, "about": 2, "parabola": 3, "hinge": 3}
+_QUIETEST = 1e-4  # noise over swing that is assumed at the least, so that wide windows are preferred without noise too
 _FEW_HARMONICS = 6  # with more, a corner may hide behind the noise
 
 
@@ -89,7 +90,7 @@ def extremes(cycle: Cycle, fit: HarmonicFit) -> Extremes:
 
 def _of_few_harmonics(cycle: Cycle, fit: HarmonicFit) -> Extremes:
     number = np.arange(1, fit.amplitudes.size + 1)
-    bins = cycle.phase + cycle.first_phase + fit.centre * fit.frequency  # in the phase of the fit
+    bins = cycle.phase + cycle.first_phase - fit.centre * fit.frequency  # in the phase of the fit
 
     def weights(phase: float, derivative: int) -> FloatArray:
         turns = np.exp(2j * np.pi * np.outer(number, phase - bins)) * (2j * np.pi * number[:, None]) ** derivative
@@ -133,7 +134,9 @@ def _places(half: Cycle) -> dict[str, tuple[FloatArray, FloatArray]]:
     """Weights that read the largest and the smallest level of one half, by the window and by the next narrower one."""
     m = half.size
     counts = half.counts.sum(axis=0)
-    single, single_error = half.sums.sum(axis=0) / counts, half.noise / np.sqrt(counts)
+    single = half.levels
+    noise = max(half.noise, _QUIETEST * float(np.ptp(single)))
+    single_error = noise / np.sqrt(counts)
     levels, variances = scipy.fft.rfft(single), scipy.fft.rfft(single_error**2)
     means, errors, kernels = [], [], []
     for shape, steps_back in _STEPS_BACK.items():

@@ -64,6 +64,8 @@ def find_families(series: Series) -> Search:
         if line is None:
             break
         fit = _settle_octave(left, fit_harmonics(left, line[0]), now)
+        if fit.frequency * series.span < _FEWEST_CYCLES:
+            break
         families.append(fit)
         families = _merge_related(series, families)
         left = _without(series, families)
@@ -107,7 +109,7 @@ def _next_line(now: Spectrum, lowest: float, highest: float, families: list[Harm
             a, b = int((middle - reach) / now.spacing), int((middle + reach) / now.spacing) + 2
             amplitudes[max(a, 0) : b] = 0.0
     line = replace(now, amplitudes=amplitudes).strongest_line(lowest, highest, noise)
-    unmodelled = max((3 * fit.unresolved for fit in families), default=0.0)
+    unmodelled = max((2.0 * fit.unresolved for fit in families), default=0.0)
     return line if line is not None and line[1] > unmodelled else None
 
 
