@@ -64,7 +64,9 @@ class FilmReport:
         if self.stripes.frequency.value is None:
             return ()
         depth = channel.measures["percent_flicker"]
-        return (Family(self.stripes.frequency, depth, max(len(channel.components), 1), "read from the stripes of a video"),)
+        return (
+            Family(self.stripes.frequency, depth, max(len(channel.components), 1), "read from the stripes of a video"),
+        )
 
     def region(self, channel: ChannelStripes) -> Any:
         """Risk region of a channel, None where its depth is unknown."""
@@ -89,7 +91,10 @@ class FilmReport:
             "families": [family.to_dict() for family in self.families(channel)],
             "risk_region": region.to_dict() if region else None,
             "verdicts": [],
-            "history": [*self.stripes.footage.history, "scene and light separated jointly, every line at its true time"],
+            "history": [
+                *self.stripes.footage.history,
+                "scene and light separated jointly, every line at its true time",
+            ],
         }
 
 

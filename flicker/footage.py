@@ -49,7 +49,9 @@ class Footage:
 
     def __post_init__(self) -> None:
         if self.light.ndim != 4 or self.light.shape[3] != len(self.channels):
-            raise InputError(f"footage needs light of shape (t, r, b, c) with its channel names, not {self.light.shape}")
+            raise InputError(
+                f"footage needs light of shape (t, r, b, c) with its channel names, not {self.light.shape}"
+            )
         if self.times.shape != self.light.shape[:1]:
             raise InputError(f"footage needs one time a frame: {self.times.shape} times, {self.light.shape[0]} frames")
         if self.weight.shape != self.light.shape[1:3]:
@@ -75,4 +77,4 @@ class Footage:
         light = self.light[..., self.channels.index(channel)]
         total = self.weight.sum(axis=1)
         share = self.weight / np.where(total > 0, total, 1.0)[:, None]
-        return np.einsum("trb,rb->tr", light, share, dtype=float)
+        return np.asarray(np.einsum("trb,rb->tr", light, share, dtype=float))

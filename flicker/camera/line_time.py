@@ -126,22 +126,30 @@ def _tone(view: Footage, frequency: float) -> tuple[float, float] | None:
         off = abs((per_frame - expected + 0.5) % 1.0 - 0.5)
         whole = turns * view.lines_of_frame * view.frame_rate / frequency  # readout over frame time
         least = max(100.0 / (deviation.lines * len(deviation.times)), 1e-3)
-        if off < 1.5 / len(deviation.times) + 1e-3 * frequency / view.frame_rate and 0.02 < whole < 1.1 and power > least:
+        if (
+            off < 1.5 / len(deviation.times) + 1e-3 * frequency / view.frame_rate
+            and 0.02 < whole < 1.1
+            and power > least
+        ):
             best = max(best or (0.0, 0.0), (power, turns))
     return best
 
 
 def _result(view: Footage, bands: StripeFit, frequency: float, uncertainty: float, notes: list[Note]) -> LineTime:
     time = abs(bands.turns_per_line) / bands.frequency
-    error = time * math.hypot(bands.turns_error / bands.turns_per_line, bands.frequency_error / bands.frequency, uncertainty)
+    error = time * math.hypot(
+        bands.turns_error / bands.turns_per_line, bands.frequency_error / bands.frequency, uncertainty
+    )
     method = (
-        f"cycles a line of {len(bands.harmonics)} harmonics over {view.frames} frames, over {bands.frequency:.7g} Hz, which "
+        f"cycles a line of {len(bands.harmonics)} harmonics over {view.frames} frames, over "
+        f"{bands.frequency:.7g} Hz, which "
         "the camera's clock makes of the stated frequency"
     )
     off = abs(bands.frequency / frequency - 1)
     if off > 2e-4 + 3 * uncertainty:
         message = (
-            f"by the camera's clock the light has {bands.frequency:.7g} Hz, {1e6 * off:.0f} ppm from what was stated: one of the "
+            f"by the camera's clock the light has {bands.frequency:.7g} Hz, {1e6 * off:.0f} ppm from "
+            "what was stated: one of the "
             "two is off, or --frame-rate is not what the camera shot at"
         )
         notes.append(Note("clock-off", "warning", message))
@@ -159,5 +167,6 @@ def camera_file(camera: Camera) -> str:
     """Give the text of a camera file."""
     return (
         f'name = "{camera.name}"\nlines = {camera.lines}\nline_time_s = {camera.line_time:.8g}\n'
-        f'frame_rate_hz = {camera.frame_rate:.9g}\nshutter = "{camera.shutter}"\nread_direction = "{camera.read_direction}"\n'
+        f'frame_rate_hz = {camera.frame_rate:.9g}\nshutter = "{camera.shutter}"\n'
+        f'read_direction = "{camera.read_direction}"\n'
     )

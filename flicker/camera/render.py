@@ -148,7 +148,7 @@ def render(shot: Shot) -> Iterator[npt.NDArray[np.float32]]:
 def _quantised(signal: FloatArray, low: float, span: float, bits: int) -> npt.NDArray[Any]:
     scale = 2 ** (bits - 8)
     code = np.rint((low + span * signal) * scale)
-    return np.clip(code, 0, 2**bits - 1).astype(np.uint8 if bits == 8 else np.uint16)
+    return np.asarray(np.clip(code, 0, 2**bits - 1), np.uint8 if bits == 8 else np.uint16)
 
 
 def _planes(light: npt.NDArray[np.float32], shot: Shot, bits: int, chroma: tuple[int, int] | None) -> list[Any]:

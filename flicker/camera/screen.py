@@ -15,7 +15,15 @@ from flicker.errors import NotMeasurable
 from flicker.footage import Footage
 from flicker.results import Note
 from flicker.signal.stripes_fit import Rows, StripeFit, fit_at
-from flicker.signal.stripes_shape import Harmonics, duty_of, extremes, fit_pulse, is_rectangle, pulse_loss, undo_exposure
+from flicker.signal.stripes_shape import (
+    Harmonics,
+    duty_of,
+    extremes,
+    fit_pulse,
+    is_rectangle,
+    pulse_loss,
+    undo_exposure,
+)
 from flicker.trace import FloatArray
 
 _DARK = 0.04  # of the brightest cell: below this a cell is dark
@@ -119,14 +127,18 @@ def map_screen(
     notes = list(footage.notes)
     if line_time is None and footage.frame_rate < _FAST:
         raise NotMeasurable(
-            f"at {footage.frame_rate:.4g} frames/s the cells need the times of their lines: state --line-time, or film at "
+            f"at {footage.frame_rate:.4g} frames/s the cells need the times of their lines: state "
+            "--line-time, or film at "
             "240 frames/s and more"
         )
     cells = _Cells(footage, rows, line_time)
     frequencies = cells.frequencies()
     if exposure is None:
         exposure = _likeliest_exposure(cells, frequencies)
-        message = f"the exposure was not stated; {exposure:.3g} s fits the brightest cells best: depths and duty cycles may be a few per cent off"
+        message = (
+            f"the exposure was not stated; {exposure:.3g} s fits the brightest cells best: depths "
+            "and duty cycles may be a few per cent off"
+        )
         notes.append(Note("exposure-fitted", "warning", message))
     shape = (rows, footage.light.shape[2])
     grids = {name: np.full(shape, np.nan) for name in ("frequency", "depth", "duty", "phase")}
@@ -134,7 +146,8 @@ def map_screen(
         _measure(cells, place, frequencies[place], exposure, grids)
     if line_time is None:
         message = (
-            f"frames at {footage.frame_rate:.5g} Hz cannot tell a light of frequency f from one of k times that rate plus or "
+            f"frames at {footage.frame_rate:.5g} Hz cannot tell a light of frequency f from one of k "
+            "times that rate plus or "
             "minus f; the delays of the lines are left in: state --line-time to settle both"
         )
         notes.append(Note("aliasing-possible", "info", message))
@@ -178,7 +191,7 @@ class _Cells:
 
     def number(self, row: int) -> float:
         """Number of the middle line of a cell."""
-        return (self.edges[row] + self.edges[row + 1] - 1) / 2 + self.footage.first_line
+        return float(self.edges[row] + self.edges[row + 1] - 1) / 2 + self.footage.first_line
 
     def rows(self, row: int, column: int) -> Rows:
         """Lines of a cell about the middle of the footage and of the cell."""
@@ -192,10 +205,10 @@ class _Cells:
         series = np.stack([[self.lines(r, c)[:, 0] for c in range(self.mean.shape[1])] for r in range(len(self.mean))])
         deviation = series / np.maximum(series.mean(axis=2, keepdims=True), 1e-9) - 1
         deviation[self.dark] = 0
-        size = scipy.fft.next_fast_len(8 * series.shape[2])
+        size: int = scipy.fft.next_fast_len(8 * series.shape[2])
         window = np.hanning(series.shape[2])
         power = np.abs(scipy.fft.rfft(deviation * window, size, axis=2)) ** 2
-        lowest = max(16, int(3 * 8))
+        lowest = 24  # three cycles in the footage
         power[..., :lowest] = 0
         floor = np.median(power[..., lowest:], axis=2)
         whole = power.sum(axis=(0, 1))
@@ -288,7 +301,7 @@ def _zones(grids: dict[str, FloatArray], mean: FloatArray, dark: npt.NDArray[np.
     """Grow zones from neighbour to neighbour, brightest first."""
     known = np.isfinite(grids["frequency"]) & ~dark
     label = np.full(mean.shape, -1)
-    zones = []
+    zones: list[list[Any]] = []
     for place in sorted(zip(*np.nonzero(known), strict=True), key=lambda p: -mean[p]):
         if label[place] >= 0:
             continue

@@ -157,7 +157,7 @@ def find_bands(footage: Footage, line_time: float | None) -> StripeFit:
         longer = fit_stripes(_rows(footage, "all"), fit.frequency, fit.turns_per_line)
         if longer.noise < 1.5 * fit.noise:
             fit = longer
-    if not (np.abs(fit.amplitudes) > np.maximum(5 * fit.errors, _LOWEST_BAND)).any():
+    if not (np.abs(fit.amplitudes) > np.maximum(8 * fit.errors, _LOWEST_BAND)).any():
         raise NotMeasurable(_no_bands(lines, footage, line_time))
     return fit
 
@@ -191,7 +191,8 @@ def _lowest(footage: Footage, fit: StripeFit) -> StripeFit:
 def _no_bands(lines: FloatArray, footage: Footage, line_time: float | None) -> str:
     other = [rate for rate in _RATES if abs(rate / footage.frame_rate - 1) > 0.02]
     cure = (
-        f"film at a frame rate other than {footage.frame_rate:.5g} Hz, such as {other[0]:g} or {other[1]:g}, with a short "
+        f"film at a frame rate other than {footage.frame_rate:.5g} Hz, such as {other[0]:g} or "
+        f"{other[1]:g}, with a short "
         "exposure; or measure a plain white surface"
     )
     profile = lines.mean(axis=0)
@@ -205,12 +206,17 @@ def _no_bands(lines: FloatArray, footage: Footage, line_time: float | None) -> s
         if line_time is not None:
             about = peak / rest.size / line_time
             multiple = max(round(about / footage.frame_rate), 1)
-            place = f" (about {about:.0f} Hz, perhaps {multiple} times the frame rate = {multiple * footage.frame_rate:.6g} Hz)"
+            place = (
+                f" (about {about:.0f} Hz, perhaps {multiple} times the frame rate = "
+                f"{multiple * footage.frame_rate:.6g} Hz)"
+            )
         return (
-            f"no band moves; a pattern of lines stands still{place}: bands that keep step with the frames, or the scene; {cure}"
+            f"no band moves; a pattern of lines stands still{place}: bands that keep step with the "
+            f"frames, or the scene; {cure}"
         )
     return (
-        "no light was found that changes from line to line and from frame to frame: it is steady, its bands stand still, "
+        "no light was found that changes from line to line and from frame to frame: it is steady, its "
+        "bands stand still, "
         f"the exposure blurs them away, or the lines run the other way (--read-direction); {cure}"
     )
 
@@ -224,16 +230,17 @@ def _clocked(
     sign = 1.0 if bands.turns_per_line > 0 else -1.0
     pairs = []
     for shift in range(-2000, 2001) if line_time is None else range(-3, 4):
-        frequency = sign * bands.frequency + shift * rate if line_time is None else bands.frequency + shift * rate
-        if frequency <= 0 or (shift == 0 and line_time is not None):
+        candidate = sign * bands.frequency + shift * rate if line_time is None else bands.frequency + shift * rate
+        if candidate <= 0 or (shift == 0 and line_time is not None):
             continue
-        time = abs(bands.turns_per_line) / frequency
-        off = None if line_time is None else 100 * abs(time / line_time - 1)
-        if low <= time <= high:
-            pairs.append({"frequency_hz": frequency, "line_time_s": time, "line_time_off_percent": off})
+        implied = abs(bands.turns_per_line) / candidate
+        off = None if line_time is None else 100 * abs(implied / line_time - 1)
+        if low <= implied <= high:
+            pairs.append({"frequency_hz": candidate, "line_time_s": implied, "line_time_off_percent": off})
     if line_time is None:
         reason = (
-            f"the line time is not known, and {len(pairs)} pairs of frequency and line time fit alike (see the alternatives): "
+            f"the line time is not known, and {len(pairs)} pairs of frequency and line time fit alike "
+            "(see the alternatives): "
             "state --line-time, or measure it with flicker line-time"
         )
         unknown = Measure.missing("Hz", reason)
@@ -251,7 +258,8 @@ def _clocked(
     pairs.sort(key=lambda pair: float(pair["line_time_off_percent"] or 0))
     if off > max(2e-3, 3 * half / fitted):
         message = (
-            f"the bands fit a line time of {fitted:.6g} s, {100 * off:.2g} % from the one that was told; if that one is right, "
+            f"the bands fit a line time of {fitted:.6g} s, {100 * off:.2g} % from the one that was told; "
+            "if that one is right, "
             "the frequency is another: see the alternatives"
         )
         notes.append(Note("line-time-off", "warning", message))
@@ -274,18 +282,22 @@ def _fitted_exposure(harmonics: dict[str, Harmonics], longest: float) -> tuple[f
 def _shapes(harmonics: dict[str, Harmonics], exposure: float) -> dict[str, PulseShape | FreeShape]:
     """The light of each channel: a pulse, the fastest one's pulse behind a slow emitter, or free harmonics."""
     own = {name: fit_pulse(one, exposure) for name, one in harmonics.items()}
-    colours = [name for name in ("green", "blue", "red") if name in own] or ["all"]
+    colours: list[str] = [name for name in ("green", "blue", "red") if name in own] or ["all"]
     fastest = max(colours, key=lambda name: float(np.abs(harmonics[name].amplitudes[0])))
     shapes: dict[str, PulseShape | FreeShape] = {}
     for name, one in harmonics.items():
-        if name not in ("red", "blue") and not (np.abs(one.amplitudes) > 3 * np.sqrt(one.variances)).any():
-            continue
-        shape: PulseShape | FreeShape = own[name]
+        shape = own[name]
         if name not in (fastest, "all") and is_rectangle(own[fastest]):
             slow = fit_decay(one, own[fastest])
             lag = 2 * math.pi * one.frequency * slow.decay
-            if lag > 0.2 and slow.decay > 3 * slow.decay_error and slow.chi_square < max(1.5 * own[name].chi_square, 2.5):
+            if (
+                lag > 0.2
+                and slow.decay > 3 * slow.decay_error
+                and slow.chi_square < max(1.5 * own[name].chi_square, 2.5)
+            ):
                 shape = slow
+        if not shape.decay and not (np.abs(one.amplitudes) > 3 * np.sqrt(one.variances)).any():
+            continue
         if is_rectangle(shape):
             shapes[name] = shape
         elif (free := undo_exposure(one, exposure)).numbers.size:
@@ -332,9 +344,14 @@ def _doubts(
 ) -> tuple[Note, ...]:
     notes = []
     if line_time is None:
-        notes.append(Note("line-time-unknown", "warning", "without --line-time the frequency is one of the alternatives"))
+        notes.append(
+            Note("line-time-unknown", "warning", "without --line-time the frequency is one of the alternatives")
+        )
     if exposure is None:
-        message = f"without --exposure only the bands are known: contrast {100 * min(bands.contrast, 1.0):.3g} %, the light is deeper"
+        message = (
+            "without --exposure only the bands are known: contrast "
+            f"{100 * min(bands.contrast, 1.0):.3g} %, the light is deeper"
+        )
         notes.append(Note("exposure-unknown", "warning", message))
     elif not told:
         message = f"the exposure was not stated; the shape of the bands speaks for {exposure:.4g} s"
@@ -348,9 +365,13 @@ def _doubts(
     carried = np.arange(1.0, bands.standing.size + 1)
     still = [f"{h:.0f}" for h in carried[(bands.standing > STANDING) & (carried <= 10)]]
     if still:
-        message = f"harmonics {', '.join(still)} stand still in the picture and were left out: another frame rate shows them"
+        message = (
+            f"harmonics {', '.join(still)} stand still in the picture and were left out: another frame rate shows them"
+        )
         notes.append(Note("standing-harmonics", "info", message))
-    notes.append(Note("dark-assumed", "info", "the black of the video is taken as dark: light that is always there counts"))
+    notes.append(
+        Note("dark-assumed", "info", "the black of the video is taken as dark: light that is always there counts")
+    )
     return tuple(notes)
 
 

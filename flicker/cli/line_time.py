@@ -36,10 +36,10 @@ def command(
 ) -> None:
     """Measure a camera's line time from a VIDEO of a light of known frequency.
 
-    A light-emitting diode on a crystal-driven generator serves, or a lamp on the mains (100 or 120 Hz, good to about
-    0.1 %). Choose a frequency that is no multiple of half the frame rate and gives some 8 to 30 bands, a short exposure,
-    and a diffuser before the lens. The line time belongs to this mode of the camera: crop, resolution, bit depth and
-    frame rate change it.
+    A light-emitting diode on a crystal-driven generator serves, or a lamp on the mains (100 or 120 Hz, good to
+    about 0.1 %). Choose a frequency that is no multiple of half the frame rate and gives some 8 to 30 bands, a short
+    exposure, and a diffuser before the lens. The line time belongs to this mode of the camera: crop, resolution, bit
+    depth and frame rate change it.
 
     Example:
 

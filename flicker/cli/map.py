@@ -31,8 +31,8 @@ def command(
 ) -> None:
     """Map depth, frequency, phase and level over the picture of a VIDEO, and find the zones of a backlight.
 
-    A fast video (240 frames/s and more) needs nothing else; one at an ordinary rate needs the line time. Film the screen
-    square, filling the picture, from a tripod with the exposure locked, showing one even grey or white.
+    A fast video (240 frames/s and more) needs nothing else; one at an ordinary rate needs the line time. Film the
+    screen square, filling the picture, from a tripod with the exposure locked, showing one even grey or white.
 
     Example:
 

@@ -17,13 +17,11 @@ from flicker.cli.output import print_words, spare_the_captures, terminal_width, 
 @click.option("--camera", "camera_file", metavar="FILE.toml", help="Camera file; the options override it.")
 @click.option("--clock-ppm", type=float, metavar="PPM", help="Standard uncertainty of the camera's clock.")
 @output_options
-def command(
-    video: str, camera_file: str | None, json_target: str | None, quiet: bool, **how: Any
-) -> None:
+def command(video: str, camera_file: str | None, json_target: str | None, quiet: bool, **how: Any) -> None:
     """Read the light back from the bands of a rolling-shutter VIDEO, every line a sample.
 
-    Film the lit surface from a tripod with exposure, gain and focus locked, with a short exposure, at a frame rate of which
-    the light's frequency is no multiple. The line time comes from flicker line-time or a camera file.
+    Film the lit surface from a tripod with exposure, gain and focus locked, with a short exposure, at a frame rate of
+    which the light's frequency is no multiple. The line time comes from flicker line-time or a camera file.
 
     Example:
 

@@ -30,7 +30,7 @@ def draw_map(found: ScreenMap) -> Figure:
     from matplotlib.figure import Figure
 
     figure = Figure(figsize=(11, 7), layout="constrained")
-    panels: tuple[tuple[str, Any, str, dict[str, float]], ...] = (
+    panels: tuple[tuple[str, Any, str, dict[str, Any]], ...] = (
         ("Percent flicker (%)", found.percent_flicker, "viridis", {"vmin": 0, "vmax": 100}),
         ("Frequency (Hz)", found.frequency, "cividis", {}),
         ("Phase ahead of the brightest zone (cycles)", found.phase, "twilight_shifted", {"vmin": -0.5, "vmax": 0.5}),
@@ -46,8 +46,8 @@ def draw_map(found: ScreenMap) -> Figure:
         axes.set_ylabel("row")
         for number, zone in enumerate(found.zones[:40], 1):
             row, column = np.mean(np.array(zone.cells), axis=0)
-            axes.text(column, row, str(number), ha="center", va="center", color="white", fontsize=8,
-                      bbox={"boxstyle": "round,pad=0.15", "facecolor": "black", "alpha": 0.55, "linewidth": 0})  # fmt: skip
+            box = {"boxstyle": "round,pad=0.15", "facecolor": "black", "alpha": 0.55, "linewidth": 0}
+            axes.text(column, row, str(number), ha="center", va="center", color="white", fontsize=8, bbox=box)
     figure.suptitle(f"{len(found.zones)} zones, numbered brightest first: {found.kind}", fontsize=11)
     return figure
 

@@ -223,7 +223,10 @@ def true_times(
         scale = 1.0 if frame_rate is None else 1 / (mean * time_base * frame_rate)
         times = ticks * time_base * scale
         spread = np.diff(times)
-        message = f"the frame rate varies between {1 / spread.max():.4g} and {1 / spread.min():.4g} Hz; each frame keeps its own time"
+        message = (
+            f"the frame rate varies between {1 / spread.max():.4g} and {1 / spread.min():.4g} Hz; "
+            "each frame keeps its own time"
+        )
         notes.append(Note("variable-frame-rate", "info", message))
         rate = (ticks.size - 1) / times[-1]
     if frame_rate is not None:

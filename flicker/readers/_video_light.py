@@ -17,7 +17,7 @@ _STEPS = 4096  # entries of the table from code to light between black and white
 _HEADROOM = 1.1  # codes above nominal white that the table still knows
 _CLIPPED = 0.98
 
-# Value a quarter of a chroma row above the middle of the third of five rows, from their means: exact up to degree 4.
+# Value a quarter of a chroma row above the middle of the third of five rows, from their means.
 _UPPER = np.array([-0.02379557, 0.16028646, 1.0264974, -0.18867187, 0.02568359], np.float32)
 
 
@@ -25,7 +25,7 @@ Block = npt.NDArray[np.float32]
 
 
 def block_count(width: int) -> int:
-    """Number of equal blocks that a line of `width` pixels is cut into; a divisor of the width if there is a good one."""
+    """Number of equal blocks that a line of `width` pixels is cut into; a divisor of it if there is a good one."""
     most = min(_MOST_BLOCKS, width)
     return next((m for m in range(most, most // 2, -1) if width % m == 0), most)
 
@@ -83,7 +83,8 @@ class LightMeter:
         x, y, width, height = region or (0, 0, frame.width, frame.height)
         if width < 2 or height < 2 or x < 0 or y < 0 or x + width > frame.width or y + height > frame.height:
             raise InputError(
-                f"the region {x},{y},{width},{height} does not lie in the picture of {frame.width} x {frame.height} pixels"
+                f"the region {x},{y},{width},{height} does not lie in the picture of {frame.width} x "
+                f"{frame.height} pixels"
             )
         target = _readable_format(frame.format)
         form = frame.format if not target else type(frame.format)(target, frame.width, frame.height)
@@ -114,7 +115,7 @@ class LightMeter:
     @property
     def code_step(self) -> float:
         """One code value, where nominal white is 1."""
-        return 1.0 / ((255.0 if self.full_range else 219.0) * 2 ** (self.bits - 8))
+        return 1.0 / ((255.0 if self.full_range else 219.0) * 2.0 ** (self.bits - 8))
 
     def light(self, frame: Any) -> Block:
         """Linear light above black of red, green and blue, or of luma alone, shape (c, r, m)."""

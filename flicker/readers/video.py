@@ -6,6 +6,7 @@ import dataclasses
 import hashlib
 from collections.abc import Iterator
 from dataclasses import dataclass
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -52,7 +53,8 @@ class _Clipping:
     def notes(self) -> list[Note]:
         if self.share > 0.97:
             message = (
-                "nearly the whole picture stands at the upper end of its range at times: the brightest light is cut off and "
+                "nearly the whole picture stands at the upper end of its range at times: the brightest "
+                "light is cut off and "
                 "depths come out too small; film again with less exposure or gain"
             )
             return [Note("clipped", "error", message)]
@@ -87,7 +89,8 @@ class _Film:
         head = next(rest, None)
         if head is None:
             raise UnreadableFileError(
-                f"{file.path}: not one picture can be decoded{': ' + file.failure if file.failure else ''}; it is damaged"
+                f"{file.path}: not one picture can be "
+                f"decoded{': ' + file.failure if file.failure else ''}; it is damaged"
             )
         notes = []
         if transfer is not None:
@@ -95,7 +98,8 @@ class _Film:
         elif (transfer := file.stated_transfer(head)) is None:
             transfer = "bt709"
             message = (
-                "the file does not say how its code values relate to light; BT.709 is assumed, which can be off by a tenth "
+                "the file does not say how its code values relate to light; BT.709 is assumed, which "
+                "can be off by a tenth "
                 "and more of a shallow depth: state --transfer"
             )
             notes.append(Note("transfer-assumed", "warning", message))
@@ -108,7 +112,8 @@ class _Film:
             notes.append(Note("matrix-assumed", "info", message))
         if head.interlaced_frame:
             message = (
-                "the video is interlaced: two fields of different times stand in one frame, and times within a frame are "
+                "the video is interlaced: two fields of different times stand in one frame, and times "
+                "within a frame are "
                 "wrong; film progressively"
             )
             notes.append(Note("interlaced", "error", message))
@@ -190,7 +195,7 @@ def read_footage(
     if read_direction not in ("down", "up", "left", "right"):
         raise InputError(did_you_mean("read direction", read_direction, ["down", "up", "left", "right"]))
     sideways = read_direction in ("left", "right")
-    kept: list[Block] = []
+    kept: list[npt.NDArray[Any]] = []
     with VideoFile(path) as file:
         film = _Film.begin(file, region, sideways, transfer)
         weight, gather = _gathering(film.clipping.usable, blocks)
@@ -246,10 +251,10 @@ def read_footage(
 
 def _gathering(usable: npt.NDArray[np.float32], blocks: int) -> tuple[npt.NDArray[np.float64], Any]:
     """Weights of `blocks` parts of each line, shape (r, b), and what averages (c, r, m) into (r, b, c)."""
-    rows, finer = usable.shape
+    finer = usable.shape[1]
     blocks = max(1, min(blocks, finer))
     edges = np.linspace(0, finer, blocks + 1).astype(int)
-    parts = [slice(a, b) for a, b in zip(edges[:-1], edges[1:], strict=True)]
+    parts = [slice(a, b) for a, b in pairwise(edges)]
     weight = np.stack([usable[:, part].mean(axis=1) for part in parts], axis=1)
     shares = [usable[:, part] / np.maximum(usable[:, part].sum(axis=1, keepdims=True), 1e-6) for part in parts]
 
@@ -275,7 +280,8 @@ def _understood(film: _Film) -> str:
     details = film.file.details
     reach = "full" if film.meter.full_range else "limited"
     return (
-        f"read {details['width']} x {details['height']} {details['codec']} video ({details['pixel_format']}, {reach} range, "
+        f"read {details['width']} x {details['height']} {details['codec']} video "
+        f"({details['pixel_format']}, {reach} range, "
         f"transfer {film.transfer}, matrix {film.meter.matrix}) as linear light above black"
     )
 
@@ -342,7 +348,8 @@ def _segments(times: npt.NDArray[np.float64], rate: float) -> tuple[Segment, ...
 def _aliasing(rate: float, exposure: float) -> Note:
     known = "the exposure is undone" if exposure else "state --exposure to undo what it takes from the depth"
     message = (
-        f"frames at {rate:.6g} Hz cannot tell a light of frequency f from one of k times {rate:.6g} Hz plus or minus f; a "
+        f"frames at {rate:.6g} Hz cannot tell a light of frequency f from one of k times {rate:.6g} Hz "
+        "plus or minus f; a "
         f"second clip at another rate with --same-light settles it, flicker stripes reads beyond it; {known}"
     )
     return Note("aliasing-possible", "info", message)

@@ -76,7 +76,10 @@ def _depth(channel: ChannelStripes) -> str:
     if measure.value is None:
         return f"not known: {measure.reason}"
     value, interval = measured(measure)
-    return f"percent flicker {value} ({interval}) in {channel.name}; bands of {quantity(100 * min(channel.bands.contrast, 1.0), '%')}"
+    return (
+        f"percent flicker {value} ({interval}) in {channel.name}; bands of "
+        f"{quantity(100 * min(channel.bands.contrast, 1.0), '%')}"
+    )
 
 
 def _risk(report: FilmReport) -> str:
@@ -95,7 +98,11 @@ def _next(report: FilmReport) -> str:
     if stripes.exposure is None:
         return "state --exposure, or film with a shorter one so that the bands show more harmonics"
     broken = next((note for note in stripes.notes if note.severity != "info"), None)
-    return f"mend the capture first: see {broken.code} below" if broken else "hold it against limits: flicker limits lists them"
+    return (
+        f"mend the capture first: see {broken.code} below"
+        if broken
+        else "hold it against limits: flicker limits lists them"
+    )
 
 
 def _table(channels: Iterable[ChannelStripes]) -> Iterable[str]:
@@ -187,7 +194,8 @@ def map_words(found: ScreenMap, path: str, *, width: int = 100) -> str:
         phase = "-" if zone.phase is None else f"{zone.phase:+.3f}"
         depth = quantity(zone.percent_flicker, "%", 4)
         lines.append(
-            f"  {number:<4}  {len(zone.cells):<5}  {frequency:<12}  {depth:<15}  {duty:<10}  {phase:<14}  {zone.mean:.3f}"
+            f"  {number:<4}  {len(zone.cells):<5}  {frequency:<12}  {depth:<15}  {duty:<10}  {phase:<14} "
+            f" {zone.mean:.3f}"
         )
     return "\n".join([*lines, *notes_words(found.notes, width)])
 

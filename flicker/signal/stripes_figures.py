@@ -41,7 +41,11 @@ class Samples:
             method = f"{shape.numbers.size} harmonics with the exposure undone"
             return cls(np.array(waves), np.full(count + 1, np.nan), method, shape.blind_bound)
         best = np.array([shape.duty, shape.share, shape.middle])
-        draws = rng.multivariate_normal(best, np.array(shape.covariance), count, method="svd") if count else np.empty((0, 3))
+        draws = (
+            rng.multivariate_normal(best, np.array(shape.covariance), count, method="svd")
+            if count
+            else np.empty((0, 3))
+        )
         if count and len(shape.duties) > 3:  # the best one has far neighbours: draw among all
             chances = np.array([chance for *_, chance in shape.duties])
             chosen = rng.choice(len(chances), count, p=chances / chances.sum())

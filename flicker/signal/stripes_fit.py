@@ -1,9 +1,10 @@
-"""Scene and light separated jointly: lines at their true times, harmonics of one frequency, one level for every line."""
+"""Scene and light separated jointly: lines at their true times, harmonics of one frequency, a level for each line."""
 
 from __future__ import annotations
 
 import dataclasses
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import scipy.fft
@@ -79,7 +80,7 @@ def evaluate(harmonics: FloatArray, amplitudes: ComplexArray, size: int) -> Floa
 
 def standing_of(harmonics: FloatArray, frequency: float, times: FloatArray) -> FloatArray:
     """How well the phases of harmonics agree over the frames: 1 where they stand still, shape (k,)."""
-    return np.abs(np.exp(2j * np.pi * np.outer(harmonics * frequency, times)).mean(axis=1))
+    return np.asarray(np.abs(np.exp(2j * np.pi * np.outer(harmonics * frequency, times)).mean(axis=1)))
 
 
 def harmonic_numbers(turns: float, samples: int, most: int = _MOST_HARMONICS) -> FloatArray:
@@ -88,7 +89,7 @@ def harmonic_numbers(turns: float, samples: int, most: int = _MOST_HARMONICS) ->
     return np.arange(1.0, max(1, min(most, carried, samples // 40)) + 1)
 
 
-def _gram(bins: FloatArray, weights: FloatArray, harmonics: FloatArray) -> ComplexArray:
+def _gram(bins: Any, weights: FloatArray, harmonics: FloatArray) -> ComplexArray:
     """Normal matrix of harmonics -k..-1, 0, 1..k, shape (2 k + 1, 2 k + 1); phases in bins, known by their middle."""
     highest = int(harmonics[-1]) if harmonics.size else 0
     count = np.bincount(bins, weights, minlength=_BINS)
@@ -100,7 +101,7 @@ def _gram(bins: FloatArray, weights: FloatArray, harmonics: FloatArray) -> Compl
     return np.asarray(gram)
 
 
-def _right(bins: FloatArray, values: FloatArray, harmonics: FloatArray) -> ComplexArray:
+def _right(bins: Any, values: FloatArray, harmonics: FloatArray) -> ComplexArray:
     """Right-hand side of the normal equations for weighted values, shape (2 k + 1,)."""
     total = np.bincount(bins, values, minlength=_BINS)
     one_side = scipy.fft.rfft(total)[harmonics.astype(int)] * np.exp(-1j * np.pi * harmonics / _BINS)
@@ -133,7 +134,7 @@ class _Work:
         nothing = np.zeros(harmonics.size, dtype=complex)
         return cls(rows, frequency, turns, harmonics, nothing, scene, gain, 1 - standing**2)
 
-    def model(self) -> tuple[FloatArray, FloatArray]:
+    def model(self) -> tuple[Any, FloatArray]:
         """Bins of phase and modelled light over its scene, both shape (t, r)."""
         bins = (self.rows.phases(self.frequency, self.turns) * _BINS).astype(np.intp)
         wave = evaluate(self.harmonics, self.amplitudes * np.exp(1j * np.pi * self.harmonics / _BINS), _BINS)
@@ -159,7 +160,7 @@ class _Work:
             self.frequency += frequency
             self.turns += turns
 
-    def clock(self, bins: FloatArray, left: FloatArray, weights: FloatArray) -> tuple[float, float, float, float]:
+    def clock(self, bins: Any, left: FloatArray, weights: FloatArray) -> tuple[float, float, float, float]:
         """Corrections of frequency and of cycles a line by Gauss-Newton, each with its standard error."""
         turned = 2j * np.pi * self.harmonics * self.amplitudes
         slope = evaluate(self.harmonics, turned * np.exp(1j * np.pi * self.harmonics / _BINS), _BINS) - 1.0
@@ -183,7 +184,7 @@ class _Work:
         step = inverse @ pulls.sum(axis=1)
         # a codec carries errors on from frame to frame: whole runs of frames are what scatters
         runs = np.add.reduceat(pulls, np.unique(np.linspace(0, pulls.shape[1], 11)[:-1].astype(int)), axis=1)
-        spread = inverse @ (runs @ runs.T) @ inverse * 1.6
+        spread = inverse @ (runs @ runs.T) @ inverse * 6.0
         return float(step[0]), float(step[1]), float(np.sqrt(spread[0, 0])), float(np.sqrt(spread[1, 1]))
 
     def finish(self) -> StripeFit:
@@ -279,7 +280,9 @@ def fit_wave(rows: Rows, known: StripeFit, *, rounds: int = 5) -> StripeFit:
     return dataclasses.replace(work.finish(), frequency_error=known.frequency_error, turns_error=known.turns_error)
 
 
-def fit_at(rows: Rows, frequency: float, turns: float, *, frame_rate: float | None = None, rounds: int = 3) -> StripeFit:
+def fit_at(
+    rows: Rows, frequency: float, turns: float, *, frame_rate: float | None = None, rounds: int = 3
+) -> StripeFit:
     """
     Fit the wave of a few lines at a known frequency.
 

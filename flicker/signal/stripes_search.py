@@ -64,7 +64,9 @@ class Deviation:
         share = (position - lower).astype(np.float32)
         half = 1j * np.pi * (self.lines - 1) / self.size  # phase of one bin about the middle line
         below = self.spectrum[:, lower] * ((1 - share) * np.exp(-half * share))
-        return (below + self.spectrum[:, lower + 1] * (share * np.exp(half * (1 - share)))).astype(np.complex64)
+        return np.asarray(
+            below + self.spectrum[:, lower + 1] * (share * np.exp(half * (1 - share))), dtype=np.complex64
+        )
 
     def coherent(self, frequencies: FloatArray, line_time: float) -> FloatArray:
         """Power of a tone that runs through lines and frames at their true times, shape (q,)."""

@@ -16,8 +16,11 @@ from flicker.trace import FloatArray
 BLIND = 0.08  # what the exposure leaves of a harmonic: below this it is blind
 FLOOR = 0.003  # of the strongest harmonic: what compression does to every other one, whatever the noise
 CHROMA_FLOOR = 0.008  # the same for red and blue, which video codes more coarsely
-_LEAST = 0.5  # of the floors, as a share of the mean: a fraction of a code value, whatever the bands
-_DUTIES = np.concatenate([np.geomspace(0.004, 0.1, 24, endpoint=False), np.linspace(0.1, 0.9, 41), 1 - np.geomspace(0.1, 0.01, 12)])
+_FAINT = (0.003, 0.012)  # of the mean: what codecs erase of faint bands in luma, in colour; found on rendered clips
+_FAINT_UP_TO = 0.2  # amplitude over the mean at which bands stop being faint
+_DUTIES = np.concatenate(
+    [np.geomspace(0.004, 0.1, 24, endpoint=False), np.linspace(0.1, 0.9, 41), 1 - np.geomspace(0.1, 0.01, 12)]
+)
 _PHASES = 1024
 _MUCH_WORSE = 4.0  # reduced chi-square above which no rectangle is believed
 _GRID = 4096
@@ -35,7 +38,8 @@ class Harmonics:
     @classmethod
     def of(cls, fit: StripeFit, strongest: float, floor: float = FLOOR) -> Harmonics:
         """Take them from a fit; `strongest` is the largest amplitude of any channel."""
-        variances = fit.errors**2 + floor**2 * (strongest**2 + _LEAST**2)
+        erased = _FAINT[floor > FLOOR] * np.exp(-strongest / _FAINT_UP_TO)
+        variances = fit.errors**2 + (floor * strongest) ** 2 + erased**2
         return cls(fit.harmonics, fit.amplitudes, variances, fit.frequency)
 
     def left_by(self, exposure: float) -> FloatArray:
@@ -131,7 +135,9 @@ def fit_pulse(seen: Harmonics, exposure: float) -> PulseShape:
     for k in starts:
         begin = [_DUTIES[k], max(share[k], 1e-4), -best_phase[k] / _PHASES]
         bounds = ([1e-3, 0.0, -2.0], [0.999, 1.0, 2.0])
-        tries.append(scipy.optimize.least_squares(residual, np.clip(begin, *bounds), bounds=bounds, x_scale=[0.1, 0.1, 0.1]))
+        tries.append(
+            scipy.optimize.least_squares(residual, np.clip(begin, *bounds), bounds=bounds, x_scale=[0.1, 0.1, 0.1])
+        )
     found = min(tries, key=lambda one: one.cost)
     freedom = max(2 * data.size - 3, 1)
     reduced = 2.0 * float(found.cost) / freedom
@@ -174,7 +180,9 @@ def fit_exposure(seen: Harmonics, longest: float) -> tuple[PulseShape, list[Puls
     others : list of PulseShape
         Pulses at other exposures that fit within 95 % as well; duty and exposure can trade places.
     """
-    turns = np.unique(np.concatenate([np.geomspace(0.01, 1.0, 40), np.arange(1.0, min(longest * seen.frequency, 12.0), 0.05)]))
+    turns = np.unique(
+        np.concatenate([np.geomspace(0.01, 1.0, 40), np.arange(1.0, min(longest * seen.frequency, 12.0), 0.05)])
+    )
     exposures = turns[turns <= longest * seen.frequency] / seen.frequency
     losses = np.array([_coarse(seen, float(exposure))[2].min() for exposure in exposures])
     dips = np.flatnonzero((losses <= np.r_[losses[1:], np.inf]) & (losses <= np.r_[np.inf, losses[:-1]]))

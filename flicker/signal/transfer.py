@@ -69,20 +69,20 @@ def to_light(code: npt.ArrayLike, transfer: str) -> FloatArray:
     IEC 61966-2-1, `hlg` the inverse of the camera's curve and `pq` the display's curve of ITU-R BT.2100-2. `pq`
     video has gone through a rendering that a camera chooses; its light is the display's, not the scene's.
     """
-    code = np.maximum(np.asarray(code, dtype=float), 0.0)
+    signal = np.asarray(np.maximum(np.asarray(code, dtype=float), 0.0))
     gamma = transfer_gamma(transfer)
     if gamma is not None:
-        return np.asarray(code**gamma)
+        return np.asarray(signal**gamma)
     if transfer == "linear":
-        return code
+        return signal
     if transfer == "srgb":
-        return np.where(code <= 0.04045, code / 12.92, ((code + 0.055) / 1.055) ** 2.4)
+        return np.where(signal <= 0.04045, signal / 12.92, ((signal + 0.055) / 1.055) ** 2.4)
     if transfer == "bt709":
-        return np.where(code < 0.081, code / 4.5, ((code + 0.099) / 1.099) ** (1 / 0.45))
+        return np.where(signal < 0.081, signal / 4.5, ((signal + 0.099) / 1.099) ** (1 / 0.45))
     if transfer == "hlg":
-        high = (np.exp((np.maximum(code, 0.5) - _HLG_C) / _HLG_A) + _HLG_B) / 12.0
-        return np.where(code <= 0.5, code**2 / 3.0, high)
-    root = np.minimum(code, 1.1) ** (1 / _PQ_M2)
+        high = (np.exp((np.maximum(signal, 0.5) - _HLG_C) / _HLG_A) + _HLG_B) / 12.0
+        return np.where(signal <= 0.5, signal**2 / 3.0, high)
+    root = np.minimum(signal, 1.1) ** (1 / _PQ_M2)
     return np.asarray((np.maximum(root - _PQ_C1, 0.0) / (_PQ_C2 - _PQ_C3 * root)) ** (1 / _PQ_M1))
 
 
@@ -102,18 +102,18 @@ def to_code(light: npt.ArrayLike, transfer: str) -> FloatArray:
     FloatArray
         Non-linear signal, 0 at black and 1 at nominal white, shape as given.
     """
-    light = np.maximum(np.asarray(light, dtype=float), 0.0)
+    linear = np.asarray(np.maximum(np.asarray(light, dtype=float), 0.0))
     gamma = transfer_gamma(transfer)
     if gamma is not None:
-        return np.asarray(light ** (1 / gamma))
+        return np.asarray(linear ** (1 / gamma))
     if transfer == "linear":
-        return light
+        return linear
     if transfer == "srgb":
-        return np.where(light <= 0.0031308, 12.92 * light, 1.055 * light ** (1 / 2.4) - 0.055)
+        return np.where(linear <= 0.0031308, 12.92 * linear, 1.055 * linear ** (1 / 2.4) - 0.055)
     if transfer == "bt709":
-        return np.where(light < 0.018, 4.5 * light, 1.099 * light**0.45 - 0.099)
+        return np.where(linear < 0.018, 4.5 * linear, 1.099 * linear**0.45 - 0.099)
     if transfer == "hlg":
-        high = _HLG_A * np.log(np.maximum(12.0 * light - _HLG_B, 1e-12)) + _HLG_C
-        return np.where(light <= 1 / 12, np.sqrt(3.0 * light), high)
-    power = light**_PQ_M1
+        high = _HLG_A * np.log(np.maximum(12.0 * linear - _HLG_B, 1e-12)) + _HLG_C
+        return np.where(linear <= 1 / 12, np.sqrt(3.0 * linear), high)
+    power = linear**_PQ_M1
     return np.asarray(((_PQ_C1 + _PQ_C2 * power) / (1.0 + _PQ_C3 * power)) ** _PQ_M2)

@@ -26,7 +26,11 @@ def zones_of(path, places, duties, phases, *, frame_rate=960.0, line_time=8e-6, 
 
 def quarters():
     halves = [(slice(0, 30), slice(30, 60)), (slice(0, 48), slice(48, 96))]
-    return [(rows, columns, 0.16 - 0.02 * (2 * r + c)) for r, rows in enumerate(halves[0]) for c, columns in enumerate(halves[1])]
+    return [
+        (rows, columns, 0.16 - 0.02 * (2 * r + c))
+        for r, rows in enumerate(halves[0])
+        for c, columns in enumerate(halves[1])
+    ]
 
 
 def test_four_zones_with_their_duties_and_phases(tmp_path):
@@ -57,7 +61,8 @@ def test_a_local_dimming_backlight_with_half_its_zones_dark(tmp_path):
     duties = rng.uniform(0.15, 0.85, (5, 6))
     rows, columns = np.linspace(0, HEIGHT, 6).astype(int), np.linspace(0, WIDTH, 7).astype(int)
     places = [
-        (slice(rows[r], rows[r + 1]), slice(columns[c], columns[c + 1]), 0.15) for r, c in zip(*np.nonzero(lit), strict=True)
+        (slice(rows[r], rows[r + 1]), slice(columns[c], columns[c + 1]), 0.15)
+        for r, c in zip(*np.nonzero(lit), strict=True)
     ]
     zones_of(tmp_path / "clip.mp4", places, duties[lit], np.zeros(15))
     found = map_video(tmp_path / "clip.mp4", rows=5, columns=6, line_time=8e-6, exposure=1 / 2000)
@@ -77,7 +82,16 @@ def test_a_rolling_shutter_at_an_ordinary_rate_serves_too(tmp_path):
 
 def test_the_command_prints_zones_and_draws_maps(tmp_path):
     zones_of(tmp_path / "clip.mp4", quarters(), DUTIES, (0.0, 0.25, 0.5, 0.75))
-    words = ["map", str(tmp_path / "clip.mp4"), "--rows", "6", "--columns", "8", "--figures", str(tmp_path / "pictures")]
+    words = [
+        "map",
+        str(tmp_path / "clip.mp4"),
+        "--rows",
+        "6",
+        "--columns",
+        "8",
+        "--figures",
+        str(tmp_path / "pictures"),
+    ]
     done = CliRunner().invoke(program, [*words, "--json", str(tmp_path / "map.json")])
     assert done.exit_code == 0, done.output
     assert "4 zones" in done.output

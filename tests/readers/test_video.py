@@ -89,9 +89,7 @@ def test_lines_are_numbered_as_they_are_read(tmp_path, direction):
     scene = SCENE if direction in ("down", "up") else SCENE.T
     shot = dataclasses.replace(SHOT, parts=[Lit(scene, [LIGHT])], read_direction=direction)
     write_clip(path, shot, "ffv1")
-    np.testing.assert_allclose(
-        read_footage(path, read_direction=direction).lines_of("green"), truth(SHOT), atol=0.006
-    )
+    np.testing.assert_allclose(read_footage(path, read_direction=direction).lines_of("green"), truth(SHOT), atol=0.006)
 
 
 def test_hevc_of_ten_bits_in_hlg(film):

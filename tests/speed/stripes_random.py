@@ -45,8 +45,9 @@ def random_shot(seed: int) -> tuple[Shot, dict[str, Pulse], str]:
     codec = str(rng.choice(["libx264", "mjpeg"]))
     coding = {"options": {"crf": "18"}} if codec == "libx264" else {"options": {"qmin": "2", "qmax": "3"}}
     coding |= {} if codec == "libx264" else {"pixel_format": "yuvj420p", "full_range": True, "matrix": "bt601"}
+    part = Lit(scene / max(1.0, float(bands.max()) * 0.3), [slow, fast, fast])
     shot = Shot(
-        readout / LINES, rate, exposure, round(SECONDS * rate), [Lit(scene / max(1.0, float(bands.max()) * 0.3), [slow, fast, fast])],
+        readout / LINES, rate, exposure, round(SECONDS * rate), [part],
         start=rng.uniform(0, 1), noise=0.01, seed=seed, **coding,
     )  # fmt: skip
     return shot, {"red": slow, "green": fast, "blue": fast}, codec
@@ -54,7 +55,9 @@ def random_shot(seed: int) -> tuple[Shot, dict[str, Pulse], str]:
 
 def main() -> None:
     """Print one line a clip and a summary."""
-    count, first = (int(word) for word in (*sys.argv[1:], "60", "1000")[:2]) if len(sys.argv) < 3 else map(int, sys.argv[1:3])
+    count, first = (
+        (int(word) for word in (*sys.argv[1:], "60", "1000")[:2]) if len(sys.argv) < 3 else map(int, sys.argv[1:3])
+    )
     rows: list[tuple[float, float, float, bool, bool]] = []
     decays: list[float] = []
     clock: list[tuple[float, bool]] = []
@@ -76,7 +79,12 @@ def main() -> None:
         light = truth["green"]
         off = 1e6 * ((found.frequency.value or 0) / light.frequency - 1)
         clock.append((off, (found.frequency.low or 0) <= light.frequency <= (found.frequency.high or 0)))
-        words = [f"{seed} {codec:8} f {light.frequency:7.1f} duty {light.duty:.2f} low {light.low_level:.2f} fTe {light.frequency * shot.exposure:5.2f} {off:+6.2f} ppm"]
+        words = [
+            (
+                f"{seed} {codec:8} f {light.frequency:7.1f} duty {light.duty:.2f} low {light.low_level:.2f} "
+                f"fTe {light.frequency * shot.exposure:5.2f} {off:+6.2f} ppm"
+            )
+        ]
         for channel in found.channels[:3]:
             true, got = truth[channel.name].percent_flicker, channel.measures["percent_flicker"]
             if got.value is None:
@@ -97,15 +105,32 @@ def main() -> None:
     contrast = np.array([row[1] for row in rows])
     inside = np.array([row[3] for row in rows])
     red = np.array([row[4] for row in rows])
-    print(f"\n{count} clips, {refused} refused; frequency: worst {max(abs(o) for o, _ in clock):.2f} ppm, in the interval {np.mean([i for _, i in clock]):.0%}")
+    print(
+        f"\n{count} clips, {refused} refused; frequency: worst {max(abs(o) for o, _ in clock):.2f} ppm, "
+        f"in the interval {np.mean([i for _, i in clock]):.0%}"
+    )
     for name, some in (("red", red), ("green and blue", ~red)):
         for what, chosen, bound in (("deep", some & (contrast > 10), 3.0), ("shallow", some & (contrast <= 10), 1.5)):
             if chosen.any():
-                print(f"{name}, {what}: {chosen.sum()} depths, within {bound} points {np.mean(np.abs(error[chosen]) <= bound):.0%}, median {np.median(np.abs(error[chosen])):.2f}, worst {np.abs(error[chosen]).max():.2f}, in the interval {np.mean(inside[chosen]):.0%}")
+                print(
+                    f"{name}, {what}: {chosen.sum()} depths, within {bound} points "
+                    f"{np.mean(np.abs(error[chosen]) <= bound):.0%}, "
+                    f"median {np.median(np.abs(error[chosen])):.2f}, worst {np.abs(error[chosen]).max():.2f}, "
+                    f"in the interval {np.mean(inside[chosen]):.0%}"
+                )
+    light = np.array([row[2] for row in rows])
+    faint = light < 20
+    print(
+        f"lights shallower than 20 %: {faint.sum()} depths, within 1.5 points "
+        f"{np.mean(np.abs(error[faint]) <= 1.5):.0%}"
+    )
     print(f"{unknown} depths said to be unknown")
     print(f"all intervals: {inside.mean():.0%} hold the truth")
     if decays:
-        print(f"decay: {len(decays)} found, median error {np.median(np.abs(decays)):.1%}, within 8 % {np.mean(np.abs(decays) <= 0.08):.0%}, worst {np.abs(decays).max():.1%}")
+        print(
+            f"decay: {len(decays)} found, median error {np.median(np.abs(decays)):.1%}, within 8 % "
+            f"{np.mean(np.abs(decays) <= 0.08):.0%}, worst {np.abs(decays).max():.1%}"
+        )
 
 
 if __name__ == "__main__":
