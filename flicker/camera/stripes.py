@@ -31,7 +31,7 @@ from flicker.trace import FloatArray
 
 _FAINTEST = 5e-3  # share of the variation that a tone must explain
 _LOWEST_BAND = 2e-3  # amplitude over the mean below which compression makes bands of its own
-_FRAMES_USED = 120
+_FRAMES_USED = 64
 _STAMPS = 2e-7  # relative standard uncertainty of a frequency that rests on rounded time stamps
 _RATES = (24.0, 25.0, 30.0, 48.0, 50.0, 60.0)
 _LUMA = (0.2126, 0.7152, 0.0722)  # ITU-R BT.709

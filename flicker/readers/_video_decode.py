@@ -196,16 +196,8 @@ def true_times(
     notes: list[Note] = []
     median = float(np.median(np.diff(ticks)))
     mean = ticks[-1] / (ticks.size - 1)
-    step = mean if abs(mean / median - 1) < 0.02 else median
-    stated = 1 / (stated_rate * time_base) if stated_rate else step
-    candidates = [stated] if abs(stated / step - 1) < 0.02 else []
-    number = np.rint(ticks / step)
-    regular = None
-    for interval in [*candidates, float(np.polyfit(number, ticks, 1)[0]) if number[-1] > 0 else step]:
-        left = ticks - np.rint(ticks / interval) * interval
-        if np.ptp(left) <= 1.02 and (np.diff(np.rint(ticks / interval)) >= 1).all():
-            regular = interval
-            break
+    stated = 1 / (stated_rate * time_base) if stated_rate else mean
+    regular = next((found for step in (mean, median) if (found := _regular(ticks, step, stated))), None)
     if regular is not None:
         number = np.rint(ticks / regular)
         rate = frame_rate or 1 / (regular * time_base)
@@ -235,3 +227,16 @@ def true_times(
             message = f"the file plays at {played:.6g} Hz; it is taken as shot at {frame_rate:.6g} Hz, as told"
             notes.append(Note("frame-rate-told", "info", message))
     return times, float(rate), notes
+
+
+def _regular(ticks: FloatArray, step: float, stated: float) -> float | None:
+    """Interval near `step` that explains every stamp within its rounding, None if there is none; the stated one first."""
+    candidates = [stated] if abs(stated / step - 1) < 0.02 else []
+    number = np.rint(ticks / step)
+    if number[-1] > 0:
+        candidates.append(float(np.polyfit(number, ticks, 1)[0]))
+    for interval in candidates:
+        number = np.rint(ticks / interval)
+        if np.ptp(ticks - number * interval) <= 1.02 and (np.diff(number) >= 1).all():
+            return interval
+    return None

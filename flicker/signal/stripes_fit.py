@@ -271,7 +271,7 @@ def _refined(work: _Work, rounds: int) -> StripeFit:
     return full.finish()
 
 
-def fit_wave(rows: Rows, known: StripeFit, *, rounds: int = 5) -> StripeFit:
+def fit_wave(rows: Rows, known: StripeFit, *, rounds: int = 4) -> StripeFit:
     """Fit the wave and the scene of another channel, with frequency, cycles a line and gain as known."""
     work = _Work.begin(rows, known.frequency, known.turns_per_line)
     work.gain = known.gain

@@ -120,6 +120,12 @@ def test_rounded_stamps_of_a_constant_rate_are_made_exact(film):
     np.testing.assert_allclose(footage.times, np.arange(24) / 29.97, rtol=1e-6, atol=1e-9)
 
 
+def test_stamps_hardly_finer_than_the_frames_do_no_harm(film):
+    footage = read_footage(film("clip.mkv", frame_rate=960.0, times=None, frames=60))
+    np.testing.assert_allclose(footage.times, np.arange(60) / 960.0, rtol=1e-5, atol=1e-9)
+    assert "dropped-frames" not in {note.code for note in footage.notes}
+
+
 def test_slow_motion_is_taken_at_the_rate_that_is_told(film):
     footage = read_footage(film(), frame_rate=240.0)
     np.testing.assert_allclose(footage.times, np.arange(24) / 240.0, atol=1e-9)
