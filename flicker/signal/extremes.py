@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
+import numpy.typing as npt
 import scipy.fft
 
 from flicker.light import ComplexArray
@@ -15,6 +16,7 @@ from flicker.signal.intervals import student_quantile
 from flicker.trace import FloatArray
 
 _CONTRADICTION = 2.0  # standard errors by which a wide window may differ from a narrower one
+_PLATEAUS = ("right", "left", "about")
 # steps back from the widest window that is not contradicted, whose bias is of the size of its error: plateaus on
 # either side of the place or about it, and two shapes that bend
 _STEPS_BACK = {"right": 2, "left": 2, "about": 2, "parabola": 3, "hinge": 3}
@@ -66,7 +68,8 @@ def extremes(cycle: Cycle, fit: HarmonicFit) -> Extremes:
     window may be as wide as the narrower ones do not contradict (intersection of confidence intervals; Goldenshluger
     and Nemirovski, Math. Methods Statist. 6 (1997) 135). Its shape is a plateau to the left, to the right or about the
     place, a parabola, or a hinge of two lines, whichever has the smallest error, so that a plateau is averaged, a
-    corner kept and an edge not crossed. What the window next in width reads otherwise is added to the interval.
+    corner kept and an edge not crossed. What a narrower window, or a plateau in place of a bend, reads otherwise is
+    added to the interval.
 
     The interval comes from the spread between groups of neighbouring cycles.
     """
@@ -123,14 +126,14 @@ def _scores(cycle: Cycle, weights: FloatArray) -> FloatArray:
 class _Reading:
     """Weighted level of some bins, what each group adds to its deviation, and how far a second weighting differs."""
 
-    def __init__(self, cycle: Cycle, weights: tuple[FloatArray, FloatArray]) -> None:
+    def __init__(self, cycle: Cycle, weights: tuple[FloatArray, ...]) -> None:
         chosen, narrower = weights
         self.level = float(chosen @ cycle.levels)
         self.doubt = abs(self.level - float(narrower @ cycle.levels))
         self.scores = _scores(cycle, chosen)
 
 
-def _places(half: Cycle) -> dict[str, tuple[FloatArray, FloatArray]]:
+def _places(half: Cycle) -> dict[str, tuple[FloatArray, ...]]:
     """Weights that read the largest and the smallest level of one half, by the window and by the next narrower one."""
     m = half.size
     counts = half.counts.sum(axis=0)
@@ -163,12 +166,20 @@ def _places(half: Cycle) -> dict[str, tuple[FloatArray, FloatArray]]:
     kind = np.argmin(errors, axis=0)
     every = np.arange(m)
     mean, error = np.array(means)[kind, every], np.array(errors)[kind, every]
-    readings = {}
+    readings: dict[str, tuple[FloatArray, ...]] = {}
     for which, sign in (("high", 1.0), ("low", -1.0)):
         top = int(np.argmax(sign * mean - 2.0 * error))
         width, narrower, shape = kernels[kind[top]][top]
-        readings[which] = (np.roll(_kernel(m, width, shape), top), np.roll(_kernel(m, narrower, shape), top))
+        second = (narrower, shape) if shape in _PLATEAUS else (width // 3 | 1, "about")
+        pair = (np.roll(_kernel(m, *one), top) for one in ((width, shape), second))
+        readings[which] = tuple(_off_edges(weights, half.edges) for weights in pair)
     return readings
+
+
+def _off_edges(weights: FloatArray, edges: npt.NDArray[np.bool_]) -> FloatArray:
+    """Leave out bins that hold an edge, where a plateau is averaged: one half of the cycles may not show it."""
+    kept = np.where(edges, 0.0, weights)
+    return kept / kept.sum() if (weights >= 0).all() and kept.sum() > 0.5 else weights
 
 
 def _pick(ladder: list[tuple[FloatArray, FloatArray]], chosen: np.ndarray, which: int) -> FloatArray:

@@ -223,7 +223,7 @@ def fit_harmonics(
 
 def _fit(series: Series, frequency: float, harmonics: int, offset: float, total_power: float) -> HarmonicFit:
     """Gauss-Newton with a fixed number of harmonics, fewer where the phases that were seen cannot tell so many."""
-    bins = _BINS if harmonics > 32 else 1 << 13
+    bins = _BINS if harmonics > 32 or series.values.size < 4096 else 1 << 13
     for _ in range(6 if harmonics < 3 else 4):
         binned = _bin_by_phase(series, frequency, offset, bins)
         gap = longest_gap(binned.count)
