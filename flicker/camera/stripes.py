@@ -35,6 +35,7 @@ _FRAMES_USED = 64
 _STAMPS = 2e-7  # relative standard uncertainty of a frequency that rests on rounded time stamps
 _RATES = (24.0, 25.0, 30.0, 48.0, 50.0, 60.0)
 _LUMA = (0.2126, 0.7152, 0.0722)  # ITU-R BT.709
+_HUNTING = 0.03  # standard deviation of the level from frame to frame
 _LISTED = 60  # lines of the spectrum that a channel lists
 
 
@@ -369,10 +370,42 @@ def _doubts(
             f"harmonics {', '.join(still)} stand still in the picture and were left out: another frame rate shows them"
         )
         notes.append(Note("standing-harmonics", "info", message))
+    notes += _contamination(footage, bands)
     notes.append(
         Note("dark-assumed", "info", "the black of the video is taken as dark: light that is always there counts")
     )
     return tuple(notes)
+
+
+def _frame_means(footage: Footage, bands: StripeFit) -> FloatArray:
+    """Mean of the bands over each frame, shape (t,): frames do not hold whole bands."""
+    numbers = np.arange(footage.lines) - (footage.lines - 1) / 2
+    times = footage.times - footage.times.mean()
+    kept = np.exp(2j * np.pi * np.outer(bands.harmonics * bands.turns_per_line, numbers)).mean(axis=1)
+    turned = np.exp(2j * np.pi * np.outer(times, bands.harmonics * bands.frequency))
+    return np.asarray(1.0 + (turned @ (bands.amplitudes * kept)).real)
+
+
+def _contamination(footage: Footage, bands: StripeFit) -> list[Note]:
+    """Frames that stand twice, and an exposure that the camera changed on the way."""
+    lines = footage.lines_of("all")
+    notes = []
+    twice = int((np.abs(np.diff(lines, axis=0)).mean(axis=1) < 1e-4 * lines.mean()).sum())
+    if twice:
+        message = (
+            f"{twice} frames repeat the one before: the video was brought to another frame rate, and its "
+            "times are wrong; use the file as the camera wrote it"
+        )
+        notes.append(Note("repeated-frames", "warning", message))
+    level = lines.mean(axis=0)
+    gain = (lines[:, level > 0] / level[level > 0]).mean(axis=1) / _frame_means(footage, bands)
+    if abs(bands.turns_per_line) * footage.lines > 3 and gain.std() > _HUNTING:
+        message = (
+            f"the level changes by {100 * gain.std():.2g} % from frame to frame beyond what the bands explain: "
+            "the camera changed its exposure or gain; depths are off by about as much: lock exposure and gain"
+        )
+        notes.append(Note("exposure-hunting", "warning", message))
+    return notes
 
 
 def _lines(

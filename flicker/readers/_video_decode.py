@@ -230,7 +230,7 @@ def true_times(
 
 
 def _regular(ticks: FloatArray, step: float, stated: float) -> float | None:
-    """Interval near `step` that explains every stamp within its rounding, None if there is none; the stated one first."""
+    """Interval near `step` that explains every stamp within its rounding, the stated one first; None without one."""
     candidates = [stated] if abs(stated / step - 1) < 0.02 else []
     number = np.rint(ticks / step)
     if number[-1] > 0:

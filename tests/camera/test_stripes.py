@@ -6,10 +6,11 @@ import numpy as np
 import pytest
 from click.testing import CliRunner
 
-from flicker.camera.render import HarmonicLight, Lit, Shot, write_clip
+from flicker.camera.render import HarmonicLight, Lit, Shot, render, write_clip
 from flicker.camera.stripes import read_stripes
 from flicker.cli import program
 from flicker.errors import NotMeasurable
+from flicker.footage import Footage
 from flicker.light import Pulse
 from flicker.readers.video import read_footage
 from flicker.waveforms import pwm, rectified_sine
@@ -104,6 +105,27 @@ def test_steady_light_is_no_flicker(tmp_path):
     clip = film(tmp_path / "clip.mkv", Pulse(463.21, 1.0), codec="ffv1", pixel_format="gray10le")
     with pytest.raises(NotMeasurable, match=r"no light was found that changes|no band moves"):
         read_stripes(read_footage(clip), line_time=LINE_TIME)
+
+
+def test_a_camera_that_hunts_for_its_exposure_is_noted(tmp_path):
+    gain = 1 + 0.1 * np.sin(np.arange(40) / 3)
+    clip = film(tmp_path / "clip.mp4", Pulse(463.21, 0.35), gain=gain)
+    codes = {note.code for note in read_stripes(read_footage(clip), line_time=LINE_TIME, exposure=1 / 2000).notes}
+    assert "exposure-hunting" in codes
+    steady = film(tmp_path / "steady.mp4", Pulse(463.21, 0.35))
+    codes = {note.code for note in read_stripes(read_footage(steady), line_time=LINE_TIME, exposure=1 / 2000).notes}
+    assert not {"exposure-hunting", "repeated-frames"} & codes
+
+
+def test_repeated_frames_are_noted():
+    times = np.arange(40) // 2 * 2 / 29.97  # what is filmed stands for two frames
+    light, shown = Pulse(463.21, 0.35), np.arange(40) / 29.97
+    shot = Shot(LINE_TIME, 29.97, 1 / 2000, 40, [Lit(TEXTURE, [light])], times=times, pixel_format="gray10le")
+    frames = render(shot)
+    light_of = np.stack([frame[..., 1].mean(axis=1) for frame in frames])[:, :, None, None].astype(np.float32)
+    footage = Footage(light_of, ("all",), shown, 29.97, lines_of_frame=LINES)
+    notes = read_stripes(footage, line_time=LINE_TIME, exposure=1 / 2000).notes
+    assert "repeated-frames" in {note.code for note in notes}
 
 
 def test_the_command_writes_a_report(tmp_path):
