@@ -132,3 +132,37 @@ def test_steady_light_has_no_bands():
     assert not bands.visible
     assert bands.bands_per_frame == 0
     assert "steady" in bands.to_dict()["reason"]
+
+
+def test_staggered_exposures_of_lines_agree_with_those_of_the_rectangle():
+    camera = Camera(lines=400, readout_time=16e-3, frame_rate=25.0)
+    exact = pwm_light(210.0, 0.3)["all"]
+    lines = Light((ChannelLight("all", exact.frequencies, exact.amplitudes, fundamentals=(210.0,)),))
+    for pair in ((1 / 100, 1 / 400), (1 / 400, 1 / 90), (1 / 150, 1 / 150)):
+        got = predict_bands(lines, camera, pair).contrast_percent["all"]
+        assert got == pytest.approx(predict_bands(Light((exact,)), camera, pair).contrast_percent["all"], abs=0.2)
+    halves = predict_bands(lines, camera, (1 / 150, 1 / 150)).contrast_percent["all"]
+    assert halves == pytest.approx(predict_bands(lines, camera, 1 / 75).contrast_percent["all"], abs=1e-6)
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_few_lines_limit_what_a_tolerance_can_do(seed):
+    rng = np.random.default_rng(seed)
+    lines, line_time = int(rng.integers(2, 6)), float(rng.uniform(2e-5, 2e-4))
+    camera = Camera(lines=lines, line_time=line_time, frame_rate=25.0)
+    frequency = float(rng.uniform(0.2, 3.0)) / line_time
+    duty, tolerance = float(rng.uniform(0.3, 0.7)), float(rng.uniform(0.02, 0.2))
+    exposure = float(rng.uniform(1.1, 4.0)) / frequency
+    got = predict_bands(pwm_light(frequency, duty), camera, exposure, tolerance).worst_contrast_percent
+    tried = np.linspace(1 - tolerance, 1 + tolerance, 1001)
+    each = [
+        predict_bands(pwm_light(frequency * one, duty), camera, exposure).contrast_percent["all"] for one in tried[::4]
+    ]
+    cycle = rectangle(duty, samples=20_000)
+    near = tried[::4][int(np.argmax(each))] + np.linspace(-1, 1, 41) * (tried[4] - tried[0])
+    near = near[abs(near - 1) <= tolerance]
+    found = max(
+        worst_frame(Wave(cycle, frequency * one), exposure, line_time, lines, phases=400, zooms=2) for one in near
+    )
+    assert got == pytest.approx(found, abs=0.05)
+    assert got >= max(each) - 1e-9

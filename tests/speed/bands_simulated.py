@@ -49,7 +49,7 @@ def main(cases):
         waves = {"red": Wave(slow, frequency), "green": Wave(rectangle(duty, low), frequency)}
         for name, wave in waves.items():
             expected = worst_frame(wave, exposure, camera.line_time, lines, phases=200, zooms=3)
-            means = contrast(frame_means(wave, exposure, camera.line_time, lines, frame_rate, 1200))
+            means = contrast(frame_means(wave, exposure, camera.line_time, lines, frame_rate, int(60 * frame_rate)))
             off = deviation(bands.contrast_percent[name], expected)
             if off > 0.2:
                 print(f"contrast {name}: {bands.contrast_percent[name]} against {expected}", frequency, duty, exposure)
