@@ -145,7 +145,7 @@ def test_staggered_exposures_of_lines_agree_with_those_of_the_rectangle():
     assert halves == pytest.approx(predict_bands(lines, camera, 1 / 75).contrast_percent["all"], abs=1e-6)
 
 
-@pytest.mark.parametrize("seed", range(12))
+@pytest.mark.parametrize("seed", range(10, 20))
 def test_few_lines_limit_what_a_tolerance_can_do(seed):
     rng = np.random.default_rng(seed)
     lines, line_time = int(rng.integers(2, 6)), float(rng.uniform(2e-5, 2e-4))
