@@ -27,6 +27,7 @@ from flicker.errors import ExitStatus, UnreadableFileError
 @many_options
 @output_options
 @click.option("--figures", metavar="DIR", help="Write the waveform, the spectrum and the risk plane as pictures.")
+@click.option("--camera", "camera_file", metavar="FILE.toml", help="With --figures: draw what this camera will record.")
 @click.option("--verbose", is_flag=True, help="Add how each figure was obtained, the lines, the history.")
 def command(
     captures: tuple[str, ...],
@@ -37,6 +38,7 @@ def command(
     json_target: str | None,
     quiet: bool,
     figures: str | None,
+    camera_file: str | None,
     verbose: bool,
     **reading: Any,
 ) -> None:
@@ -62,6 +64,12 @@ def command(
         raise click.UsageError("no capture: name one, or a table of them with --manifest")
     paths = [step.capture for step in steps]
     spare_the_captures([*paths, *filter(None, [manifest, reading["dark_capture"]])], [json_target])
+    if camera_file:
+        from flicker.camera import Camera
+
+        Camera.load(camera_file)  # a broken file is told before the work begins
+        if not figures:
+            raise click.UsageError("--camera draws the predicted frame: say where with --figures")
     folder = make_folder(figures) if figures else None
     names = [""] * len(paths)
     if folder:
@@ -70,7 +78,7 @@ def command(
         names = picture_names(paths)
     width, colour = terminal_width(), colour_wanted()
     measuring = given(clock_ppm=clock_ppm, dark_uncertainty=dark_uncertainty)
-    task = Task(given(**reading), measuring, width, colour, verbose, folder)
+    task = Task(given(**reading), measuring, width, colour, verbose, folder, camera_file)
     results = []
     found = side_by_side(partial(measure_capture, task=task), list(zip(steps, names, strict=True)), workers)
     for _, result in zip(with_progress(paths, "capture", quiet=quiet), found, strict=False):

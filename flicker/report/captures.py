@@ -7,10 +7,11 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from flicker.errors import FlickerError
+from flicker.errors import FlickerError, NotMeasurable
 from flicker.report.overview import OverviewEntry
 
 if TYPE_CHECKING:
+    from flicker.analysis import CaptureReport
     from flicker.sweep.manifest import Step
 
 
@@ -24,6 +25,7 @@ class Task:
     colour: bool = False
     verbose: bool = False
     figures: Path | None = None  # folder for pictures
+    camera: str | None = None  # camera file, for the picture of the predicted frame
 
 
 @dataclass(frozen=True)
@@ -70,9 +72,26 @@ def measure_capture(item: tuple[Step, str], task: Task) -> Measured:
     if task.figures is not None:
         from flicker.plots.pictures import write_pictures
 
-        no_picture = write_pictures(capture, task.figures, name).missing
+        no_picture = dict(write_pictures(capture, task.figures, name).missing)
+        if task.camera is not None:
+            no_picture |= _write_frame(capture, task.camera, task.figures / f"{name}-frame.png")
     words = capture_words(capture, width=task.width, colour=task.colour, verbose=task.verbose)
     return Measured(_data(capture, step), tuple(overview_entries(capture)), words, no_picture=no_picture)
+
+
+def _write_frame(capture: CaptureReport, camera: str, file: Path) -> dict[str, str]:
+    """Draw what a camera will record at the exposures of its file; give the reason where it cannot be told."""
+    from flicker.camera import Camera
+    from flicker.camera.answer import predict_all
+    from flicker.plots.frame import draw_exposures, draw_frame
+    from flicker.plots.style import save_figure
+
+    try:
+        answer = predict_all(capture.light, Camera.load(camera))
+    except NotMeasurable as reason:
+        return {file.stem: str(reason)}
+    save_figure(draw_frame(answer, 0) if len(answer.predictions) == 1 else draw_exposures(answer), file)
+    return {}
 
 
 def _data(capture: Any, step: Step) -> dict[str, Any]:

@@ -6,6 +6,7 @@ import pytest
 from click.testing import CliRunner
 
 from flicker.cli import program
+from flicker.demo import write_demo
 from flicker.plots.pictures import PICTURES
 
 FIXTURES = Path(__file__).resolve().parents[2] / "fixtures"
@@ -180,3 +181,16 @@ def test_stated_uncertainties_widen_the_intervals():
 
     assert interval("fundamental_frequency", "--clock-ppm", 50) == pytest.approx(2 * 1.96 * 50e-6 * 239.7, rel=0.1)
     assert interval("percent_flicker", "--dark-uncertainty", 0.01) > 1.5 * interval("percent_flicker")
+
+
+def test_a_camera_adds_the_predicted_frame(tmp_path, monkeypatch):
+    monkeypatch.chdir(tmp_path)
+    write_demo(tmp_path)
+    words = ("bridge-display-dusk.csv", "--dark-level", 0.012, "--camera", "dock-camera.toml")
+    done = run(*words, "--figures", "pictures")
+    assert done.exit_code == 0, done.output
+    assert (tmp_path / "pictures" / "bridge-display-dusk-frame.png").stat().st_size > 10_000
+    assert len(list((tmp_path / "pictures").iterdir())) == 4
+    alone = run(*words)
+    assert alone.exit_code == 2
+    assert "--figures" in alone.stderr
