@@ -87,7 +87,9 @@ def test_a_lost_mean_is_told_once_with_its_cure():
     assert answer["Depth"] == "not known: see ac-coupled below"
     assert answer["Next"] == "cure ac-coupled, then measure again"
     assert words.count("--mean") == 1
-    assert " ".join(words.split()).count("see ac-coupled below") == 2, "once beside the depth, once for all measures that need the mean"
+    assert " ".join(words.split()).count("see ac-coupled below") == 2, (
+        "once beside the depth, once for all measures that need the mean"
+    )
     assert "percent flicker, flicker index, RMS modulation, SVM" in words
 
 
