@@ -78,8 +78,8 @@ def run_checks() -> Iterator[Check]:
 
     Notes
     -----
-    Values that go through the whole measurement are taken from captures made of the known waveform, with noise of 0.01 %. Frequencies
-    are such that the samples meet the light in many phases, as they do in practice.
+    Values that go through the whole measurement are taken from captures made of the known waveform, with noise of
+    0.01 %. Frequencies are such that the samples meet the light in many phases, as they do in practice.
     """
     for group in (
         _waveforms,
@@ -202,7 +202,7 @@ def _visibility_measured() -> Iterator[Check]:
 
 
 def _rectangular(changes: float, swing: float) -> FloatArray:
-    """Rectangular light of so many changes a minute and so large a change of its mean [%]; a change at 15 s of each 60."""
+    """Rectangular light of so many changes a minute, each of so much of its mean [%]."""
     times = np.arange(int(_METER_RATE * _METER_DURATION)) / _METER_RATE
     return 1.0 + swing / 200.0 * np.where((times * changes / 120.0 + 0.25) % 1.0 < 0.5, 1.0, -1.0)
 
@@ -276,7 +276,8 @@ def _frequency_bound() -> Iterator[Check]:
 def _bands() -> Iterator[Check]:
     rows = (
         # frequency [Hz], duty, exposure [s], contrast [%], half a printed digit
-        (1000.0, 0.05, 5.005e-3, 0.990, 0.0005), (1000.0, 0.02, 5.005e-3, 2.44, 0.005), (1000.0, 0.10, 5.025e-3, 2.44, 0.005),
+        (1000.0, 0.05, 5.005e-3, 0.990, 0.0005), (1000.0, 0.02, 5.005e-3, 2.44, 0.005),
+        (1000.0, 0.10, 5.025e-3, 2.44, 0.005),
         (240.0, 0.05, 1 / 50, 11.11, 0.005), (240.0, 0.30, 1 / 50, 7.14, 0.005), (240.0, 0.05, 1 / 250, 66.67, 0.005),
         (1000.0, 0.05, 1 / 48, 2.44, 0.005), (1000.0, 0.30, 1 / 48, 1.34, 0.005),
     )  # fmt: skip

@@ -29,9 +29,14 @@ class Edge:
 
 
 def plateaus(levels: FloatArray) -> tuple[float, float]:
-    """Typical level of the lower and the upper end: medians of what lies below and above the middle of the swing."""
+    """
+    Typical level of the lower and the upper end of the swing.
+
+    The outer quantiles of what lies below and above the middle: where a slow tail has come to rest, but not the short
+    swing beyond it of an edge that rings.
+    """
     middle = 0.5 * (float(levels.max()) + float(levels.min()))
-    return float(np.quantile(levels[levels <= middle], 0.5)), float(np.quantile(levels[levels >= middle], 0.5))
+    return float(np.quantile(levels[levels <= middle], 0.15)), float(np.quantile(levels[levels >= middle], 0.85))
 
 
 def between(levels: FloatArray) -> float:

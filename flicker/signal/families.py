@@ -14,6 +14,7 @@ from flicker.trace import FloatArray
 
 _MOST_FAMILIES = 6
 _MOST_DIVISOR = 8
+_ROUNDS = 2  # in which each family is fitted beside the others
 _FEWEST_CYCLES = 1.5
 _FEWEST_CYCLES_BELOW = 3.0  # of a fundamental below the strongest line: fewer could be drift
 
@@ -51,7 +52,7 @@ def find_families(series: Series) -> Search:
     line rises above the noise. Two families whose fundamentals stand in a ratio of small whole numbers, to within
     their errors, are one when at least half of the places that the common fundamental offers below the upper one
     are filled: light with every second pulse weaker is one light, a ripple at 100 Hz beside a PWM at 20 kHz is two.
-    At the end each family is fitted once more beside the others. The rule of one half is this program's own.
+    At the end each family is fitted beside the others, in turns. The rule of one half is this program's own.
     """
     whole = _longest_run(series)
     first = spectrum(whole, series.sample_rate)
@@ -59,7 +60,7 @@ def find_families(series: Series) -> Search:
     families: list[HarmonicFit] = []
     left, now = series, first
     floor = float(np.sqrt(np.quantile(first.noise_power(), 0.5) * np.log(first.amplitudes.size * 1e3)))
-    while len(families) < _MOST_FAMILIES:
+    for _ in range(_MOST_FAMILIES):
         line = _next_line(now, lowest, series.sample_rate / 2, families)
         if line is None:
             break
@@ -71,11 +72,10 @@ def find_families(series: Series) -> Search:
         left = _without(series, families)
         now = spectrum(_longest_run(left), series.sample_rate)
         floor = float(np.sqrt(np.quantile(now.noise_power(), 0.5) * np.log(now.amplitudes.size * 1e3)))
-    if len(families) > 1:
-        families = [
-            fit_harmonics(_without(series, families[:place] + families[place + 1 :]), fit.frequency)
-            for place, fit in enumerate(families)
-        ]
+    for _ in range(_ROUNDS if len(families) > 1 else 0):
+        for place, fit in enumerate(families):
+            rest = families[:place] + families[place + 1 :]
+            families[place] = fit_harmonics(_without(series, rest), fit.frequency)
     families.sort(key=lambda fit: -_strength(fit))
     return Search(tuple(families), floor, first)
 
@@ -130,9 +130,22 @@ def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicF
         least = max(4.0 * lower.amplitude_error, 3 * fit.unresolved)
         if np.count_nonzero(heights > least) * 2 >= len(places):
             whole = fit_harmonics(series, lower.frequency)
-            if whole.noise < fit.noise:
+            filled = [n for n in places if n <= whole.amplitudes.size]
+            if whole.noise < fit.noise and _locked(series, whole, filled):
                 return whole
     return fit
+
+
+def _locked(series: Series, fit: HarmonicFit, places: list[int]) -> bool:
+    """Whether the lines at some harmonics really lie there: a line beside its place leaves a line behind."""
+    now = spectrum(_longest_run(_without(series, [fit])), series.sample_rate)
+    noise = now.noise_power()
+    for number in places:
+        middle, reach = number * fit.frequency, 2 * now.resolution
+        line = now.strongest_line(middle - reach, middle + reach, noise)
+        if line is not None and line[1] > 0.05 * abs(fit.amplitudes[number - 1]):
+            return False
+    return True
 
 
 def _merge_related(series: Series, families: list[HarmonicFit]) -> list[HarmonicFit]:

@@ -7,7 +7,6 @@ from collections.abc import Callable
 import numpy as np
 import numpy.typing as npt
 
-from flicker.light import ComplexArray
 from flicker.trace import FloatArray
 
 BAND = (80.0, 2000.0)  # lines that count, both ends included [Hz]; IEC TR 63158:2018 (from memory)
@@ -67,8 +66,8 @@ def power_law_threshold(frequency: npt.ArrayLike) -> FloatArray:
 
 
 def stroboscopic_visibility(
-    frequencies: FloatArray,
-    amplitudes: ComplexArray | FloatArray,
+    frequencies: npt.ArrayLike,
+    amplitudes: npt.ArrayLike,
     threshold: Callable[[FloatArray], FloatArray] = sine_threshold,
 ) -> float:
     r"""
@@ -76,9 +75,9 @@ def stroboscopic_visibility(
 
     Parameters
     ----------
-    frequencies : ndarray, shape (k,)
+    frequencies : array_like, shape (k,)
         [Hz]
-    amplitudes : ndarray, shape (k,)
+    amplitudes : array_like, shape (k,)
         Peak amplitudes relative to the mean.
     threshold : callable
         `sine_threshold`, or `power_law_threshold` for comparison.
@@ -99,6 +98,7 @@ def stroboscopic_visibility(
     >>> round(stroboscopic_visibility(np.array([100.0]), np.array([1.0])), 4)
     3.902
     """
-    inside = (frequencies >= BAND[0]) & (frequencies <= BAND[1])
-    ratios = np.abs(amplitudes[inside]) / threshold(frequencies[inside])
+    places, heights = np.asarray(frequencies, dtype=float), np.abs(np.asarray(amplitudes))
+    inside = (places >= BAND[0]) & (places <= BAND[1])
+    ratios = heights[inside] / threshold(places[inside])
     return float(np.sum(ratios**EXPONENT) ** (1.0 / EXPONENT))
