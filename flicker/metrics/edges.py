@@ -13,7 +13,7 @@ from flicker.signal.cycle import Cycle
 from flicker.signal.edges import between, decay_tail, smoothed_rise
 from flicker.trace import FloatArray
 
-_MOST_BETWEEN = 0.36  # of the cycle that light with edges may spend between its ends; a sine spends 0.38
+_MOST_BETWEEN = 0.45  # of the cycle that light with edges may spend between its ends; a sine spends 0.57
 _VAGUE = 0.25  # half of the interval of a decay time, over the time
 _FEWEST_BINS = 3.0  # that an edge must fill
 _NOISIEST = 0.033  # standard error of a bin, over the swing
@@ -41,7 +41,7 @@ def rise_time(cycle: Cycle) -> Measure:
 
     Notes
     -----
-    The ends are the medians of what lies above and below the middle of the swing; of several rises the steepest
+    The ends are outer quantiles of what lies above and below the middle of the swing; of several rises the steepest
     counts. Cycles are laid over each other, so that edges may be shorter than the sample interval where the rate is
     no multiple of the frequency. A frequency that wanders smears the edge, and the sensor adds its own rise time of
     0.35 over its bandwidth, in squares.
