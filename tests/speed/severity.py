@@ -1,7 +1,7 @@
 """
 How long Pst LM of 180 s at 20 kHz takes, against one `sosfilt` of equal sections over the same samples.
 
-`python tests/speed/severity.py` prints the median of paired ratios; `pytest tests/speed/test_severity_speed.py` holds it.
+`python tests/speed/severity.py` prints the median of paired ratios; `pytest tests/speed` holds it against the bound.
 """
 
 from __future__ import annotations
