@@ -9,6 +9,7 @@ from typing import Any
 
 from flicker import __version__, readers
 from flicker.conditioning import condition
+from flicker.conditioning.detector import undo_detector
 from flicker.light import ChannelLight, Light
 from flicker.limits import Conditions, Limit, RiskRegion, Verdict, chosen_limits, judge, risk_region
 from flicker.metrics import Observation, evaluate
@@ -29,7 +30,7 @@ def read(path: str | Path, **options: Any) -> Capture:
     **options
         The options of the command line as keywords: those of `flicker.readers.read` (`sample_rate`, `columns`,
         `time_column`, `channels`, `frame_rate`, ...) and of `flicker.conditioning.condition` (`dark_level`,
-        `dark_capture` as a path, `mean`, `dc_coupled`, `inverted`, `start`, `duration`).
+        `dark_capture` as a path, `mean`, `dc_coupled`, `inverted`, `start`, `duration`), and `detector_bandwidth` [Hz].
 
     Returns
     -------
@@ -44,7 +45,11 @@ def read(path: str | Path, **options: Any) -> Capture:
     conditions = {name: options.pop(name) for name in _CONDITIONS if name in options}
     if isinstance(conditions.get("dark_capture"), str | Path):
         conditions["dark_capture"] = readers.read(conditions["dark_capture"], **options)
-    return condition(readers.read(path, **options), **conditions)
+    bandwidth = options.pop("detector_bandwidth", None)
+    capture = condition(readers.read(path, **options), **conditions)
+    if bandwidth is None:
+        return capture
+    return replace(capture, traces=tuple(undo_detector(trace, bandwidth) for trace in capture.traces))
 
 
 def measure(*captures: Capture, clock_ppm: float = 0.0, dark_uncertainty: float = 0.0) -> Report:
