@@ -15,7 +15,7 @@ def percent(trace):
 
 
 def test_a_pulse_behind_one_pole_reads_as_the_pulse():
-    """A pole of 1 kHz lets a PWM of 4 kHz, 10 % duty, read 60.9 % (derived, checked numerically); the truth is 100 %."""
+    """A pole of 1 kHz lets a PWM of 4 kHz, 10 % duty, read 60.9 % (derived); the truth is 100 %."""
     behind = waveforms.pwm(4003.7, 0.1, decay=1 / (2 * np.pi * 1000.0))
     slow = waveforms.sampled(behind.at, sample_rate=200e3, duration=0.2, noise=0.001, seed=1)
     assert percent(slow).value == pytest.approx(60.9, abs=0.5)
