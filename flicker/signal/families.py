@@ -14,6 +14,7 @@ from flicker.trace import FloatArray
 
 _MOST_FAMILIES = 6
 _MOST_DIVISOR = 8
+_EXCERPT = 1 << 19  # samples that settle the octave
 _ROUNDS = 2  # in which each family is fitted beside the others
 _FEWEST_CYCLES = 1.5
 _FEWEST_CYCLES_BELOW = 3.0  # of a fundamental below the strongest line: fewer could be drift
@@ -59,7 +60,6 @@ def find_families(series: Series) -> Search:
     lowest = _FEWEST_CYCLES * first.resolution
     families: list[HarmonicFit] = []
     left, now = series, first
-    floor = float(np.sqrt(np.quantile(first.noise_power(), 0.5) * np.log(first.amplitudes.size * 1e3)))
     for _ in range(_MOST_FAMILIES):
         line = _next_line(now, lowest, series.sample_rate / 2, families)
         if line is None:
@@ -71,13 +71,12 @@ def find_families(series: Series) -> Search:
         families = _merge_related(series, families)
         left = _without(series, families)
         now = spectrum(_longest_run(left), series.sample_rate)
-        floor = float(np.sqrt(np.quantile(now.noise_power(), 0.5) * np.log(now.amplitudes.size * 1e3)))
     for _ in range(_ROUNDS if len(families) > 1 else 0):
         for place, fit in enumerate(families):
             rest = families[:place] + families[place + 1 :]
             families[place] = fit_harmonics(_without(series, rest), fit.frequency)
     families.sort(key=lambda fit: -_strength(fit))
-    return Search(tuple(families), floor, first)
+    return Search(tuple(families), now.floor, first)
 
 
 def _longest_run(series: Series) -> FloatArray:
@@ -101,27 +100,29 @@ def _without(series: Series, families: Sequence[HarmonicFit]) -> Series:
 
 def _next_line(now: Spectrum, lowest: float, highest: float, families: list[HarmonicFit]) -> tuple[float, float] | None:
     """Find the strongest line that is neither left over from a family's harmonics nor lost among their aliases."""
-    amplitudes, noise = now.amplitudes.copy(), now.noise_power()
+    skip = []
     for fit in families:
         reach = 3.0 * now.resolution + 3.0 * fit.frequency_error
         for number in range(1, min(int(highest / fit.frequency), 200) + 1):
             middle = number * fit.frequency
-            a, b = int((middle - reach) / now.spacing), int((middle + reach) / now.spacing) + 2
-            amplitudes[max(a, 0) : b] = 0.0
-    line = replace(now, amplitudes=amplitudes).strongest_line(lowest, highest, noise)
+            skip.append(slice(max(int((middle - reach) / now.spacing), 0), int((middle + reach) / now.spacing) + 2))
+    line = now.strongest_line(lowest, highest, skip)
     unmodelled = max((2.0 * fit.unresolved for fit in families), default=0.0)
     return line if line is not None and line[1] > unmodelled else None
 
 
 def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicFit:
     """Where the strongest line is a harmonic, go down to the fundamental that fills the places between."""
+    part = series.excerpt(_EXCERPT)
     for divisor in (2, 3, 4, 5):
         fundamental = fit.frequency / divisor
         if fundamental < _FEWEST_CYCLES_BELOW * now.resolution:
             break
         places = [n for n in range(1, 2 * divisor) if n % divisor]
         places = [n for n in places if n * fundamental < series.sample_rate / 2]
-        lower = fit_harmonics(series, fundamental, harmonics=2 * divisor)
+        if not _hinted(now, [n * fundamental for n in places]):
+            continue
+        lower = fit_harmonics(part, fundamental, harmonics=2 * divisor)
         if abs(lower.frequency - fundamental) > 4 * (lower.frequency_error + fit.frequency_error / divisor):
             continue
         if lower.amplitudes.size < 2 * divisor:
@@ -136,13 +137,19 @@ def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicF
     return fit
 
 
+def _hinted(now: Spectrum, frequencies: list[float]) -> bool:
+    """Whether the spectrum holds more than noise would leave at a third of some places."""
+    bins = np.rint(np.array(frequencies) / now.spacing).astype(int)
+    tops = np.max([now.amplitudes[bins + step] for step in (-1, 0, 1)], axis=0)
+    return bool(np.count_nonzero(tops**2 > 3 * now.noise_power(bins)) * 3 >= bins.size)
+
+
 def _locked(series: Series, fit: HarmonicFit, places: list[int]) -> bool:
     """Whether the lines at some harmonics really lie there: a line beside its place leaves a line behind."""
     now = spectrum(_longest_run(_without(series, [fit])), series.sample_rate)
-    noise = now.noise_power()
     for number in places:
         middle, reach = number * fit.frequency, 2 * now.resolution
-        line = now.strongest_line(middle - reach, middle + reach, noise)
+        line = now.strongest_line(middle - reach, middle + reach)
         if line is not None and line[1] > 0.05 * abs(fit.amplitudes[number - 1]):
             return False
     return True

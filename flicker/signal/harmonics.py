@@ -16,6 +16,8 @@ _BINS = 1 << 15  # of phase; a harmonic k then loses 1 - sinc(k / bins), under 1
 _MOST_HARMONICS = 2048
 _CHUNK = 1 << 18
 _BLOCKS = 64  # of time, for the spread of the residuals
+_SURE = 0.05  # cycles of the highest harmonic by which a fit of an excerpt may be off at the ends of the whole
+_EXCERPT = 1 << 19  # samples that say how many harmonics there are, before all of them are asked
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -44,6 +46,18 @@ class Series:
                     slice(begin, end),
                     np.arange(begin - first, end - first) / self.sample_rate + (start - self.centre),
                 )
+
+    def excerpt(self, samples: int) -> Series:
+        """At most so many samples in a row, from the middle of the series; segments stay apart."""
+        if samples >= self.values.size:
+            return self
+        begin = (self.values.size - samples) // 2
+        runs = [
+            (max(first, begin), min(last, begin + samples), start + (max(first, begin) - first) / self.sample_rate)
+            for first, last, start in _runs(self.values.size, self.segments)
+        ]
+        segments = [Segment(first - begin, start) for first, last, start in runs if last > first]
+        return Series.of(self.values[begin : begin + samples], self.sample_rate, segments)
 
     @property
     def span(self) -> float:
@@ -202,13 +216,24 @@ def fit_harmonics(
     (IEEE Trans. Inf. Theory 20 (1974) 591). Harmonics above the Nyquist frequency count too: sampled light holds them
     as aliases, at places that the phase of each sample tells.
     """
-    offset = float(series.values.mean())
-    total_power = float(sum(np.square(series.values[part] - offset).sum() for part, _ in series.chunks()))
     most = min(most, max(128, int(series.sample_rate / (2 * frequency))))
-    best = latest = _fit(series, frequency, harmonics or 1, offset, total_power)
-    wanted, idle = 3, 0
-    while harmonics is None and idle < 2:
-        latest = _fit(series, latest.frequency, min(wanted, most), offset, total_power)
+    if harmonics is not None:
+        return _with_robust_error(series, _Fitting(series).fit(frequency, harmonics, _BINS))
+    part = series.excerpt(_EXCERPT)
+    best = _climb(_Fitting(part), frequency, (1, 3), most)
+    whole = _Fitting(series)
+    if part is not series:
+        first = 1 if best.frequency_error * series.span * best.amplitudes.size > _SURE else best.amplitudes.size
+        best = _climb(whole, frequency if first == 1 else best.frequency, (first, best.amplitudes.size), most)
+    return _with_robust_error(series, whole.fit(best.frequency, best.amplitudes.size, _BINS))
+
+
+def _climb(fitting: _Fitting, frequency: float, first: tuple[int, int], most: int) -> HarmonicFit:
+    """Double the number of harmonics as long as those added carry significant energy, or the next ones do."""
+    best = latest = fitting.fit(frequency, first[0], _bins(first[0]))
+    wanted, idle = first[1] * (2 if first[0] == first[1] else 1), 0
+    while idle < 2:
+        latest = fitting.fit(latest.frequency, min(wanted, most), _bins(wanted))
         if latest.amplitudes.size <= best.amplitudes.size:
             break
         if _worth_it(best, latest):
@@ -218,32 +243,45 @@ def fit_harmonics(
         if latest.amplitudes.size < wanted:
             break
         wanted *= 2
-    return _with_robust_error(series, best)
+    return best
 
 
-def _fit(series: Series, frequency: float, harmonics: int, offset: float, total_power: float) -> HarmonicFit:
-    """Gauss-Newton with a fixed number of harmonics, fewer where the phases that were seen cannot tell so many."""
-    bins = _BINS if harmonics > 32 or series.values.size < 4096 else 1 << 13
-    for _ in range(6 if harmonics < 3 else 4):
-        binned = _bin_by_phase(series, frequency, offset, bins)
-        gap = longest_gap(binned.count)
-        allowed = max(1, min(harmonics, int(0.45 / gap) if gap > 0 else harmonics, series.values.size // 4))
-        coefficients = _solve(binned.count, binned.value, allowed)
-        step, error, left = _newton_step(binned, coefficients, total_power)
-        noise = (max(left, 0.0) / max(series.values.size - 2 * allowed - 2, 1)) ** 0.5
-        frequency += float(np.clip(step, -0.5 / series.span, 0.5 / series.span) / max(1.0, allowed / 32))
-        if abs(step) < 0.02 * error * noise or abs(step) * series.span < 1e-9:
-            break
-    return HarmonicFit(
-        frequency,
-        error * noise,
-        offset + float(coefficients[0].real),
-        2.0 * coefficients[1:],
-        noise,
-        series.values.size,
-        series.centre,
-        gap,
-    )
+def _bins(harmonics: int) -> int:
+    """Bins of phase that are enough for some harmonics while their number is sought."""
+    return int(min(_BINS, max(1 << 12, 1 << int(np.ceil(np.log2(64 * harmonics))))))
+
+
+class _Fitting:
+    """A series about to be fitted; its mean and power are taken once."""
+
+    def __init__(self, series: Series) -> None:
+        self.series = series
+        self.offset = float(series.values.mean())
+        self.power = float(sum(np.square(series.values[part] - self.offset).sum() for part, _ in series.chunks()))
+
+    def fit(self, frequency: float, harmonics: int, bins: int) -> HarmonicFit:
+        """Gauss-Newton with a fixed number of harmonics, fewer where the phases that were seen cannot tell so many."""
+        series = self.series
+        for _ in range(6 if harmonics < 3 else 4):
+            binned = _bin_by_phase(series, frequency, self.offset, bins)
+            gap = longest_gap(binned.count)
+            allowed = max(1, min(harmonics, int(0.45 / gap) if gap > 0 else harmonics, series.values.size // 4))
+            coefficients = _solve(binned.count, binned.value, allowed)
+            step, error, left = _newton_step(binned, coefficients, self.power)
+            noise = (max(left, 0.0) / max(series.values.size - 2 * allowed - 2, 1)) ** 0.5
+            frequency += float(np.clip(step, -0.5 / series.span, 0.5 / series.span) / max(1.0, allowed / 32))
+            if abs(step) < 0.02 * error * noise or abs(step) * series.span < 1e-9:
+                break
+        return HarmonicFit(
+            frequency,
+            error * noise,
+            self.offset + float(coefficients[0].real),
+            2.0 * coefficients[1:] / np.sinc(np.arange(1, allowed + 1) / bins),
+            noise,
+            series.values.size,
+            series.centre,
+            gap,
+        )
 
 
 def _with_robust_error(series: Series, fit: HarmonicFit) -> HarmonicFit:
