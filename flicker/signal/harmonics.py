@@ -16,6 +16,7 @@ _BINS = 1 << 15  # of phase; a harmonic k then loses 1 - sinc(k / bins), under 1
 _MOST_HARMONICS = 2048
 _CHUNK = 1 << 18
 _BLOCKS = 64  # of time, for the spread of the residuals
+_MANY = 1 << 20  # samples from which on pieces of them share a time
 _SURE = 0.05  # cycles of the highest harmonic by which a fit of an excerpt may be off at the ends of the whole
 _EXCERPT = 1 << 19  # samples that say how many harmonics there are, before all of them are asked
 
@@ -37,15 +38,17 @@ class Series:
             weighted += (last - first) * (start + 0.5 * (last - first - 1) / sample_rate)
         return cls(values, sample_rate, segments, weighted / values.size)
 
+    def pieces(self, most: int = _CHUNK) -> Iterator[tuple[slice, float]]:
+        """Pieces of at most so many samples: where they lie, and the time of their first sample from the centre [s]."""
+        for first, last, start in _runs(self.values.size, self.segments):
+            for begin in range(first, last, most):
+                part = slice(begin, min(begin + most, last))
+                yield part, (begin - first) / self.sample_rate + (start - self.centre)
+
     def chunks(self) -> Iterator[tuple[slice, FloatArray]]:
         """Pieces of at most 2**18 samples: where they lie, and their times from the centre [s]."""
-        for first, last, start in _runs(self.values.size, self.segments):
-            for begin in range(first, last, _CHUNK):
-                end = min(begin + _CHUNK, last)
-                yield (
-                    slice(begin, end),
-                    np.arange(begin - first, end - first) / self.sample_rate + (start - self.centre),
-                )
+        for part, begin in self.pieces():
+            yield part, np.arange(part.stop - part.start) / self.sample_rate + begin
 
     def excerpt(self, samples: int) -> Series:
         """At most so many samples in a row, from the middle of the series; segments stay apart."""
@@ -83,14 +86,27 @@ class _Binned:
 
 
 def _bin_by_phase(series: Series, frequency: float, offset: float, bins: int) -> _Binned:
+    """Sum by phase; `bins` is a power of two. Many samples are weighted with the time of their piece, not their own."""
+    many = series.values.size >= _MANY
+    length = series.values.size // (2 * _BLOCKS) if many else _CHUNK
+    ramp = np.arange(min(length, series.values.size), dtype=float)
+    turns, seconds = ramp * (frequency * bins / series.sample_rate), ramp / series.sample_rate
     sums = np.zeros((5, bins))
-    for part, times in series.chunks():
-        values = series.values[part] - offset
-        phase = times * frequency
-        phase -= np.floor(phase)
-        index = np.minimum((phase * bins).astype(np.intp), bins - 1)
-        for row, weights in zip(sums, (None, values, times, times * times, values * times), strict=True):
-            row += np.bincount(index, weights, minlength=bins)
+    for part, begin in series.pieces(length):
+        size = part.stop - part.start
+        index = (turns[:size] + (begin * frequency) % 1.0 * bins).astype(np.intp)
+        index &= bins - 1
+        values = series.values[part]
+        if many:
+            time = begin + 0.5 * (size - 1) / series.sample_rate
+            count = np.bincount(index, minlength=bins)
+            value = np.bincount(index, values, minlength=bins) - offset * count
+            for row, added in zip(sums, (count, value, time * count, time**2 * count, time * value), strict=True):
+                row += added
+        else:
+            times, values = seconds[:size] + begin, values - offset
+            for row, weights in zip(sums, (None, values, times, times * times, values * times), strict=True):
+                row += np.bincount(index, weights, minlength=bins)
     return _Binned(*sums)
 
 

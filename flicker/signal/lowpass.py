@@ -16,6 +16,7 @@ from flicker.trace import FloatArray
 
 _POINTS = 61.8  # a cycle of the cut-off frequency; no whole number, so that periodic light is met in every phase
 _MOST_POINTS = 1 << 21
+_FAST_ENOUGH = 100e3  # rate at which light below 1 kHz is kept [Hz]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -35,9 +36,12 @@ class LeftOver:
         Transform a signal from which all families were taken off; it must have no gap.
 
         A cosine transform goes on mirrored at both ends, so that a drift does not ring where the end meets the start.
+        Samples far faster than any cut are averaged in groups first: a line at 1 kHz loses at most 0.02 %.
         """
-        values = series.values - series.values.mean()
-        return cls(scipy.fft.dct(values, type=2) / values.size, values.size / series.sample_rate)
+        group = max(int(series.sample_rate / _FAST_ENOUGH), 1)
+        values = series.values[: series.values.size // group * group].reshape(-1, group).mean(axis=1)
+        values -= values.mean()
+        return cls(scipy.fft.dct(values, type=2) / values.size, values.size * group / series.sample_rate)
 
     def below(self, cut: float, least: float = 0.0) -> tuple[FloatArray, float]:
         """
