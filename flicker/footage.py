@@ -41,6 +41,10 @@ class Footage:
     lines_of_frame: int = 0  # lines of the whole picture
     code_step: float = 1 / 219  # one code value of the file, nominal white is 1
     transfer: str = "bt709"
+    matrix: str = "bt709"
+    full_range: bool = False
+    lossless: bool = True
+    alone: npt.NDArray[np.bool_] | None = None  # frames that are coded without others, shape (t,); None: all
     path: Path | None = None
     sha256: str | None = None
     notes: tuple[Note, ...] = ()

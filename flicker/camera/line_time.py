@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from flicker.camera.sensor import Camera
-from flicker.camera.stripes import find_bands
+from flicker.camera.stripes_found import find_bands
 from flicker.errors import NotMeasurable
 from flicker.footage import Footage
 from flicker.results import Measure, Note

@@ -10,25 +10,20 @@ import numpy as np
 import numpy.typing as npt
 import scipy.fft
 
-from flicker.camera.stripes import find_bands
+from flicker.camera.stripes_found import find_bands
 from flicker.errors import NotMeasurable
 from flicker.footage import Footage
 from flicker.results import Note
 from flicker.signal.stripes_fit import Rows, StripeFit, fit_at
-from flicker.signal.stripes_shape import (
-    Harmonics,
-    duty_of,
-    extremes,
-    fit_pulse,
-    is_rectangle,
-    pulse_loss,
-    undo_exposure,
-)
+from flicker.signal.stripes_free import extremes, undo_exposure
+from flicker.signal.stripes_shape import Harmonics, duty_of, fit_pulse, is_rectangle, pulse_loss
 from flicker.trace import FloatArray
 
 _DARK = 0.04  # of the brightest cell: below this a cell is dark
 _FAST = 90.0  # frame rate from which frames alone follow a light [Hz]
 _DEPTH, _DUTY, _PHASE = 12.0, 0.05, 0.04  # by how much neighbours of one zone may differ [%, 1, cycles]
+_CODED = 0.003  # of the strongest harmonic of a cell: what coding does to every other one
+_FAINT = 0.2  # amplitude over the mean up to which coding erases some of it
 _SAME = 0.01  # relative difference of frequency within a zone
 
 
@@ -243,6 +238,12 @@ def _fit(cells: _Cells, place: Any, frequency: float) -> StripeFit:
     return fit_at(cells.rows(*place), frequency, turns, frame_rate=limit)
 
 
+def _harmonics(fit: StripeFit) -> Harmonics:
+    """Harmonics of a cell with what coding does to them: a share of the strongest, and faint bands erased."""
+    strongest = float(np.abs(fit.amplitudes).max())
+    return Harmonics.of(fit, (_CODED * strongest) ** 2 + (_CODED * math.exp(-strongest / _FAINT)) ** 2)
+
+
 def _likeliest_exposure(cells: _Cells, frequencies: FloatArray) -> float:
     """Exposure with which pulses fit the brightest flickering cells best. [s]"""
     level = np.where(np.isfinite(frequencies), cells.mean, 0.0)
@@ -252,7 +253,7 @@ def _likeliest_exposure(cells: _Cells, frequencies: FloatArray) -> float:
         if level[place] > 0:
             fit = _fit(cells, place, float(frequencies[place]))
             if fit.amplitudes.size:
-                seen.append(Harmonics.of(fit, float(np.abs(fit.amplitudes).max())))
+                seen.append(_harmonics(fit))
     exposures = np.linspace(0.05, 1.0, 20) / cells.footage.frame_rate
     losses = [sum(pulse_loss(one, float(exposure)) for one in seen) for exposure in exposures]
     return float(exposures[int(np.argmin(losses))])
@@ -269,7 +270,7 @@ def _measure(cells: _Cells, place: Any, frequency: float, exposure: float, grids
         grids["depth"][place] = 0.0
         return
     grids["frequency"][place] = frequency
-    seen = Harmonics.of(fit, float(np.abs(fit.amplitudes).max()))
+    seen = _harmonics(fit)
     depth, duty, phase = _shape(seen, fit, exposure)
     # phases count from the middle of the footage and of the cell: back to the first line of the picture
     lag = turns * cells.number(place[0])

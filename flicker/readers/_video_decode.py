@@ -17,6 +17,8 @@ from flicker.trace import FloatArray
 _TRANSFER_TAGS = {1: "bt709", 4: "2.2", 5: "2.8", 6: "bt709", 8: "linear", 13: "srgb", 14: "bt709", 15: "bt709"}
 _TRANSFER_TAGS |= {16: "pq", 18: "hlg"}  # ITU-T H.273
 _MATRIX_TAGS = {1: "bt709", 4: "bt601", 5: "bt601", 6: "bt601", 7: "smpte240m", 9: "bt2020", 10: "bt2020"}
+_LOSSLESS = {"ffv1", "huffyuv", "ffvhuff", "utvideo", "magicyuv", "lagarith", "png", "rawvideo", "v210", "v410", "r210"}
+_ALONE = 1  # picture type of a frame that is coded without others
 _HIGH_DEFINITION = 720  # lines from which untagged video is taken as BT.709: common practice, no source
 
 
@@ -37,6 +39,7 @@ class VideoFile:
     broken: int = 0  # pieces that could not be decoded
     failure: str = ""  # what ended the reading too early
     stamps: list[int] = field(default_factory=list)  # of the frames handed out, in units of the time base
+    alone: list[bool] = field(default_factory=list)  # which of them are coded without others
 
     def __enter__(self) -> VideoFile:
         import av
@@ -99,6 +102,7 @@ class VideoFile:
                     self._remember(frame)
                 stamp = frame.pts if frame.pts is not None else (self.stamps[-1] + step if self.stamps else 0)
                 self.stamps.append(int(stamp))
+                self.alone.append(int(frame.pict_type) == _ALONE)
                 yield frame
 
     def _remember(self, frame: Any) -> None:
@@ -109,6 +113,11 @@ class VideoFile:
             "pixel_format": frame.format.name,
             "rotation_deg": int(frame.rotation or 0),
         }
+
+    @property
+    def lossless(self) -> bool:
+        """Whether the codec keeps every code value."""
+        return self.stream.codec_context.name in _LOSSLESS
 
     @property
     def stated_rate(self) -> float | None:

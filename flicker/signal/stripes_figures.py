@@ -9,7 +9,8 @@ import scipy.fft
 
 from flicker.light import ComplexArray, Pulse
 from flicker.results import Measure
-from flicker.signal.stripes_shape import FreeShape, Harmonics, PulseShape, extremes, low_level_of
+from flicker.signal.stripes_free import FreeShape, extremes
+from flicker.signal.stripes_shape import PulseShape, low_level_of
 from flicker.signal.stroboscopic import stroboscopic_visibility
 from flicker.trace import FloatArray
 
@@ -29,7 +30,7 @@ class Samples:
     pulse: Pulse | None = None  # with its own origin of phase
 
     @classmethod
-    def of(cls, shape: PulseShape | FreeShape, seen: Harmonics, *, seed: int, count: int = _DRAWS) -> Samples:
+    def of(cls, shape: PulseShape | FreeShape, frequency: float, *, seed: int, count: int = _DRAWS) -> Samples:
         """Draw waves from the covariance of a shape."""
         rng = np.random.default_rng(seed)
         if isinstance(shape, FreeShape):
@@ -40,30 +41,22 @@ class Samples:
                 waves.append(extremes(shape.numbers, drawn)[2][:: 4096 // _GRID])
             method = f"{shape.numbers.size} harmonics with the exposure undone"
             return cls(np.array(waves), np.full(count + 1, np.nan), method, shape.blind_bound)
-        best = np.array([shape.duty, shape.share, shape.middle])
-        draws = (
-            rng.multivariate_normal(best, np.array(shape.covariance), count, method="svd")
-            if count
-            else np.empty((0, 3))
-        )
-        if count and len(shape.duties) > 3:  # the best one has far neighbours: draw among all
-            chances = np.array([chance for *_, chance in shape.duties])
-            chosen = rng.choice(len(chances), count, p=chances / chances.sum())
-            offset = draws[:, 1] - shape.share if shape.covariance[1][1] < 0.01 else 0.0
-            draws[:, 0] = np.array(shape.duties)[chosen, 0]
-            draws[:, 1] = np.array(shape.duties)[chosen, 1] + offset
-        draws = np.vstack([best, draws])
-        draws[:, 0] = np.clip(draws[:, 0], 2e-3, 0.998)
-        draws[:, 1] = np.clip(draws[:, 1], 1e-6, 1.0)
-        decays = np.maximum(shape.decay + shape.decay_error * np.r_[0.0, rng.standard_normal(count)], 0.0)
+        chosen = rng.choice(shape.duties.size, count, p=shape.chances) if count else np.empty(0, dtype=int)
+        duties = np.r_[shape.duty, shape.duties[chosen]]
+        drawn = _between(shape.shares[chosen], shape.share_errors[chosen], rng.random(count))
+        drawn = np.where(rng.random(count) < shape.out[chosen], 1.0, drawn)
+        shares = np.clip(np.r_[shape.share, drawn], 1e-6, 1.0)
+        noise = rng.standard_normal(count)
+        down, up = shape.decay_errors
+        decays = np.r_[shape.decay, np.maximum(shape.decay + np.where(noise > 0, up, down) * noise, 0.0)]
         edges = np.arange(_GRID + 1) / _GRID
         waves = [
-            np.diff(_pulse(seen.frequency, d, b, t).integral(edges - m + d / 2)) * _GRID
-            for (d, b, m), t in zip(draws, decays, strict=True)
+            np.diff(_pulse(frequency, d, b, t).integral(edges - shape.middle + d / 2)) * _GRID
+            for d, b, t in zip(duties, shares, decays, strict=True)
         ]
         method = "rectangular pulse" + (" behind a slow emitter" if shape.decay else "") + ", exposure undone"
-        pulse = _pulse(seen.frequency, shape.duty, shape.share, shape.decay)
-        return cls(np.array(waves), draws[:, 0] if not shape.decay else np.full(count + 1, np.nan), method, 0.0, pulse)
+        pulse = _pulse(frequency, shape.duty, shape.share, shape.decay)
+        return cls(np.array(waves), duties if not shape.decay else np.full(count + 1, np.nan), method, 0.0, pulse)
 
     @classmethod
     def mixed(cls, parts: list[Samples], shares: list[float]) -> Samples:
@@ -87,9 +80,25 @@ def _pulse(frequency: float, duty: float, share: float, decay: float) -> Pulse:
     return Pulse(frequency, float(duty), float(np.clip(low_level_of(duty, share), 0.0, 1.0)), float(decay))
 
 
+def _between(means: FloatArray, errors: FloatArray, ranks: FloatArray) -> FloatArray:
+    """Draws from normal distributions cut off at 0 and 1, by their ranks, each of shape (d,)."""
+    from scipy.special import ndtr, ndtri
+
+    low, high = ndtr(-means / errors), ndtr((1 - means) / errors)
+    found = means + errors * ndtri(low + ranks * (high - low))
+    return np.clip(np.where(np.isfinite(found), found, means), 0.0, 1.0)
+
+
 def _percent(waves: FloatArray) -> FloatArray:
     high, low = waves.max(axis=1), waves.min(axis=1)
     return np.asarray(100 * (high - low) / np.maximum(high + low, 1e-12))
+
+
+def _deeper(wave: FloatArray, bound: float) -> float:
+    """By how much percent flicker grows if crest and trough lie further apart by a bound each."""
+    high, low = float(wave.max()), float(wave.min())
+    low_end = max(low - bound, 0.0)
+    return 100 * ((high + bound - low_end) / (high + bound + low_end) - (high - low) / max(high + low, 1e-12))
 
 
 def _looser(percent: FloatArray, exponent: float) -> FloatArray:
@@ -99,7 +108,7 @@ def _looser(percent: FloatArray, exponent: float) -> FloatArray:
 
 
 def figures_of(
-    drawn: Samples, frequency: float, noise: float, dark_step: float, loose: float, alike: list[Samples]
+    drawn: Samples, frequency: float, dark_step: float, loose: float, alike: list[Samples]
 ) -> dict[str, Measure]:
     """
     Take the figures of a light with their intervals.
@@ -110,8 +119,6 @@ def figures_of(
         The light.
     frequency : float
         [Hz]
-    noise : float
-        Of one line over its level; for nothing but the method's words.
     dark_step : float
         Standard uncertainty of the dark level over the mean.
     loose : float
@@ -131,8 +138,9 @@ def figures_of(
     others = np.concatenate([one.waves[:1] for one in alike]) if alike else waves[:0]
 
     def measure(unit: str, values: FloatArray, beside: FloatArray, top: float, widen: float = 0.0) -> Measure:
-        low, early, late, high = np.quantile(values[1:], [0.025, 0.16, 0.84, 0.975])
-        best = float(values[0]) if early <= values[0] <= late else float(np.median(values[1:]))
+        low, high = np.quantile(values[1:], [0.025, 0.975])
+        # where it is open whether the light goes out, neither answer is the one to give
+        best = values[0] if abs(values[0] - values[1:].mean()) < 0.25 * values[1:].std() else values[1:].mean()
         values = np.r_[best, values[1:]]
         low, high = (float(np.min([low, values[0], *beside])), float(np.max([high, values[0], *beside])))
         low, high = max(low * (1 - loose) - widen, 0.0), min(high * (1 + loose) + widen, top)
@@ -154,7 +162,7 @@ def figures_of(
     other_duties = np.array([one.duties[0] for one in alike if np.isfinite(one.duties[0])])
     bound = drawn.bound
     measures = {
-        "percent_flicker": measure("%", depth, beside, 100.0, 100 * bound),
+        "percent_flicker": measure("%", depth, beside, 100.0, _deeper(waves[0], bound)),
         "flicker_index": measure("1", index, np.maximum(others - 1, 0).mean(axis=1), 1.0, bound),
         "rms_modulation": measure("%", rms, 100 * others.std(axis=1), np.inf, 100 * bound),
         "duty_cycle": measure("1", duties, other_duties, 1.0, bound),

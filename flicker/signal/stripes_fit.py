@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
+import numpy.typing as npt
 import scipy.fft
 import scipy.linalg
 
@@ -18,6 +19,8 @@ _MOST_HARMONICS = 80
 _HIGHEST_TURN = 0.4  # cycles a line that the highest harmonic may have
 STANDING = 0.9  # a harmonic whose phases over the frames agree better than this cannot be told from the scene
 _GROUPS = 10
+_FEWEST_BANDS = 1.2  # in a frame that is to show all phases of the light by itself
+_CLEARLY = 4.0  # mean square over its variance from which a change is believed
 _LIT = 0.03  # of the median level: darker lines are left out
 
 
@@ -64,6 +67,7 @@ class StripeFit:
     gain: FloatArray  # of each frame, shape (t,)
     noise: float  # standard deviation of one line about the fit, over its level
     contrast: float  # (max - min) / (max + min) of the bands
+    changed: float = 0.0  # largest change of an amplitude that frames coded without others brought
 
     def wave(self, size: int = _BINS) -> FloatArray:
         """One cycle at phases b / size, shape (size,)."""
@@ -216,8 +220,40 @@ class _Work:
             self.scene,
             self.gain,
             noise,
-            float((wave.max() - wave.min()) / (wave.max() + wave.min())),
+            _contrast(wave),
         )
+
+    def put_right(self, found: StripeFit, alone: npt.NDArray[np.bool_], always: bool) -> StripeFit:
+        """
+        Take the amplitudes from the frames that are coded without others, always or where these say something else.
+
+        Frames coded from others keep a faint band only where coding its change was worth the bits.
+        """
+        bands = abs(self.turns) * np.ptp(self.rows.numbers)
+        if alone.all() or not alone.any() or bands < _FEWEST_BANDS or not self.harmonics.size:
+            return found
+        bins, light = self.model()
+        left = (self.relative() - light)[alone]
+        weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
+        bins = bins[alone].ravel()
+        right = _right(bins, (weights * left).ravel(), self.harmonics)
+        step = _amplitudes(_gram(bins, weights.ravel(), self.harmonics), right)
+        errors = found.errors * np.sqrt(alone.size / alone.sum())
+        clear = np.abs(found.amplitudes) > 5 * errors
+        if not always and (not clear.any() or np.mean(np.abs(step / errors)[clear] ** 2) < 2 * _CLEARLY):
+            return found
+        amplitudes = found.amplitudes + step
+        return dataclasses.replace(
+            found,
+            amplitudes=amplitudes,
+            errors=errors,
+            changed=float(np.abs(step)[clear].max(initial=0.0)),
+            contrast=_contrast(evaluate(self.harmonics, amplitudes, _BINS)),
+        )
+
+
+def _contrast(wave: FloatArray) -> float:
+    return float((wave.max() - wave.min()) / (wave.max() + wave.min()))
 
 
 def _running_median(spread: FloatArray) -> FloatArray:
@@ -271,13 +307,26 @@ def _refined(work: _Work, rounds: int) -> StripeFit:
     return full.finish()
 
 
-def fit_wave(rows: Rows, known: StripeFit, *, rounds: int = 4) -> StripeFit:
-    """Fit the wave and the scene of another channel, with frequency, cycles a line and gain as known."""
+def fit_wave(
+    rows: Rows,
+    known: StripeFit,
+    *,
+    alone: npt.NDArray[np.bool_] | None = None,
+    always: bool = False,
+    rounds: int = 4,
+) -> StripeFit:
+    """
+    Fit the wave and the scene of another channel, with frequency, cycles a line and gain as known.
+
+    `alone` marks the frames that are coded without others, shape (t,): where they say something else, or `always`,
+    the amplitudes are theirs.
+    """
     work = _Work.begin(rows, known.frequency, known.turns_per_line)
     work.gain = known.gain
     for _ in range(rounds):
         work.update(clock=False)
-    return dataclasses.replace(work.finish(), frequency_error=known.frequency_error, turns_error=known.turns_error)
+    found = work.finish() if alone is None else work.put_right(work.finish(), alone, always)
+    return dataclasses.replace(found, frequency_error=known.frequency_error, turns_error=known.turns_error)
 
 
 def fit_at(

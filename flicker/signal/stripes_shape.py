@@ -1,29 +1,27 @@
-"""The light behind blurred harmonics: a rectangular pulse where one fits, else as many harmonics as are left."""
+"""The light behind blurred harmonics where it is a rectangular pulse, and the exposure that blurred them."""
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass
 
 import numpy as np
+import numpy.typing as npt
 import scipy.fft
-import scipy.optimize
 
 from flicker.light import ComplexArray
 from flicker.signal.stripes_fit import StripeFit
 from flicker.trace import FloatArray
 
-BLIND = 0.08  # what the exposure leaves of a harmonic: below this it is blind
-FLOOR = 0.003  # of the strongest harmonic: what compression does to every other one, whatever the noise
-CHROMA_FLOOR = 0.008  # the same for red and blue, which video codes more coarsely
-_FAINT = (0.003, 0.012)  # of the mean: what codecs erase of faint bands in luma, in colour; found on rendered clips
-_FAINT_UP_TO = 0.2  # amplitude over the mean at which bands stop being faint
 _DUTIES = np.concatenate(
     [np.geomspace(0.004, 0.1, 24, endpoint=False), np.linspace(0.1, 0.9, 41), 1 - np.geomspace(0.1, 0.01, 12)]
 )
-_PHASES = 1024
+_FINER_DUTIES = np.concatenate(
+    [np.geomspace(0.002, 0.05, 30, endpoint=False), np.linspace(0.05, 0.95, 181), 1 - np.geomspace(0.05, 0.002, 31)[1:]]
+)
+_NEAR = 25.0  # chi-square above the least one up to which a duty cycle is looked at more finely
+_MOST_DUTIES = 1000
+_PHASES = 2048
 _MUCH_WORSE = 4.0  # reduced chi-square above which no rectangle is believed
-_GRID = 4096
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -32,25 +30,29 @@ class Harmonics:
 
     numbers: FloatArray  # shape (k,)
     amplitudes: ComplexArray  # relative to the mean, shape (k,)
-    variances: FloatArray  # of the real part, floor included, shape (k,)
+    variances: FloatArray  # of the real part, what coding does included, shape (k,)
     frequency: float  # [Hz]
+    common: float = 0.0  # relative standard error that all amplitudes share
 
     @classmethod
-    def of(cls, fit: StripeFit, strongest: float, floor: float = FLOOR) -> Harmonics:
-        """Take them from a fit; `strongest` is the largest amplitude of any channel."""
-        erased = _FAINT[floor > FLOOR] * np.exp(-strongest / _FAINT_UP_TO)
-        variances = fit.errors**2 + (floor * strongest) ** 2 + erased**2
-        return cls(fit.harmonics, fit.amplitudes, variances, fit.frequency)
+    def of(cls, fit: StripeFit, coding: FloatArray | float, common: float = 0.0) -> Harmonics:
+        """Take them from a fit; `coding` is the variance that coding leaves."""
+        return cls(fit.harmonics, fit.amplitudes, fit.errors**2 + coding, fit.frequency, common)
+
+    @property
+    def clear(self) -> npt.NDArray[np.bool_]:
+        """Which stand out of their errors, shape (k,)."""
+        return np.asarray(np.abs(self.amplitudes) > 3.0 * np.sqrt(self.variances))
 
     def left_by(self, exposure: float) -> FloatArray:
         """What an exposure [s] leaves of each harmonic, signed, shape (k,)."""
         return np.sinc(self.numbers * self.frequency * exposure)
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class PulseShape:
     """
-    A rectangular pulse: duty, modulated share B of the mean, phase of its middle; covariance in that order.
+    A rectangular pulse: duty, modulated share B of the mean, phase of its middle, and what else fits.
 
     B is (1 - low) D / (low + (1 - low) D): 1 for light that goes out. The harmonics of the light are
     `2 B sinc(h D) exp(-2j pi h middle)`, behind an emitter of decay time tau divided by `1 + 2j pi h f tau`.
@@ -59,22 +61,20 @@ class PulseShape:
     duty: float
     share: float
     middle: float  # [cycles]
-    covariance: tuple[tuple[float, ...], ...]
     chi_square: float  # per degree of freedom
     exposure: float  # [s]
+    duties: FloatArray  # all that fit, shape (d,)
+    shares: FloatArray  # best share for each; above 1 where noise says so, shape (d,)
+    share_errors: FloatArray  # standard error for each, shape (d,)
+    chances: FloatArray  # probability of each, shape (d,)
+    out: FloatArray  # probability for each that the light goes out, shape (d,)
     decay: float = 0.0  # [s]
-    decay_error: float = 0.0
-    duties: tuple[tuple[float, float, float], ...] = ()  # duty, share and probability of all that fit
+    decay_errors: tuple[float, float] = (0.0, 0.0)  # standard errors downward and upward [s]
 
     @property
     def low_level(self) -> float:
         """Off level over on level."""
         return low_level_of(self.duty, self.share)
-
-    def amplitudes(self, numbers: FloatArray, frequency: float) -> ComplexArray:
-        """Harmonics of the light before the exposure, shape (k,)."""
-        drive = 2.0 * self.share * np.sinc(numbers * self.duty) * np.exp(-2j * np.pi * numbers * self.middle)
-        return np.asarray(drive / (1.0 + 2j * np.pi * numbers * frequency * self.decay))
 
 
 def low_level_of(duty: float, share: float) -> float:
@@ -82,84 +82,121 @@ def low_level_of(duty: float, share: float) -> float:
     return duty * (1.0 - share) / (share * (1.0 - duty) + duty)
 
 
-def _coarse(seen: Harmonics, exposure: float) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Best share, phase and loss (chi-square less that of nothing) for each duty of the grid, each of shape (d,)."""
-    left = seen.left_by(exposure)
-    weights = 1.0 / seen.variances
-    kernels = 2.0 * np.sinc(np.outer(_DUTIES, seen.numbers)) * left
-    spectrum = np.zeros((_DUTIES.size, _PHASES // 2 + 1), dtype=complex)
-    spectrum[:, seen.numbers.astype(int)] = weights * kernels * seen.amplitudes
-    match = scipy.fft.irfft(spectrum, _PHASES, axis=1) * (_PHASES / 2)
-    strength = (weights * kernels**2).sum(axis=1)
-    phase = match.argmax(axis=1)
-    best = match[np.arange(_DUTIES.size), phase]
-    share = np.clip(best / np.maximum(strength, 1e-30), 0.0, 1.0)
-    return share, phase, strength * share**2 - 2 * best * share
+@dataclass(frozen=True, slots=True, eq=False)
+class _Profile:
+    """Best share and phase for each duty cycle, and the loss: chi-square less that of no light; each of shape (d,)."""
+
+    duties: FloatArray
+    shares: FloatArray
+    errors: FloatArray
+    middles: FloatArray
+    losses: FloatArray
+    free_losses: FloatArray  # with shares outside 0 to 1 as well
+
+    @classmethod
+    def of(cls, seen: Harmonics, exposure: float, duties: FloatArray) -> _Profile:
+        kernels = 2.0 * np.sinc(np.outer(duties, seen.numbers)) * (seen.left_by(exposure) / seen.variances)
+        spectrum = np.zeros((duties.size, _PHASES // 2 + 1), dtype=complex)
+        spectrum[:, seen.numbers.astype(int)] = kernels * seen.amplitudes
+        match = scipy.fft.irfft(spectrum, _PHASES, axis=1) * (_PHASES / 2)
+        strength = np.maximum((kernels**2 * seen.variances).sum(axis=1), 1e-30)
+        place, each = match.argmax(axis=1), np.arange(duties.size)
+        before, best, after = (match[each, (place + step) % _PHASES] for step in (-1, 0, 1))
+        bend = before - 2 * best + after
+        offset = np.where(bend < 0, 0.5 * (before - after) / np.where(bend < 0, bend, 1.0), 0.0)
+        best = best - 0.25 * (before - after) * offset
+        shares = best / strength
+        used = np.clip(shares, 0.0, 1.0)
+        losses = strength * used**2 - 2 * best * used
+        return cls(duties, shares, 1 / np.sqrt(strength), (place + offset) / _PHASES % 1.0, losses, -best * shares)
+
+    def finer(self, seen: Harmonics, exposure: float, scale: float) -> _Profile:
+        """Look at the duty cycles that fit nearly as well as the best, eight times as finely."""
+        near = self.losses < self.losses.min() + _NEAR * scale
+        near |= np.r_[near[1:], False] | np.r_[False, near[:-1]]
+        ends = np.flatnonzero(near[:-1] & near[1:])
+        if 8 * ends.size > _MOST_DUTIES:  # so many fit that finer steps tell nothing
+            return self
+        between = [np.linspace(self.duties[k], self.duties[k + 1], 8, endpoint=False) for k in ends]
+        return _Profile.of(seen, exposure, np.unique(np.concatenate([*between, self.duties[near]])))
 
 
 def pulse_loss(seen: Harmonics, exposure: float) -> float:
     """Chi-square of the best pulse less that of no light, on a coarse grid."""
-    return float(_coarse(seen, exposure)[2].min())
+    return float(_Profile.of(seen, exposure, _DUTIES).losses.min())
 
 
-def fit_pulse(seen: Harmonics, exposure: float) -> PulseShape:
+def fit_pulse(seen: Harmonics, exposure: float, *, rounds: int = 2) -> PulseShape:
     """
     Fit a rectangular pulse without decay, blurred by an exposure.
 
     Parameters
     ----------
     seen : Harmonics
-        Of one channel, at the start of the exposure.
+        At the start of the exposure.
     exposure : float
         [s]
+    rounds : int
+        How often the duty cycles that fit are looked at more finely.
 
     Returns
     -------
     PulseShape
         The best pulse, whatever its chi-square; phases refer to the middle of the exposure.
+
+    Notes
+    -----
+    For each duty cycle the best share is linear and the best phase the peak of a correlation, so that the whole
+    range is looked through: few harmonics leave one duty cycle to trade against another, far from it as well.
     """
-    left = seen.left_by(exposure)
-    data = seen.amplitudes
-    share, best_phase, loss = _coarse(seen, exposure)
-    root = 1.0 / np.sqrt(seen.variances)
-
-    def residual(p: FloatArray) -> FloatArray:
-        model = 2.0 * p[1] * np.sinc(seen.numbers * p[0]) * np.exp(-2j * np.pi * seen.numbers * p[2]) * left
-        off = (model - data) * root
-        return np.concatenate([off.real, off.imag])
-
-    tries = []
-    order = np.argsort(loss)
-    starts = [order[0]]
-    starts += [k for k in order if all(abs(_DUTIES[k] - _DUTIES[s]) > 0.08 for s in starts)][:1]
-    for k in starts:
-        begin = [_DUTIES[k], max(share[k], 1e-4), -best_phase[k] / _PHASES]
-        bounds = ([1e-3, 0.0, -2.0], [0.999, 1.0, 2.0])
-        tries.append(
-            scipy.optimize.least_squares(residual, np.clip(begin, *bounds), bounds=bounds, x_scale=[0.1, 0.1, 0.1])
-        )
-    found = min(tries, key=lambda one: one.cost)
-    freedom = max(2 * data.size - 3, 1)
-    reduced = 2.0 * float(found.cost) / freedom
-    covariance = np.linalg.pinv(found.jac.T @ found.jac) * max(reduced, 0.25)
+    profile = _Profile.of(seen, exposure, _FINER_DUTIES)
+    nothing = float((np.abs(seen.amplitudes) ** 2 / seen.variances).sum())
+    freedom = max(2 * seen.numbers.size - 3, 1)
+    for _ in range(rounds):
+        profile = profile.finer(seen, exposure, max((profile.losses.min() + nothing) / freedom, 1.0))
+    best = int(profile.losses.argmin())
+    reduced = max(float(profile.losses[best]) + nothing, 0.0) / freedom
+    scale = max(reduced, 1.0)
+    errors = np.hypot(profile.errors * np.sqrt(scale), seen.common * np.abs(profile.shares))
+    off, on = _evidence(profile, errors, scale)
+    width = _widths(profile.duties)
+    whole = (off + on) * width
+    goes_out = float((off * width).sum() / whole.sum())
+    if goes_out > 0.5:
+        best = int(off.argmax())
+    kept = whole > 1e-5 * whole.sum()
     return PulseShape(
-        float(found.x[0]),
-        float(found.x[1]),
-        float(found.x[2]) % 1.0,
-        tuple(tuple(float(c) for c in row) for row in covariance),
+        float(profile.duties[best]),
+        1.0 if goes_out > 0.5 else float(np.clip(profile.shares[best], 0.0, 1.0)),
+        float(profile.middles[best]),
         reduced,
         exposure,
-        duties=_all_that_fit(seen, exposure, max(reduced, 0.25)),
+        profile.duties[kept],
+        profile.shares[kept],
+        errors[kept],
+        whole[kept] / whole[kept].sum(),
+        off[kept] / (off + on)[kept],
     )
 
 
-def _all_that_fit(seen: Harmonics, exposure: float, scale: float) -> tuple[tuple[float, float, float], ...]:
-    """Duties and shares that fit nearly as well as the best: few harmonics leave one to trade against the other."""
-    share, _, loss = _coarse(seen, exposure)
-    probability = np.exp(-0.5 * (loss - loss.min()) / scale) * np.gradient(_DUTIES)
-    probability /= probability.sum()
-    kept = np.flatnonzero(probability > 1e-3)
-    return tuple((float(_DUTIES[k]), float(share[k]), float(probability[k])) for k in kept)
+def _evidence(profile: _Profile, errors: FloatArray, scale: float) -> tuple[FloatArray, FloatArray]:
+    """
+    Evidence for each duty cycle that the pulse goes out, and that some light is left in the pauses, shape (d,) each.
+
+    Both are held for as likely beforehand (PWM mostly switches off altogether: common practice, no source), and so is
+    every share of those that do not go out.
+    """
+    from scipy.special import ndtr
+
+    fit = np.exp(-0.5 * (profile.free_losses - profile.free_losses.min()) / scale)
+    away = (1.0 - profile.shares) / errors
+    spread = errors * np.sqrt(2 * np.pi) * (ndtr(away) - ndtr(-profile.shares / errors))
+    off = fit * np.exp(-0.5 * np.clip(away, -38.0, 38.0) ** 2)
+    return off + 1e-300, fit * spread + 1e-300
+
+
+def _widths(points: FloatArray) -> FloatArray:
+    return np.gradient(points) if points.size > 1 else np.ones(1)
 
 
 def fit_exposure(seen: Harmonics, longest: float) -> tuple[PulseShape, list[PulseShape]]:
@@ -184,66 +221,18 @@ def fit_exposure(seen: Harmonics, longest: float) -> tuple[PulseShape, list[Puls
         np.concatenate([np.geomspace(0.01, 1.0, 40), np.arange(1.0, min(longest * seen.frequency, 12.0), 0.05)])
     )
     exposures = turns[turns <= longest * seen.frequency] / seen.frequency
-    losses = np.array([_coarse(seen, float(exposure))[2].min() for exposure in exposures])
+    losses = np.array([pulse_loss(seen, float(exposure)) for exposure in exposures])
     dips = np.flatnonzero((losses <= np.r_[losses[1:], np.inf]) & (losses <= np.r_[np.inf, losses[:-1]]))
     near = dips[np.argsort(losses[dips])][:3]
     fits = []
     for dip in near:
         lower, upper = exposures[max(dip - 1, 0)], exposures[min(dip + 1, len(exposures) - 1)]
-        fits += [fit_pulse(seen, float(exposure)) for exposure in np.linspace(lower, upper, 15)]
+        fits += [fit_pulse(seen, float(exposure), rounds=1) for exposure in np.linspace(lower, upper, 15)]
     best = min(fits, key=lambda fit: fit.chi_square)
     freedom = max(2 * seen.numbers.size - 4, 1)
     # 95 % of one parameter: chi-square grows by 3.84 times its best reduced value
-    allowed = best.chi_square * (1 + 3.84 / freedom) + 1e-9
+    allowed = max(best.chi_square, 1.0) * 3.84 / freedom + best.chi_square + 1e-9
     return best, [fit for fit in fits if fit.chi_square <= allowed]
-
-
-def fit_decay(seen: Harmonics, fastest: PulseShape) -> PulseShape:
-    """
-    Fit the decay time of a channel that is driven like the fastest one.
-
-    Parameters
-    ----------
-    seen : Harmonics
-        Of the slow channel.
-    fastest : PulseShape
-        Of the fastest channel.
-
-    Returns
-    -------
-    PulseShape
-        The same drive behind an emitter with a decay time; its chi-square says whether that fits.
-
-    Notes
-    -----
-    One pole divides harmonic h by `1 + 2j pi h f tau`. The exposure is the same for both channels and drops out.
-    """
-    drive = fastest.amplitudes(seen.numbers, seen.frequency) * seen.left_by(fastest.exposure)
-    root = 1.0 / np.sqrt(seen.variances)
-    turn = 2j * np.pi * seen.numbers * seen.frequency
-
-    def residual(logarithm: FloatArray) -> FloatArray:
-        off = (drive / (1.0 + turn * np.exp(logarithm[0])) - seen.amplitudes) * root
-        return np.concatenate([off.real, off.imag])
-
-    decays = np.log(np.geomspace(1e-3, 1e3, 121) / (2 * np.pi * seen.frequency))
-    start = min(decays, key=lambda one: float((residual(np.array([one])) ** 2).sum()))
-    found = scipy.optimize.least_squares(residual, [start])
-    reduced = 2.0 * float(found.cost) / max(2 * seen.numbers.size - 1, 1)
-    steep = float((found.jac**2).sum())
-    decay = math.exp(float(found.x[0]))
-    error = decay * math.sqrt(max(reduced, 1.0) / max(steep, 1e-30))
-    return PulseShape(
-        fastest.duty,
-        fastest.share,
-        fastest.middle,
-        fastest.covariance,
-        reduced,
-        fastest.exposure,
-        decay,
-        error,
-        fastest.duties,
-    )
 
 
 def is_rectangle(fit: PulseShape) -> bool:
@@ -276,57 +265,3 @@ def duty_of(seen: Harmonics, exposure: float) -> tuple[float, float] | None:
     best = int(losses.argmin())
     signal = float((np.abs(seen.amplitudes) ** 2 / seen.variances).sum())
     return (float(duties[best]), middle) if losses[best] < max(4.0 * 2 * seen.numbers.size, 1e-2 * signal) else None
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class FreeShape:
-    """Harmonics with the exposure undone; the blind ones, which it left too little of, are named."""
-
-    numbers: FloatArray  # shape (k,)
-    amplitudes: ComplexArray  # shape (k,)
-    errors: FloatArray  # of the real part, shape (k,)
-    blind: FloatArray  # numbers
-    blind_bound: float  # largest amplitude that the blind ones may have together
-
-
-def undo_exposure(seen: Harmonics, exposure: float) -> FreeShape:
-    """
-    Divide the harmonics by what the exposure left of them, as far up as they stand out of the noise.
-
-    Parameters
-    ----------
-    seen : Harmonics
-        Of one channel, at the start of the exposure.
-    exposure : float
-        [s]
-
-    Returns
-    -------
-    FreeShape
-        Harmonics of the light about the middle of the exposure.
-    """
-    left = seen.left_by(exposure)
-    blind = np.abs(left) < BLIND
-    clear = (np.abs(seen.amplitudes) > 3.0 * np.sqrt(seen.variances)) & ~blind
-    highest = float(seen.numbers[clear].max()) if clear.any() else 0.0
-    used = (seen.numbers <= highest) & ~blind
-    amplitudes = seen.amplitudes[used] / left[used]
-    errors = np.sqrt(seen.variances[used]) / np.abs(left[used])
-    numbers = seen.numbers[used]
-    unseen = np.setdiff1d(np.arange(1.0, highest + 1), numbers)
-    bound = 0.0
-    for number in unseen:
-        beside = np.abs(amplitudes[np.abs(numbers - number) == 1.0])
-        bound += float(beside.max()) if beside.size else 0.0
-    if numbers.size:  # harmonics above the last one seen, if they fall as those of a cusp do: 1 / h^2
-        bound += float(np.abs(amplitudes[-1])) * highest
-    return FreeShape(numbers, amplitudes, errors, unseen, bound)
-
-
-def extremes(numbers: FloatArray, amplitudes: ComplexArray) -> tuple[float, float, FloatArray]:
-    """Smallest and largest light of a wave given by its harmonics, and the wave; light below zero is taken as zero."""
-    spectrum = np.zeros(_GRID // 2 + 1, dtype=complex)
-    spectrum[0] = _GRID
-    spectrum[numbers.astype(int)] = amplitudes * (_GRID / 2)
-    wave = np.maximum(scipy.fft.irfft(spectrum, _GRID), 0.0)
-    return float(wave.min()), float(wave.max()), wave
