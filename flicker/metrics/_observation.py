@@ -250,7 +250,8 @@ def percent_between(ends: Extremes, mean: float, dark_uncertainty: float = 0.0) 
     lowest, highest = ends.interval(value, gradient)
     by_dark = 1.96 * 2 * value * dark_uncertainty / total
     lowest, highest = value - np.hypot(value - lowest, by_dark), value + np.hypot(highest - value, by_dark)
-    value, lowest, highest = (float(np.clip(x, 0.0, 100.0)) for x in (value, lowest, highest))
+    beyond = max(value - 100.0, 0.0)  # a darkest level below dark by its error
+    value, lowest, highest = (float(np.clip(x - beyond, 0.0, 100.0)) for x in (value, lowest, highest))
     return Measure(value, "%", lowest, highest, "extremes of the mean cycle, read on the other half of the cycles")
 
 

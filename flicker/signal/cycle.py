@@ -24,12 +24,16 @@ class Cycle:
     The mean cycle of a periodic light in equal bins of phase, kept apart in groups of neighbouring cycles.
 
     Rows of `sums` and `counts` are the groups, columns the bins; the spread between groups is what intervals rest on.
+    Each bin is kept in finer parts too, which may be empty.
     """
 
     frequency: float  # [Hz]
+    fine_sums: FloatArray  # shape (groups, m * parts)
+    fine_counts: FloatArray  # shape (groups, m * parts)
     sums: FloatArray  # shape (groups, m)
     counts: FloatArray  # shape (groups, m)
     noise: float  # standard deviation of single samples about the mean cycle, away from edges
+    span: float  # from the first to the last sample [s]
     first_phase: float  # phase of the first bin's centre at time 0 [cycles]
     edges: npt.NDArray[np.bool_]  # bins inside which the light jumps, shape (m,)
 
@@ -100,7 +104,8 @@ class Cycle:
 
     def part(self, groups: slice) -> Cycle:
         """Cycle of some of the groups; every second one, say."""
-        return replace(self, sums=self.sums[groups], counts=self.counts[groups])
+        sums, counts = self.fine_sums[groups], self.fine_counts[groups]
+        return replace(self, fine_sums=sums, fine_counts=counts, sums=self.sums[groups], counts=self.counts[groups])
 
     def interval(self, figure: Callable[[FloatArray], float]) -> tuple[float, float]:
         """
@@ -168,7 +173,9 @@ def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cy
     bins = int(min(most_bins, max(2, series.values.size // 8), 1.0 / max(gap, 1.0 / most_bins)))
     first = float((series.segments[0].start - series.centre) * frequency) - 0.5 / bins
     while True:
-        sums, counts, square = _group_sums(series, frequency, first, groups, bins)
+        parts = max(_FINE // bins, 1)
+        fine_sums, fine_counts, square = _group_sums(series, frequency, first, groups, bins, parts)
+        sums, counts = (fine.reshape(groups, bins, parts).sum(axis=2) for fine in (fine_sums, fine_counts))
         if bins <= 2 or (counts[::2].sum(axis=0).min() > 0 and counts[1::2].sum(axis=0).min() > 0):
             break
         bins = max(2, min(bins - 1, int(bins * 0.93)))
@@ -178,7 +185,7 @@ def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cy
     noise = _noise(squares, counts.sum(axis=0))
     edges = _edges(levels, squares, counts.sum(axis=0), noise)
     offset = (0.5 / bins + first + series.centre * frequency) % 1.0
-    return Cycle(frequency, sums, counts, noise, offset, edges)
+    return Cycle(frequency, fine_sums, fine_counts, sums, counts, noise, series.span, offset, edges)
 
 
 def _noise(squares: FloatArray, counts: FloatArray) -> float:
@@ -210,17 +217,19 @@ def _index(times: FloatArray, frequency: float, first: float, bins: int) -> np.n
 
 
 def _group_sums(
-    series: Series, frequency: float, first: float, groups: int, bins: int
+    series: Series, frequency: float, first: float, groups: int, bins: int, parts: int
 ) -> tuple[FloatArray, FloatArray, FloatArray]:
-    sums, counts, square = np.zeros(groups * bins), np.zeros(groups * bins), np.zeros(bins)
+    """Sums and counts by group and part of a bin, shape (groups, bins * parts); sums of squares by bin, (bins,)."""
+    cells = bins * parts
+    sums, counts, square = np.zeros(groups * cells), np.zeros(groups * cells), np.zeros(bins)
     begin = series.segments[0].start - series.centre
     per_second = groups / series.span
     for part, times in series.chunks():
         values = series.values[part]
         group = np.minimum(((times - begin) * per_second).astype(np.intp), groups - 1)
-        index = _index(times, frequency, first, bins)
-        cell = group * bins + index
-        sums += np.bincount(cell, values, minlength=groups * bins)
-        counts += np.bincount(cell, minlength=groups * bins)
-        square += np.bincount(index, values * values, minlength=bins)
-    return sums.reshape(groups, bins), counts.reshape(groups, bins), square
+        index = _index(times, frequency, first, cells)
+        cell = group * cells + index
+        sums += np.bincount(cell, values, minlength=groups * cells)
+        counts += np.bincount(cell, minlength=groups * cells)
+        square += np.bincount(index // parts, values * values, minlength=bins)
+    return sums.reshape(groups, cells), counts.reshape(groups, cells), square

@@ -6,13 +6,13 @@ from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
-import numpy.typing as npt
 import scipy.fft
 
 from flicker.light import ComplexArray
 from flicker.signal.cycle import Cycle
 from flicker.signal.harmonics import HarmonicFit
 from flicker.signal.intervals import student_quantile
+from flicker.signal.summit import find_manner, read
 from flicker.trace import FloatArray
 
 _CONTRADICTION = 2.0  # standard errors by which a wide window may differ from a narrower one
@@ -20,6 +20,7 @@ _PLATEAUS = ("right", "left", "about")
 # steps back from the widest window that is not contradicted, whose bias is of the size of its error: plateaus on
 # either side of the place or about it, and two shapes that bend
 _STEPS_BACK = {"right": 2, "left": 2, "about": 2, "parabola": 3, "hinge": 3}
+_DOUBT = 0.5  # standard deviation of the bias of a bent reading, over what a lower degree reads otherwise
 _QUIETEST = 1e-4  # noise over swing that is assumed at the least, so that wide windows are preferred without noise too
 _FEW_HARMONICS = 6  # with more, a corner may hide behind the noise
 
@@ -63,32 +64,35 @@ def extremes(cycle: Cycle, fit: HarmonicFit) -> Extremes:
     A smooth cycle is the sum of its few harmonics; its maximum is too high by half the variance of its slope over its
     curvature (second order, by hand), which is taken off.
 
-    A cycle with edges is split in two halves of its cycles: one says where the extreme lies and over how wide a window
-    it may be averaged, the other what the level is there, and the other way round; what selection adds falls away. A
-    window may be as wide as the narrower ones do not contradict (intersection of confidence intervals; Goldenshluger
-    and Nemirovski, Math. Methods Statist. 6 (1997) 135). Its shape is a plateau to the left, to the right or about the
-    place, a parabola, or a hinge of two lines, whichever has the smallest error, so that a plateau is averaged, a
-    corner kept and an edge not crossed. What a narrower window, or a plateau in place of a bend, reads otherwise is
-    added to the interval.
+    A cycle with edges is split in two halves of its cycles: one says where the extreme lies and how it is to be read
+    (`flicker.signal.summit`), the other what the level is there, and the other way round; what selection adds falls
+    away. Half of what curves of a lower degree read otherwise is added to the interval where the level bends.
 
-    The interval comes from the spread between groups of neighbouring cycles.
+    The interval comes from the spread between groups of neighbouring cycles, and is no narrower than white noise makes
+    it.
     """
     if fit.amplitudes.size <= _FEW_HARMONICS and cycle.size > 2 * fit.amplitudes.size:
         return _of_few_harmonics(cycle, fit)
     halves = cycle.part(slice(0, None, 2)), cycle.part(slice(1, None, 2))
     places = [_places(half) for half in halves]
-    values, doubts, scores = [], np.zeros(2), np.zeros((2, cycle.groups))
-    for end, which in enumerate(("high", "low")):
-        here = _Reading(halves[1], places[0][which])
-        there = _Reading(halves[0], places[1][which])
+    noise = max(min(cycle.noise, fit.noise), _QUIETEST * float(np.ptp(cycle.levels)))
+    blur = 2.0 * fit.frequency_error * cycle.span + 1.0 / cycle.fine_sums.shape[1]
+    values, scores, white, bent = [], np.zeros((2, cycle.groups)), np.zeros((2, 2)), np.zeros((2, 2))
+    for end, sign in enumerate((1.0, -1.0)):
+        here, there = (
+            read(asked, find_manner(told, place[end], noise, sign, blur))
+            for told, asked, place in zip(halves, halves[::-1], places, strict=True)
+        )
         values.append(0.5 * (here.level + there.level))
-        doubts[end] = 0.5 * (here.doubt + there.doubt)
+        bent[end, end] = (_DOUBT * 0.5) ** 2 * (here.doubt**2 + there.doubt**2)
+        white[end, end] = (0.5 * noise) ** 2 * (here.variance + there.variance)
         scores[end, 1::2] = 0.5 * here.scores
         scores[end, 0::2] = 0.5 * there.scores
     freedom = max(cycle.groups - 2, 1)
-    systematic = np.diag((doubts / student_quantile(freedom)) ** 2)
     correction = cycle.groups / max(cycle.groups - 1, 1)
-    return Extremes(values[0], values[1], correction * (scores @ scores.T) + systematic, freedom)
+    spread = correction * (scores @ scores.T)
+    shortfall = np.diag(np.maximum(white - spread, 0.0).diagonal())  # few cycles may agree by chance
+    return Extremes(values[0], values[1], spread + shortfall + bent, freedom)
 
 
 def _of_few_harmonics(cycle: Cycle, fit: HarmonicFit) -> Extremes:
@@ -123,25 +127,15 @@ def _scores(cycle: Cycle, weights: FloatArray) -> FloatArray:
     return np.asarray((cycle.sums - cycle.counts * cycle.levels) @ (weights / cycle.counts.sum(axis=0)))
 
 
-class _Reading:
-    """Weighted level of some bins, what each group adds to its deviation, and how far a second weighting differs."""
-
-    def __init__(self, cycle: Cycle, weights: tuple[FloatArray, ...]) -> None:
-        chosen, narrower = weights
-        self.level = float(chosen @ cycle.levels)
-        self.doubt = abs(self.level - float(narrower @ cycle.levels))
-        self.scores = _scores(cycle, chosen)
-
-
-def _places(half: Cycle) -> dict[str, tuple[FloatArray, ...]]:
-    """Weights that read the largest and the smallest level of one half, by the window and by the next narrower one."""
+def _places(half: Cycle) -> list[float]:
+    """Phases near which the largest and the smallest level lie, as one half of the cycles tells it. [cycles]"""
     m = half.size
     counts = half.counts.sum(axis=0)
     single = half.levels
     noise = max(half.noise, _QUIETEST * float(np.ptp(single)))
     single_error = noise / np.sqrt(counts)
     levels, variances = scipy.fft.rfft(single), scipy.fft.rfft(single_error**2)
-    means, errors, kernels = [], [], []
+    means, errors = [], []
     for shape, steps_back in _STEPS_BACK.items():
         widths = _widths(m, shape)
         below, above = single - _CONTRADICTION * single_error, single + _CONTRADICTION * single_error
@@ -162,24 +156,11 @@ def _places(half: Cycle) -> dict[str, tuple[FloatArray, ...]]:
         chosen = np.maximum(reached - steps_back, 0)
         means.append(_pick(ladder, chosen, 0))
         errors.append(_pick(ladder, chosen, 1))
-        kernels.append([(widths[step], widths[max(step - 1, 0)], shape) for step in chosen])
     kind = np.argmin(errors, axis=0)
     every = np.arange(m)
     mean, error = np.array(means)[kind, every], np.array(errors)[kind, every]
-    readings: dict[str, tuple[FloatArray, ...]] = {}
-    for which, sign in (("high", 1.0), ("low", -1.0)):
-        top = int(np.argmax(sign * mean - 2.0 * error))
-        width, narrower, shape = kernels[kind[top]][top]
-        second = (narrower, shape) if shape in _PLATEAUS else (width // 3 | 1, "about")
-        pair = (np.roll(_kernel(m, *one), top) for one in ((width, shape), second))
-        readings[which] = tuple(_off_edges(weights, half.edges) for weights in pair)
-    return readings
-
-
-def _off_edges(weights: FloatArray, edges: npt.NDArray[np.bool_]) -> FloatArray:
-    """Leave out bins that hold an edge, where a plateau is averaged: one half of the cycles may not show it."""
-    kept = np.where(edges, 0.0, weights)
-    return kept / kept.sum() if (weights >= 0).all() and kept.sum() > 0.5 else weights
+    tops = (int(np.argmax(sign * mean - 2.0 * error)) for sign in (1.0, -1.0))
+    return [top / m for top in tops]
 
 
 def _pick(ladder: list[tuple[FloatArray, FloatArray]], chosen: np.ndarray, which: int) -> FloatArray:
