@@ -39,6 +39,7 @@ class Footage:
     weight: FloatArray = field(default_factory=lambda: np.ones((1, 1)))  # usable share of each line, shape (r, b)
     first_line: int = 0  # number of the first line of the region, in the order in which lines are read
     lines_of_frame: int = 0  # lines of the whole picture
+    pixels: int = 1  # across a line
     code_step: float = 1 / 219  # one code value of the file, nominal white is 1
     transfer: str = "bt709"
     matrix: str = "bt709"

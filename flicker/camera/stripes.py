@@ -26,6 +26,7 @@ _LUMA = (0.2126, 0.7152, 0.0722)  # ITU-R BT.709
 _COLOURS = ("red", "green", "blue")
 _FIGURES = {"percent_flicker": "%", "flicker_index": "1", "rms_modulation": "%", "duty_cycle": "1", "svm": "1"}
 _WIDEST = 35.0  # interval of percent flicker that is still an answer [%]
+_LOOSEST = 0.5  # interval of a decay over the decay that is still an answer
 _LISTED = 60  # lines of the spectrum that a channel lists
 
 
@@ -148,13 +149,15 @@ def _drive(footage: Footage, waves: dict[str, StripeFit]) -> tuple[Drive, dict[s
     names = [name for name in _COLOURS if name in waves] or ["all"]
     count = min(wave.harmonics.size for wave in waves.values())
     numbers, whole = waves["all"].harmonics[:count], waves["all"]
-    coding = Coding.of(
-        np.array([footage.lines_of(name).mean() for name in names]),
-        footage.transfer,
+    means = np.array([footage.lines_of(name).mean() for name in names])
+    levels = Coding.levels_of(means, footage.transfer, full_range=footage.full_range)
+    coding = Coding(
         footage.matrix,
-        full_range=footage.full_range,
-        lossless=footage.lossless,
-        bands_lost=footage.alone is not None and not footage.alone.any(),
+        footage.full_range,
+        footage.lossless,
+        levels,
+        float(whole.noise * levels.mean() * np.sqrt(footage.pixels)),
+        footage.alone is not None and not footage.alone.any(),
     )
     amplitudes = np.array([waves[name].amplitudes[:count] for name in names])
     covariances = coding.covariances(amplitudes, 1 / np.abs(numbers * whole.turns_per_line), whole.changed)
@@ -227,10 +230,16 @@ def _loose(footage: Footage) -> float:
 
 
 def _decay(lag: Lag) -> Measure:
-    if lag.decay:
-        low, high = max(lag.decay - 1.96 * lag.down, 0.0), lag.decay + 1.96 * lag.up
-        return Measure(lag.decay, "s", low, high, "one pole against the fastest channel")
-    return Measure.missing("s", "the channel does not lag the fastest one measurably")
+    if not lag.decay:
+        return Measure.missing("s", "the channel does not lag the fastest one measurably")
+    low, high = max(lag.decay - 1.96 * lag.down, 0.0), lag.decay + 1.96 * lag.up
+    if high - low > _LOOSEST * lag.decay:
+        reason = (
+            f"its bands are too faint for its decay, anywhere from {1e3 * low:.3g} to {1e3 * high:.3g} ms: "
+            "film with less compression, or a light of lower frequency"
+        )
+        return Measure.missing("s", reason)
+    return Measure(lag.decay, "s", low, high, "one pole against the fastest channel")
 
 
 def _unknown(line_time: float | None, exposure: float | None, lag: Lag) -> dict[str, Measure]:

@@ -13,6 +13,7 @@ from flicker.signal.stripes_fit import STANDING, StripeFit
 from flicker.trace import FloatArray
 
 _STAMPS = 7e-7  # relative standard uncertainty of a stated rate: 29.97 may stand for 30000/1001, a millionth off
+_FAINT = 0.012  # contrast of bands of which compression may erase one or the other
 _HUNTING = 0.03  # standard deviation of the level from frame to frame
 
 
@@ -96,6 +97,12 @@ def doubts(
             f"harmonics {', '.join(still)} stand still in the picture and were left out: another frame rate shows them"
         )
         notes.append(Note("standing-harmonics", "info", message))
+    if not footage.lossless and bands.contrast < _FAINT:
+        message = (
+            f"bands of {100 * bands.contrast:.2g} % are hardly above what compression erases: if it erased the slowest "
+            "ones, the light has a half or a third of this frequency; film with a shorter exposure or less compression"
+        )
+        notes.append(Note("faint-bands", "warning", message))
     notes += _contamination(footage, bands)
     notes.append(
         Note("dark-assumed", "info", "the black of the video is taken as dark: light that is always there counts")

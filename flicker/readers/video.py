@@ -239,6 +239,7 @@ def read_footage(
         weight[:: -1 if backwards else 1].astype(float),
         whole - begin - extent if backwards else begin,
         whole,
+        height if sideways else width,
         film.meter.code_step,
         film.transfer,
         film.meter.matrix,

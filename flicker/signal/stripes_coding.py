@@ -10,10 +10,12 @@ from flicker.light import ComplexArray
 from flicker.signal.transfer import LUMA_WEIGHTS, to_code
 from flicker.trace import FloatArray
 
-# Standard error of a band's amplitude in code values of 8 bits, and the wave length in lines below which it grows in
-# proportion: found on clips of the exact renderer, H.264 and MJPEG. Colour differences are coded more coarsely.
-_LUMA, _LUMA_LENGTH = 0.05, 8.0
-_COLOUR, _COLOUR_LENGTH = 0.07, 50.0
+# Standard error of a band's amplitude over what noise and coding do to a pixel, and the wave length in lines below
+# which it grows in proportion: found on clips of the exact renderer, H.264, HEVC and MJPEG of many qualities. Colour
+# differences are coded more coarsely.
+_LUMA, _LUMA_LENGTH = 0.016, 5.0
+_COLOUR, _COLOUR_LENGTH = 0.022, 28.0
+_LEAST_NOISE = 1.0  # of a pixel: less does not dither [codes]
 _ERASED_COLOUR = 0.35  # bands of colour fainter than this may be erased as a whole where nothing dithers them
 _CHANGED = 0.3  # share of what frames coded without others put right that stays unsure
 _NO_FRAME_ALONE = 3.0  # times the error where no frame was coded without others
@@ -30,16 +32,15 @@ class Coding:
     full_range: bool
     lossless: bool
     levels: FloatArray  # codes of luma that a relative change of the light is worth, of each channel, shape (c,)
+    noise: float = _LEAST_NOISE  # of a pixel, what coding does to it included [codes]
     bands_lost: bool = False  # all frames are coded from others
 
-    @classmethod
-    def of(
-        cls, means: FloatArray, transfer: str, matrix: str, *, full_range: bool, lossless: bool, bands_lost: bool
-    ) -> Coding:
-        """Take the mean light of red, green and blue, or of luma alone, shape (c,); nominal white is 1."""
+    @staticmethod
+    def levels_of(means: FloatArray, transfer: str, *, full_range: bool) -> FloatArray:
+        """Codes that a relative change of each mean light is worth, shape (c,); nominal white is 1."""
         means = np.maximum(means, 1e-4)
         slope = (to_code(1.01 * means, transfer) - to_code(0.99 * means, transfer)) / 0.02
-        return cls(matrix, full_range, lossless, slope * (255.0 if full_range else 219.0), bands_lost)
+        return np.asarray(slope * (255.0 if full_range else 219.0))
 
     def to_codes(self) -> FloatArray:
         """Matrix from relative amplitudes of red, green and blue to luma and two colour differences in codes."""
@@ -66,7 +67,8 @@ class Coding:
     def _luma_error(self, changed: float) -> float:
         if self.lossless:
             return _KEPT
-        return (_NO_FRAME_ALONE if self.bands_lost else 1.0) * max(_LUMA, _CHANGED * changed * self.luma)
+        least = _LUMA * max(self.noise, _LEAST_NOISE)
+        return (_NO_FRAME_ALONE if self.bands_lost else 1.0) * max(least, _CHANGED * changed * self.luma)
 
     def covariances(self, amplitudes: ComplexArray, lengths: FloatArray, changed: float = 0.0) -> FloatArray:
         """

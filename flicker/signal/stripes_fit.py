@@ -21,6 +21,7 @@ STANDING = 0.9  # a harmonic whose phases over the frames agree better than this
 _GROUPS = 10
 _FEWEST_BANDS = 1.2  # in a frame that is to show all phases of the light by itself
 _CLEARLY = 4.0  # mean square over its variance from which a change is believed
+_SHARED_NOISE = 1.5  # by how much noise that neighbouring lines share makes errors larger
 _LIT = 0.03  # of the median level: darker lines are left out
 
 
@@ -238,7 +239,9 @@ class _Work:
         bins = bins[alone].ravel()
         right = _right(bins, (weights * left).ravel(), self.harmonics)
         step = _amplitudes(_gram(bins, weights.ravel(), self.harmonics), right)
-        errors = found.errors * np.sqrt(alone.size / alone.sum())
+        wave = evaluate(self.harmonics, step * np.exp(1j * np.pi * self.harmonics / _BINS), _BINS) - 1.0
+        rest = float(np.sqrt((weights.ravel() * (left.ravel() - wave[bins]) ** 2).mean()))
+        errors = np.full(step.shape, _SHARED_NOISE * rest * np.sqrt(2.0 / left.size))
         clear = np.abs(found.amplitudes) > 5 * errors
         if not always and (not clear.any() or np.mean(np.abs(step / errors)[clear] ** 2) < 2 * _CLEARLY):
             return found
