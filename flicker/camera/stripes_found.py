@@ -10,7 +10,7 @@ import numpy.typing as npt
 from flicker.errors import NotMeasurable
 from flicker.footage import Footage
 from flicker.results import Note
-from flicker.signal.stripes_fit import STANDING, Rows, StripeFit, fit_stripes, standing_of
+from flicker.signal.stripes_fit import STANDING, Rows, StripeFit, fit_stripes, shows_between, standing_of
 from flicker.signal.stripes_search import Deviation, search_frequency, search_turns
 from flicker.trace import FloatArray
 
@@ -102,17 +102,19 @@ def _moving(frequency: float, footage: Footage) -> bool:
 
 def _lowest(footage: Footage, fit: StripeFit) -> StripeFit:
     """The same light at a half, a third or a fifth of the frequency, where lines between the harmonics show it."""
-    first = frames_of(footage, first=True)
+    rows = rows_of(footage, "all", frames_of(footage, first=True))
     for divisor in (2, 3, 5):
         frequency = fit.frequency / divisor
         if not _moving(frequency, footage) or fit.turns_per_line * footage.lines / divisor < 0.5:
             continue
-        slower = fit_stripes(rows_of(footage, "all", first), frequency, fit.turns_per_line / divisor, rounds=3)
+        if not shows_between(rows, fit, divisor):
+            continue
+        slower = fit_stripes(rows, frequency, fit.turns_per_line / divisor, rounds=3)
         between = slower.harmonics % divisor != 0
         heights = np.abs(slower.amplitudes)
         clear = heights > np.maximum(8 * slower.errors, 0.03 * heights.max())
         if (clear & between).any() and slower.noise < 0.97 * fit.noise:
-            return fit_stripes(rows_of(footage, "all", first), frequency, fit.turns_per_line / divisor)
+            return fit_stripes(rows, frequency, fit.turns_per_line / divisor)
     return fit
 
 

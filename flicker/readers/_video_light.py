@@ -113,6 +113,12 @@ class LightMeter:
         return ("red", "green", "blue", "all") if self.colour else ("all",)
 
     @property
+    def shape(self) -> tuple[int, int]:
+        """Lines r and blocks m across each."""
+        _, _, width, height = self.region
+        return (width if self.sideways else height), self.blocks
+
+    @property
     def code_step(self) -> float:
         """One code value, where nominal white is 1."""
         return 1.0 / ((255.0 if self.full_range else 219.0) * 2.0 ** (self.bits - 8))
@@ -142,10 +148,12 @@ class LightMeter:
         import cv2
 
         black, span = self._range(0)
-        high = np.zeros(())
+        limit = black + _CLIPPED * span
+        high = np.zeros(self.shape, np.float32)
         for plane in self._planes(frame)[: 3 if self.matrix == "rgb" else 1]:
-            full = cv2.compare(self._cut(plane, 0), black + _CLIPPED * span, cv2.CMP_GE)
-            high = np.maximum(high, self._averaged(full))
+            pixels = self._cut(plane, 0)
+            if pixels.max() >= limit:
+                high = np.maximum(high, self._averaged(cv2.compare(pixels, limit, cv2.CMP_GE)))
         return np.asarray(high > 2.55)
 
     def _planes(self, frame: Any) -> list[npt.NDArray[Any]]:

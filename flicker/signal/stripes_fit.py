@@ -21,6 +21,7 @@ STANDING = 0.9  # a harmonic whose phases over the frames agree better than this
 _GROUPS = 10
 _FEWEST_BANDS = 1.2  # in a frame that is to show all phases of the light by itself
 _CLEARLY = 4.0  # mean square over its variance from which a change is believed
+_BETWEEN = 0.02  # of the strongest harmonic: lines between the harmonics that speak for a lower frequency
 _SHARED_NOISE = 1.5  # by how much noise that neighbouring lines share makes errors larger
 _LIT = 0.03  # of the median level: darker lines are left out
 
@@ -94,18 +95,6 @@ def harmonic_numbers(turns: float, samples: int, most: int = _MOST_HARMONICS) ->
     return np.arange(1.0, max(1, min(most, carried, samples // 40)) + 1)
 
 
-def _gram(bins: Any, weights: FloatArray, harmonics: FloatArray) -> ComplexArray:
-    """Normal matrix of harmonics -k..-1, 0, 1..k, shape (2 k + 1, 2 k + 1); phases in bins, known by their middle."""
-    highest = int(harmonics[-1]) if harmonics.size else 0
-    count = np.bincount(bins, weights, minlength=_BINS)
-    moments = scipy.fft.rfft(count)[: 2 * highest + 1] * np.exp(-1j * np.pi * np.arange(2 * highest + 1) / _BINS)
-    numbers = np.concatenate([-harmonics[::-1], [0.0], harmonics]).astype(int)
-    apart = np.subtract.outer(numbers, numbers)
-    gram = np.where(apart >= 0, moments[np.abs(apart)], moments[np.abs(apart)].conj())
-    gram[np.diag_indices_from(gram)] += 1e-9 * float(count.sum())
-    return np.asarray(gram)
-
-
 def _right(bins: Any, values: FloatArray, harmonics: FloatArray) -> ComplexArray:
     """Right-hand side of the normal equations for weighted values, shape (2 k + 1,)."""
     total = np.bincount(bins, values, minlength=_BINS)
@@ -113,10 +102,28 @@ def _right(bins: Any, values: FloatArray, harmonics: FloatArray) -> ComplexArray
     return np.concatenate([one_side[::-1].conj(), [total.sum()], one_side])
 
 
-def _amplitudes(gram: ComplexArray, right: ComplexArray) -> ComplexArray:
-    """Least squares: peak amplitudes of the positive harmonics, shape (k,) or (k, g)."""
-    found = scipy.linalg.solve(gram, right, assume_a="her")
-    return np.asarray(2.0 * found[len(gram) // 2 + 1 :])
+def _amplitudes(bins: Any, weights: FloatArray, harmonics: FloatArray, right: ComplexArray) -> ComplexArray:
+    """
+    Least squares: peak amplitudes of the positive harmonics, shape (k,) or (k, g).
+
+    The normal matrix of harmonics -k..-1, 0, 1..k, with phases in bins, holds moments of the differences of their
+    numbers: a Toeplitz matrix. Harmonics left out are held at zero by multipliers.
+    """
+    highest = int(harmonics[-1]) if harmonics.size else 0
+    count = np.bincount(bins, weights, minlength=_BINS)
+    moments = scipy.fft.rfft(count)[: 2 * highest + 1] * np.exp(-1j * np.pi * np.arange(2 * highest + 1) / _BINS)
+    moments[0] += 1e-9 * float(count.sum())
+    wanted = np.concatenate([-harmonics[::-1], [0.0], harmonics]).astype(int) + highest
+    unwanted = np.setdiff1d(np.arange(2 * highest + 1), wanted)
+    columns = right.reshape(wanted.size, -1)
+    whole = np.zeros((2 * highest + 1, columns.shape[1] + unwanted.size), dtype=complex)
+    whole[wanted, : columns.shape[1]] = columns
+    whole[unwanted, columns.shape[1] + np.arange(unwanted.size)] = 1.0
+    solved = scipy.linalg.solve_toeplitz(moments, whole)
+    found, held = solved[:, : columns.shape[1]], solved[:, columns.shape[1] :]
+    if unwanted.size:
+        found = found - held @ np.linalg.solve(held[unwanted], found[unwanted])
+    return np.asarray(2.0 * found[wanted][harmonics.size + 1 :].reshape(harmonics.size, *right.shape[1:]))
 
 
 @dataclass(slots=True)
@@ -157,8 +164,8 @@ class _Work:
         light /= self.gain[:, None]
         left = self.relative() - light
         weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
-        gram = _gram(bins.ravel(), weights.ravel(), self.harmonics)
-        step = _amplitudes(gram, _right(bins.ravel(), (weights * left).ravel(), self.harmonics))
+        right = _right(bins.ravel(), (weights * left).ravel(), self.harmonics)
+        step = _amplitudes(bins.ravel(), weights.ravel(), self.harmonics, right)
         self.amplitudes = self.amplitudes + step / self.free
         if clock:
             frequency, turns, *_ = self.clock(bins, left, weights)
@@ -201,7 +208,7 @@ class _Work:
         groups = np.array_split(np.arange(len(left)), max(2, min(_GROUPS, len(left) // 3)))
         pull = weights * left
         rights = np.stack([_right(bins[g].ravel(), pull[g].ravel(), self.harmonics) for g in groups], axis=1)
-        parts = _amplitudes(_gram(bins.ravel(), weights.ravel(), self.harmonics), rights)
+        parts = _amplitudes(bins.ravel(), weights.ravel(), self.harmonics, rights)
         spread = (np.abs(parts) ** 2).sum(axis=1) * len(groups) / (2 * (len(groups) - 1))
         noise = float(np.sqrt((weights * left**2).mean()))
         least = noise * np.sqrt(2.0 / left.size)
@@ -238,7 +245,7 @@ class _Work:
         weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
         bins = bins[alone].ravel()
         right = _right(bins, (weights * left).ravel(), self.harmonics)
-        step = _amplitudes(_gram(bins, weights.ravel(), self.harmonics), right)
+        step = _amplitudes(bins, weights.ravel(), self.harmonics, right)
         wave = evaluate(self.harmonics, step * np.exp(1j * np.pi * self.harmonics / _BINS), _BINS) - 1.0
         rest = float(np.sqrt((weights.ravel() * (left.ravel() - wave[bins]) ** 2).mean()))
         errors = np.full(step.shape, _SHARED_NOISE * rest * np.sqrt(2.0 / left.size))
@@ -310,13 +317,28 @@ def _refined(work: _Work, rounds: int) -> StripeFit:
     return full.finish()
 
 
+def shows_between(rows: Rows, fit: StripeFit, divisor: int) -> bool:
+    """Whether what a fit leaves holds lines of a whole fraction of its frequency; `rows` are those that were fitted."""
+    known = _Work(
+        rows, fit.frequency, fit.turns_per_line, fit.harmonics, fit.amplitudes, fit.scene, fit.gain, fit.errors
+    )
+    left = known.relative() - known.model()[1]
+    slower = _Work.begin(rows, fit.frequency / divisor, fit.turns_per_line / divisor)
+    bins = (rows.phases(slower.frequency, slower.turns) * _BINS).astype(np.intp).ravel()
+    weights = np.broadcast_to(fit.scene**2 / np.mean(fit.scene**2), left.shape)
+    right = _right(bins, (weights * left).ravel(), slower.harmonics)
+    found = np.abs(_amplitudes(bins, weights.ravel(), slower.harmonics, right) / slower.free)
+    least = max(4 * _SHARED_NOISE * fit.noise * np.sqrt(2 / left.size), _BETWEEN * float(np.abs(fit.amplitudes).max()))
+    return bool((found[slower.harmonics % divisor != 0] > least).any())
+
+
 def fit_wave(
     rows: Rows,
     known: StripeFit,
     *,
     alone: npt.NDArray[np.bool_] | None = None,
     always: bool = False,
-    rounds: int = 4,
+    rounds: int = 5,
 ) -> StripeFit:
     """
     Fit the wave and the scene of another channel, with frequency, cycles a line and gain as known.
