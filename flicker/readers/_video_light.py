@@ -192,8 +192,9 @@ class LightMeter:
             return np.asarray(cv2.resize(np.float32(pixels), (self.blocks, pixels.shape[0])))
         share = pixels.shape[1] // self.blocks
         pixels = np.ascontiguousarray(pixels[:, : share * self.blocks])
-        total = cv2.reduce(pixels.reshape(-1, share), 1, cv2.REDUCE_SUM, dtype=cv2.CV_32F)
-        return np.asarray(total.reshape(-1, self.blocks) / np.float32(share))
+        sums = cv2.CV_32S if pixels.dtype == np.uint8 else cv2.CV_32F
+        total = cv2.reduce(pixels.reshape(-1, share), 1, cv2.REDUCE_SUM, dtype=sums)
+        return np.multiply(total.reshape(-1, self.blocks), np.float32(1 / share), dtype=np.float32)
 
     def _range(self, part: int) -> tuple[float, float]:
         """Code of black (of no colour), and the span up to white."""

@@ -273,7 +273,7 @@ def _running_median(spread: FloatArray) -> FloatArray:
     return np.asarray(median_filter(spread, 7, mode="nearest"))
 
 
-def fit_stripes(rows: Rows, frequency: float, turns: float, *, rounds: int = 8) -> StripeFit:
+def fit_stripes(rows: Rows, frequency: float, turns: float, *, rounds: int = 6) -> StripeFit:
     """
     Fit harmonics of one frequency to all lines of all frames at once, with a level of its own for every line.
 
