@@ -6,9 +6,17 @@ from typing import Any
 
 import click
 
-from flicker.cli.options import given, many_options, output_options, reading_options, uncertainty_options
+from flicker.cli.options import (
+    given,
+    many_options,
+    output_options,
+    page_option,
+    reading_options,
+    uncertainty_options,
+)
 from flicker.cli.output import (
     colour_wanted,
+    command_line,
     complain,
     make_folder,
     print_words,
@@ -26,6 +34,7 @@ from flicker.errors import ExitStatus, UnreadableFileError
 @uncertainty_options
 @many_options
 @output_options
+@page_option
 @click.option("--figures", metavar="DIR", help="Write the waveform, the spectrum and the risk plane as pictures.")
 @click.option("--camera", "camera_file", metavar="FILE.toml", help="With --figures: draw what this camera will record.")
 @click.option("--verbose", is_flag=True, help="Add how each figure was obtained, the lines, the history.")
@@ -37,6 +46,7 @@ def command(
     workers: int,
     json_target: str | None,
     quiet: bool,
+    html_target: str | None,
     figures: str | None,
     camera_file: str | None,
     verbose: bool,
@@ -63,7 +73,7 @@ def command(
     if not steps:
         raise click.UsageError("no capture: name one, or a table of them with --manifest")
     paths = [step.capture for step in steps]
-    spare_the_captures([*paths, *filter(None, [manifest, reading["dark_capture"]])], [json_target])
+    spare_the_captures([*paths, *filter(None, [manifest, reading["dark_capture"]])], [json_target, html_target])
     if camera_file:
         from flicker.camera import Camera
 
@@ -78,7 +88,7 @@ def command(
         names = picture_names(paths)
     width, colour = terminal_width(), colour_wanted()
     measuring = given(clock_ppm=clock_ppm, dark_uncertainty=dark_uncertainty)
-    task = Task(given(**reading), measuring, width, colour, verbose, folder, camera_file)
+    task = Task(given(**reading), measuring, width, colour, verbose, folder, camera_file, html_target is not None)
     results = []
     found = side_by_side(partial(measure_capture, task=task), list(zip(steps, names, strict=True)), workers)
     for _, result in zip(with_progress(paths, "capture", quiet=quiet), found, strict=False):
@@ -92,6 +102,11 @@ def command(
             print_words(result.words + "\n", json_target)
         results.append(result)
     write_json({**Report(()).to_dict(), "captures": [result.data for result in results]}, json_target)
+    if html_target:
+        from flicker.files import write_text
+        from flicker.report.measured_page import measured_page
+
+        write_text(html_target, measured_page(results, command_line()))
     entries = [entry for result in results for entry in result.entries]
     for block in closing_words(entries, width=width, colour=colour):
         print_words(block + "\n", json_target)

@@ -226,6 +226,8 @@ output_options = several(
     click.option("--quiet", is_flag=True, help="No progress on standard error."),
 )
 
+page_option = click.option("--html", "html_target", metavar="FILE", help="Write the results as one HTML page.")
+
 
 def given(**options: Any) -> dict[str, Any]:
     """Keep the options that were given, to be passed on as keywords."""

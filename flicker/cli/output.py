@@ -135,6 +135,13 @@ def spare_the_captures(captures: Iterable[str | Path], outputs: Iterable[str | N
             raise InputError(f"{output} is one of the captures: name another file for the answer")
 
 
+def command_line() -> str:
+    """Give the words with which the program was called, for results that state them."""
+    import shlex
+
+    return shlex.join(click.get_current_context().find_root().obj or ())
+
+
 def make_folder(path: str) -> Path:
     """Make a folder for answers, with its parents; `InputError` if it cannot be had."""
     folder = Path(path)

@@ -12,6 +12,7 @@ from flicker.report.overview import OverviewEntry
 
 if TYPE_CHECKING:
     from flicker.analysis import CaptureReport
+    from flicker.report.markup import Markup
     from flicker.sweep.manifest import Step
 
 
@@ -26,6 +27,7 @@ class Task:
     verbose: bool = False
     figures: Path | None = None  # folder for pictures
     camera: str | None = None  # camera file, for the picture of the predicted frame
+    page: bool = False  # whether to make its part of the page
 
 
 @dataclass(frozen=True)
@@ -37,6 +39,7 @@ class Measured:
     words: str = ""
     error: str = ""
     no_picture: dict[str, str] = field(default_factory=dict)  # pictures that could not be drawn, and why
+    article: Markup | None = None  # its part of the page, where one was asked for
 
 
 def measure_capture(item: tuple[Step, str], task: Task) -> Measured:
@@ -76,7 +79,12 @@ def measure_capture(item: tuple[Step, str], task: Task) -> Measured:
         if task.camera is not None:
             no_picture |= _write_frame(capture, task.camera, task.figures / f"{name}-frame.png")
     words = capture_words(capture, width=task.width, colour=task.colour, verbose=task.verbose)
-    return Measured(_data(capture, step), tuple(overview_entries(capture)), words, no_picture=no_picture)
+    article = None
+    if task.page:
+        from flicker.report.sheets import capture_article
+
+        article = capture_article(capture)
+    return Measured(_data(capture, step), tuple(overview_entries(capture)), words, "", no_picture, article)
 
 
 def _write_frame(capture: CaptureReport, camera: str, file: Path) -> dict[str, str]:

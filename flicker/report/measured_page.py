@@ -1,0 +1,51 @@
+"""The page of captures that were measured, and of captures that were judged."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from flicker.report.captures import Measured
+from flicker.report.page import page, sections
+from flicker.report.sheets import Statement, article
+
+if TYPE_CHECKING:
+    from flicker.report.markup import Markup
+
+
+def measured_page(results: Sequence[Measured], command_line: str) -> str:
+    """
+    Make the page of a run of `flicker measure`.
+
+    Parameters
+    ----------
+    results : sequence of Measured
+        Captures in order, each with its part of the page where it could be read.
+    command_line : str
+        With which the program was called.
+
+    Returns
+    -------
+    str
+        HTML: of several captures first all side by side, then each, then the record.
+    """
+    parts: list[Markup] = []
+    entries = [entry for result in results for entry in result.entries]
+    if len(entries) > 1:
+        errors = [(result.data["capture"]["path"], result.error) for result in results if result.error]
+        parts.append(article("Side by side", sections("overview", (entries, errors))))
+    parts += [result.article for result in results if result.article is not None]
+    hashes = tuple(
+        (result.data["capture"]["path"], result.data["capture"]["sha256"] or "not a file")
+        for result in results
+        if not result.error
+    )
+    parts.append(article("Record", sections("record", Statement.measured(command_line, hashes))))
+    return page(title_of(result.data["capture"]["path"] for result in results), parts)
+
+
+def title_of(paths: Iterable[str]) -> str:
+    """Name a page by its first file."""
+    first, *others = [Path(path).name for path in paths]
+    return f"{first} and {len(others)} more, flicker" if others else f"{first}, flicker"

@@ -1,0 +1,1 @@
+"""Sections of the page, a module each; `flicker.report.page.section` registers them."""

@@ -1,0 +1,68 @@
+"""A capture as a part of the page: its channels, then what holds for all of them."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+from flicker.report.markup import Markup, element, markup
+from flicker.report.overview import channel_title
+from flicker.report.page import sections
+
+if TYPE_CHECKING:
+    from flicker.analysis import CaptureReport, ChannelReport
+
+
+@dataclass(frozen=True, slots=True)
+class ChannelSheet:
+    """What the sections of a channel are made from."""
+
+    capture: CaptureReport
+    channel: ChannelReport
+    advice: tuple[str, ...] = ()  # what would make broken limits pass, a sentence each
+
+    @property
+    def title(self) -> str:
+        """File, and channel where the file holds several."""
+        return channel_title(self.capture, self.channel)
+
+
+@dataclass(frozen=True, slots=True)
+class Statement:
+    """What closes the page: how the program was called, on which files, by which rules."""
+
+    said: Mapping[str, Any]  # `record`, `limits`, `decision_rule` and `command_line` of the JSON
+    captures: tuple[tuple[str, str], ...] = ()  # path, SHA-256
+
+    @classmethod
+    def measured(cls, command_line: str, captures: Iterable[tuple[str, str]]) -> Statement:
+        """State what was only measured, and held against no limit."""
+        return cls({"record": {}, "limits": (), "command_line": command_line}, tuple(captures))
+
+
+def capture_article(capture: CaptureReport, advice: Iterable[Iterable[str]] | None = None) -> Markup:
+    """
+    Make the part of the page that shows one capture that was read.
+
+    Parameters
+    ----------
+    capture : CaptureReport
+        What was found.
+    advice : iterable of iterable of str, optional
+        For each channel what would make its broken limits pass, a sentence each.
+
+    Returns
+    -------
+    Markup
+        Every channel with its sections, then the sections of the capture.
+    """
+    sentences = [()] * len(capture.channels) if advice is None else [tuple(one) for one in advice]
+    sheets = [ChannelSheet(capture, *both) for both in zip(capture.channels, sentences, strict=True)]
+    channels = [article(sheet.title, sections("channel", sheet)) for sheet in sheets]
+    return markup(*channels, sections("capture", capture))
+
+
+def article(title: str, *contents: Markup) -> Markup:
+    """Make a part of the page under its own heading."""
+    return element("article", element("h2", title), *contents)
