@@ -10,6 +10,7 @@ from typing import Any
 from flicker import __version__, readers
 from flicker.conditioning import condition
 from flicker.conditioning.detector import undo_detector
+from flicker.conditioning.frames import ALIASING, aliasing, exposure_undone
 from flicker.light import ChannelLight, Light
 from flicker.limits import Conditions, Limit, RiskRegion, Verdict, chosen_limits, judge, risk_region
 from flicker.metrics import Observation, evaluate
@@ -91,8 +92,20 @@ def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float) -> C
     if not depth_known:
         reason = measures["percent_flicker"].reason
         families = tuple(replace(family, percent_flicker=Measure.missing("%", reason)) for family in families)
+    seen = measures["fundamental_frequency"].value
+    if seen is not None and trace.exposure and depth_known:
+        fit = observation.fit
+        relative = (fit.amplitudes / observation.level, fit.amplitude_error / observation.level)
+        undone = exposure_undone(*relative, seen, trace.exposure)
+        measures |= {name: measure for name, measure in undone.items() if name != "svm"}
+    notes = trace.notes
+    if seen is not None and any(note.code == ALIASING for note in notes):
+        doubt = aliasing(seen, trace.sample_rate)
+        notes = tuple(doubt if note.code == ALIASING else note for note in notes)
+        components = ()  # no line of them need be a line of the light
+        families = tuple(replace(one, percent_flicker=Measure.missing("%", doubt.message)) for one in families)
     region = risk_region(components, families) if depth_known else None
-    return ChannelReport(observation, measures, trace.notes, components, families, region)
+    return ChannelReport(observation, measures, notes, components, families, region)
 
 
 def check(

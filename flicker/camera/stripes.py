@@ -18,8 +18,8 @@ from flicker.signal.stripes_coding import Coding
 from flicker.signal.stripes_drive import Drive, Lag, common_drive
 from flicker.signal.stripes_figures import Samples, figures_of
 from flicker.signal.stripes_fit import StripeFit, fit_wave
-from flicker.signal.stripes_free import FreeShape, undo_exposure
-from flicker.signal.stripes_shape import Harmonics, PulseShape, fit_exposure, fit_pulse, is_rectangle
+from flicker.signal.stripes_free import FreeShape, shape_of
+from flicker.signal.stripes_shape import Harmonics, PulseShape, fit_exposure, is_rectangle
 from flicker.trace import FloatArray
 
 _LUMA = (0.2126, 0.7152, 0.0722)  # ITU-R BT.709
@@ -187,27 +187,16 @@ def _fitted_exposure(seen: Harmonics, longest: float) -> tuple[float | None, lis
 def _shapes(drive: Drive, by_itself: dict[str, Harmonics], exposure: float) -> dict[str, PulseShape | FreeShape]:
     """The light of each channel: the drive behind its emitter, or a shape of its own."""
     shapes: dict[str, PulseShape | FreeShape] = {}
-    shared = _shape(drive.seen, exposure)
+    shared = shape_of(drive.seen, exposure)
     for name, seen in by_itself.items():
         lag = drive.lags.get(name)
         if lag is None:
-            shape = _shape(seen, exposure) if seen.clear.any() else None
+            shape = shape_of(seen, exposure) if seen.clear.any() else None
         else:
             shape = None if shared is None or not lag.known else _lagging(shared, lag)
         if shape is not None:
             shapes[name] = shape
     return shapes
-
-
-def _shape(seen: Harmonics, exposure: float) -> PulseShape | FreeShape | None:
-    """A rectangular pulse where one fits, else what harmonics are left; None without any."""
-    if not seen.clear.any():
-        return None
-    pulse = fit_pulse(seen, exposure)
-    if is_rectangle(pulse):
-        return pulse
-    free = undo_exposure(seen, exposure)
-    return free if free.numbers.size else None
 
 
 def _lagging(shape: PulseShape | FreeShape, lag: Lag) -> PulseShape | FreeShape:

@@ -194,7 +194,7 @@ class LightMeter:
         pixels = np.ascontiguousarray(pixels[:, : share * self.blocks])
         sums = cv2.CV_32S if pixels.dtype == np.uint8 else cv2.CV_32F
         total = cv2.reduce(pixels.reshape(-1, share), 1, cv2.REDUCE_SUM, dtype=sums)
-        return np.multiply(total.reshape(-1, self.blocks), np.float32(1 / share), dtype=np.float32)
+        return np.asarray(np.multiply(total.reshape(-1, self.blocks), np.float32(1 / share), dtype=np.float32))
 
     def _range(self, part: int) -> tuple[float, float]:
         """Code of black (of no colour), and the span up to white."""

@@ -351,10 +351,10 @@ def _segments(times: npt.NDArray[np.float64], rate: float) -> tuple[Segment, ...
 
 
 def _aliasing(rate: float, exposure: float) -> Note:
-    known = "the exposure is undone" if exposure else "state --exposure to undo what it takes from the depth"
+    known = "" if exposure else "; state --exposure to undo what it takes from the depth"
     message = (
         f"frames at {rate:.6g} Hz cannot tell a light of frequency f from one of k times {rate:.6g} Hz "
-        "plus or minus f; a "
-        f"second clip at another rate with --same-light settles it, flicker stripes reads beyond it; {known}"
+        "plus or minus f; a second clip at another rate with --same-light settles it, flicker stripes reads beyond "
+        f"it{known}"
     )
     return Note("aliasing-possible", "info", message)

@@ -60,6 +60,8 @@ def short_reason(measure: Measure, notes: Iterable[Note]) -> str:
 def risk(channel: ChannelReport) -> str:
     """Tell the risk region and the number that decides it beside its bound."""
     place = channel.risk_region
+    if place is None and channel.measures["percent_flicker"].value is not None:
+        return "not known: faster lights look the same at this frame rate"
     if place is None:
         return "not known without the depth"
     words = f"{REGION_MARKS[place.region]} {REGION_WORDS[place.region]}"
@@ -85,6 +87,8 @@ def next_step(channel: ChannelReport) -> str:
     place = channel.risk_region
     if place is None:
         unknown = channel.measures["percent_flicker"]
+        if unknown.value is not None:
+            return "read the light with flicker stripes, or film it at another rate too and add --same-light"
         doubt = next((note.code for note in channel.notes if note.message == unknown.reason), "what hides the depth")
         return f"cure {doubt}, then measure again"
     if place.modulation is None or place.region == "no-observable-effect":

@@ -8,7 +8,7 @@ import numpy as np
 import scipy.fft
 
 from flicker.light import ComplexArray
-from flicker.signal.stripes_shape import Harmonics
+from flicker.signal.stripes_shape import Harmonics, PulseShape, fit_pulse, is_rectangle
 from flicker.trace import FloatArray
 
 BLIND = 0.08  # what the exposure leaves of a harmonic: below this it is blind
@@ -68,6 +68,17 @@ def undo_exposure(seen: Harmonics, exposure: float) -> FreeShape:
     if numbers.size:  # harmonics above the last one seen, if they fall as those of a cusp do: 1 / h^2
         bound += float(np.abs(amplitudes[-1])) * highest
     return FreeShape(numbers, amplitudes, errors, unseen, bound, seen.frequency)
+
+
+def shape_of(seen: Harmonics, exposure: float) -> PulseShape | FreeShape | None:
+    """Give a rectangular pulse where one fits, else what harmonics the exposure [s] left; None without any."""
+    if not seen.clear.any():
+        return None
+    pulse = fit_pulse(seen, exposure)
+    if is_rectangle(pulse):
+        return pulse
+    free = undo_exposure(seen, exposure)
+    return free if free.numbers.size else None
 
 
 def extremes(numbers: FloatArray, amplitudes: ComplexArray) -> tuple[float, float, FloatArray]:
