@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -11,6 +11,7 @@ from flicker import __version__, readers
 from flicker.conditioning import condition
 from flicker.conditioning.detector import undo_detector
 from flicker.conditioning.frames import ALIASING, aliasing, exposure_undone
+from flicker.errors import InputError
 from flicker.light import ChannelLight, Light
 from flicker.limits import Conditions, Limit, RiskRegion, Verdict, chosen_limits, judge, risk_region
 from flicker.metrics import Observation, evaluate
@@ -106,6 +107,53 @@ def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float) -> C
         families = tuple(replace(one, percent_flicker=Measure.missing("%", doubt.message)) for one in families)
     region = risk_region(components, families) if depth_known else None
     return ChannelReport(observation, measures, notes, components, families, region)
+
+
+def light_of(path: str | Path, *, filmed: Mapping[str, Any] | None = None, **options: Any) -> tuple[Light, str]:
+    """
+    Take the light of a capture for prediction.
+
+    Parameters
+    ----------
+    path : path
+        WAV, CSV or video.
+    filmed : mapping, optional
+        What is known of the camera that filmed a video, by the keywords of `flicker.filmed.read_back`, and
+        `camera_file`: with a line time the light is read back from the stripes.
+    **options
+        As for `read`.
+
+    Returns
+    -------
+    light : Light
+        Of all channels.
+    source : str
+        What of a video it was read from; empty for other captures.
+
+    Raises
+    ------
+    InputError
+        If a camera is stated for a capture that is no video.
+    """
+    known = {name: value for name, value in (filmed or {}).items() if value is not None}
+    if readers.kind_of(path) != "video":
+        if known:
+            raise InputError(f"{Path(path).name} is no video: leave out what filmed it (--filmed-with and the like)")
+        return measure(read(path, **options)).light, ""
+    from flicker.filmed import from_camera, read_back
+
+    file = known.pop("camera_file", None)
+    how = known if file is None else from_camera(file, known)
+    if not any(how.get(name) for name in ("line_time", "line_rate", "readout_time")):
+        source = "the means of its frames, in which light faster than half the frame rate shows as slower light"
+        return measure(read(path, **options)).light, f"{source}: state what filmed it with --filmed-with"
+    kept = {name: options[name] for name in ("start", "duration", "region", "transfer") if name in options}
+    report = read_back(path, **how, **kept)
+    told = "stated" if report.stripes.exposure_told else "fitted"
+    return report.light, (
+        f"its stripes, {1e6 * (report.stripes.line_time or 0):.4g} µs a line, "
+        f"exposure {1e3 * (report.stripes.exposure or 0):.4g} ms ({told})"
+    )
 
 
 def check(

@@ -13,6 +13,7 @@ from flicker.cli.options import (
     TIME,
     camera_from_options,
     camera_options,
+    filmed_options,
     light_from_options,
     light_options,
     several,
@@ -51,6 +52,7 @@ _outputs = several(
 @click.command()
 @click.argument("capture", metavar="[CAPTURE]", required=False)
 @light_options
+@filmed_options
 @camera_options
 @_what_to_predict
 @_outputs
@@ -72,9 +74,10 @@ def command(
 ) -> None:
     """Predict what a camera will record of a light: bands, how deep, how many, which way they roll.
 
-    The light comes from a CAPTURE, or is typed in with --frequency and --duty. The camera comes from a file or from
-    options; what is unknown of it leaves gaps in the answer, which say how to fill them. Contrasts are
-    (max - min)/(max + min) of light within one frame, those of the worst frame.
+    The light comes from a CAPTURE, or is typed in with --frequency and --duty. A video gives its light best through
+    its stripes: say what filmed it with --filmed-with. The camera to predict comes from a file or from options; what
+    is unknown of it leaves gaps in the answer, which say how to fill them. Contrasts are (max - min)/(max + min) of
+    light within one frame, those of the worst frame.
 
     Example:
 
@@ -82,9 +85,10 @@ def command(
     """
     from flicker.camera.answer import predict_all
     from flicker.report.bands import bands_words
+    from flicker.report.typesetting import wrap
 
     spare_the_captures([] if capture is None else [capture], [json_target, clip])
-    light = light_from_options(capture, options)
+    light, source = light_from_options(capture, options)
     camera = camera_from_options(options)
     answer = predict_all(
         light,
@@ -98,9 +102,10 @@ def command(
         gain=1.0 if grade_gain is None else grade_gain,
     )
     notes = _draw(answer, figures, clip, scene) if figures or clip else ()
-    write_json({"capture": capture, **answer.to_dict()}, json_target)
+    write_json({"capture": capture, "light_from": source or None, **answer.to_dict()}, json_target)
     words = bands_words(answer, width=terminal_width(), colour=colour_wanted())
-    print_words("\n".join([words, *notes]), json_target)
+    told = wrap(f"i The light was read from {source}.", terminal_width(), "  ", hang=2) if source else []
+    print_words("\n".join([words, *told, *notes]), json_target)
 
 
 def _draw(answer: Answer, figures: str | None, clip: str | None, scene: str | None) -> list[str]:

@@ -108,7 +108,7 @@ def _lights(
     from flicker.tunable import TunableLight
 
     if capture is None:
-        lights = [TunableLight.typed(channel) for channel in light_from_options(None, options)]
+        lights = [TunableLight.typed(channel) for channel in light_from_options(None, options)[0]]
         titles = ["light typed in"] if len(lights) == 1 else [light.channel.name for light in lights]
         return [
             (title, light, [judge(row, *light.findings(), decision) for row in rows])

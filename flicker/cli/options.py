@@ -176,6 +176,14 @@ light_options = several(
     _photodiode_options,
 )
 
+filmed_options = several(
+    click.option(
+        "--filmed-with", "filmed_camera_file", metavar="FILE.toml", help="Camera file of what filmed the capture."
+    ),
+    click.option("--filmed-line-time", type=TIME, help="Line time of what filmed the capture."),
+    click.option("--filmed-exposure", type=TIME, help="Exposure at which the capture was filmed; fitted if left out."),
+)
+
 camera_options = several(
     click.option("--camera", "camera_file", metavar="FILE.toml", help="Camera file; the options below override it."),
     click.option("--lines", type=click.IntRange(min=1), metavar="N", help="Lines of a frame."),
@@ -253,22 +261,27 @@ def camera_from_options(options: dict[str, Any]) -> Camera:
     return camera.changed(**{name: options.pop(name) for name in names})
 
 
-def light_from_options(capture: str | None, options: dict[str, Any]) -> Light:
-    """Take the light and reading options out of `options`: a light typed in, or that of a capture."""
+def light_from_options(capture: str | None, options: dict[str, Any]) -> tuple[Light, str]:
+    """
+    Take the light and reading options out of `options`: a light typed in, or that of a capture.
+
+    The second is what of a video it was read from, empty for others.
+    """
     from flicker.light import pwm_light
 
     typed = {name: options.pop(name) for name in ("frequency", "duty", "low_level", "decay")}
     how = {name: options.pop(name) for name in _READING}
+    filmed = {name: options.pop(f"filmed_{name}", None) for name in ("camera_file", "line_time", "exposure")}
     if capture is not None:
-        given = next((name for name, value in typed.items() if value is not None), None)
-        if given:
+        word = next((name for name, value in typed.items() if value is not None), None)
+        if word:
             raise InputError(
-                f"--{given.replace('_', '-')} types a light in: give it, or the capture {capture}, not both"
+                f"--{word.replace('_', '-')} types a light in: give it, or the capture {capture}, not both"
             )
-        from flicker.analysis import measure, read
+        from flicker.analysis import light_of
 
-        return measure(read(capture, **how)).light
+        return light_of(capture, filmed=filmed, **given(**how))
     for name in ("frequency", "duty"):
         if typed[name] is None:
             raise InputError(f"no light: give a capture, or --frequency and --duty (--{name} is missing)")
-    return pwm_light(typed["frequency"], typed["duty"], typed["low_level"] or 0.0, typed["decay"] or 0.0)
+    return pwm_light(typed["frequency"], typed["duty"], typed["low_level"] or 0.0, typed["decay"] or 0.0), ""

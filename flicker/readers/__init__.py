@@ -148,6 +148,12 @@ def read(
         return dataclasses.replace(capture, path=path, sha256=fingerprint.hexdigest())
 
 
+def kind_of(path: str | Path) -> str | None:
+    """Name the kind of a capture by its first bytes; None where no reader knows it."""
+    head = _head(Path(path))
+    return next((entry.kind for entry in _in_order() if entry.recognises(head)), None)
+
+
 def _in_order() -> list[Reader]:
     return sorted(READERS.values(), key=lambda entry: entry.order)
 
