@@ -43,7 +43,7 @@ def draw_spectrum(channel: ChannelReport, title: str) -> Figure:
     lines = channel.components
     lowest = 0.3 * min((line.frequency for line in lines), default=4 * frequencies[0])
     left = max(float(frequencies[0]), lowest)
-    grid, tops = _envelope(frequencies, np.maximum(percent, 1e-9), left)
+    grid, tops = envelope(frequencies, np.maximum(percent, 1e-9), left, _POINTS)
     floor = float(np.median(tops))
     axes.plot(grid, tops, color=FAINT, linewidth=0.5, label="spectrum")
     for line in lines:
@@ -70,12 +70,12 @@ def draw_spectrum(channel: ChannelReport, title: str) -> Figure:
     return figure
 
 
-def _envelope(frequencies: FloatArray, percent: FloatArray, left: float) -> tuple[FloatArray, FloatArray]:
+def envelope(frequencies: FloatArray, percent: FloatArray, left: float, points: int) -> tuple[FloatArray, FloatArray]:
     """Keep the largest value of each narrow step of the logarithmic axis, so that no line is lost in drawing."""
     inside = frequencies >= left
     frequencies, percent = frequencies[inside], percent[inside]
-    if frequencies.size <= _POINTS:
+    if frequencies.size <= points:
         return frequencies, percent
-    step = np.floor(np.log(frequencies / frequencies[0]) / np.log(frequencies[-1] / frequencies[0]) * (_POINTS - 1))
+    step = np.floor(np.log(frequencies / frequencies[0]) / np.log(frequencies[-1] / frequencies[0]) * (points - 1))
     starts = np.flatnonzero(np.diff(step, prepend=-1))
     return frequencies[starts], np.maximum.reduceat(percent, starts)

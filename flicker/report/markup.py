@@ -50,8 +50,23 @@ def element(name: str, *contents: Content, **attributes: object) -> Markup:
     return Markup(opening if name in _EMPTY else f"{opening}{markup(*contents)}</{name}>")
 
 
-def table(head: Iterable[Content], rows: Iterable[Iterable[Content]], *, numbers: Iterable[int] = ()) -> Markup:
-    """Make a table that scrolls in itself where it is too wide; `numbers` are the columns set to the right."""
+def table(
+    head: Iterable[Content], rows: Iterable[Iterable[Content]], *, numbers: Iterable[int] = (), kind: str = ""
+) -> Markup:
+    """
+    Make a table that scrolls in itself where it is too wide.
+
+    Parameters
+    ----------
+    head : iterable
+        Names of the columns.
+    rows : iterable of iterable
+        Cells; the first of each row is its name.
+    numbers : iterable of int
+        Columns that are set to the right.
+    kind : str
+        Class of the style sheet: a `stacked` table puts its cells below each other where the page is narrow.
+    """
     right = set(numbers)
 
     def row(kind: str, cells: Iterable[Content]) -> Markup:
@@ -63,8 +78,8 @@ def table(head: Iterable[Content], rows: Iterable[Iterable[Content]], *, numbers
         return element("tr", *made)
 
     body = element("tbody", *(row("td", cells) for cells in rows))
-    return element("div", element("table", element("thead", row("th", head)), body), class_="wide", tabindex=0,
-                   role="region", aria_label="table")  # fmt: skip
+    made = element("table", element("thead", row("th", head)), body)
+    return element("div", made, class_=f"wide {kind}".strip(), tabindex=0, role="region", aria_label="table")
 
 
 def pairs(entries: Iterable[tuple[str, Content]], **attributes: object) -> Markup:

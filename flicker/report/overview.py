@@ -15,7 +15,7 @@ from flicker.report.typesetting import Paint, wrap
 if TYPE_CHECKING:
     from flicker.analysis import CaptureReport, ChannelReport
 
-_HEAD = ("capture", "frequency", "flicker", "index", f"risk ({STANDARD})")
+HEAD = ("capture", "frequency", "flicker", "index", f"risk ({STANDARD})")
 _LESSER_COLUMNS = (3, 1)  # left out first where the terminal is narrow
 _NARROWEST_NAME = 16
 
@@ -39,9 +39,9 @@ def overview_entries(capture: CaptureReport) -> list[OverviewEntry]:
 
 def overview(entries: Sequence[OverviewEntry], width: int, paint: Paint) -> Iterable[str]:
     """Hold all channels side by side, the riskiest named below; on a narrow terminal without the lesser columns."""
-    rows = [_HEAD, *(entry.cells for entry in entries)]
-    sizes = [max(len(row[column]) for row in rows) for column in range(len(_HEAD))]
-    shown = list(range(len(_HEAD)))
+    rows = [HEAD, *(entry.cells for entry in entries)]
+    sizes = [max(len(row[column]) for row in rows) for column in range(len(HEAD))]
+    shown = list(range(len(HEAD)))
     for lesser in _LESSER_COLUMNS:
         if _NARROWEST_NAME + sum(sizes[column] + 2 for column in shown[1:]) + 2 > width:
             shown.remove(lesser)
@@ -49,16 +49,21 @@ def overview(entries: Sequence[OverviewEntry], width: int, paint: Paint) -> Iter
     head, *lines = ("  ".join(_cell(row[column], column, sizes[column]) for column in shown).rstrip() for row in rows)
     yield "  " + paint.faint(head)
     yield from ("  " + line for line in lines)
-    judged = [(entry.severity, entry) for entry in entries if entry.severity is not None]
-    if len(judged) > 1:
-        _, worst = max(judged, key=lambda pair: pair[0])
+    worst = riskiest(entries)
+    if worst is not None:
         yield ""
         yield from wrap(f"riskiest: {worst.cells[0]}: {worst.risk}", width, "  ", hang=2)
 
 
+def riskiest(entries: Sequence[OverviewEntry]) -> OverviewEntry | None:
+    """Give the entry with the gravest risk; None where fewer than two have a known one."""
+    judged = [(entry.severity, entry) for entry in entries if entry.severity is not None]
+    return max(judged, key=lambda pair: pair[0])[1] if len(judged) > 1 else None
+
+
 def _cell(text: str, column: int, size: int) -> str:
     """Set numbers to the right, words to the left; of a long name the end stays, for that tells files apart."""
-    if 0 < column < len(_HEAD) - 1:
+    if 0 < column < len(HEAD) - 1:
         return f"{text:>{size}}"
     return f"{text:<{size}}" if len(text) <= size else "…" + text[1 - size :]
 

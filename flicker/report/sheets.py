@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from flicker.report.markup import Markup, element, markup
@@ -59,8 +60,11 @@ def capture_article(capture: CaptureReport, advice: Iterable[Iterable[str]] | No
     """
     sentences = [()] * len(capture.channels) if advice is None else [tuple(one) for one in advice]
     sheets = [ChannelSheet(capture, *both) for both in zip(capture.channels, sentences, strict=True)]
+    if len(sheets) == 1:
+        return article(sheets[0].title, sections("channel", sheets[0]), sections("capture", capture))
     channels = [article(sheet.title, sections("channel", sheet)) for sheet in sheets]
-    return markup(*channels, sections("capture", capture))
+    name = Path(capture.path).name if capture.path else "capture"
+    return markup(*channels, article(f"{name}, all channels", sections("capture", capture)))
 
 
 def article(title: str, *contents: Markup) -> Markup:

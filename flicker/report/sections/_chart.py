@@ -98,14 +98,21 @@ class Chart:
         """Draw a line through points; `kind` is a class of the style sheet."""
         self._over.append(element("path", d=_path(self.across(x), self.up(y)), class_=f"line {kind}"))
 
-    def area(self, x: FloatArray, low: FloatArray, high: FloatArray, kind: str, pattern: str = "") -> None:
-        """Fill between two lines, cut off where the axes end; with a pattern over it where one is named."""
-        across = self.across(x)
-        low, high = (np.clip(self.up(edge), _TOP, HEIGHT - _BOTTOM) for edge in (low, high))
-        path = f"{_path(np.append(across, across[::-1]), np.append(low, high[::-1]))}Z"
+    def area(self, x: FloatArray, low: FloatArray, high: FloatArray, kind: str) -> None:
+        """Fill between two lines, cut off where the axes end."""
+        self._over.append(element("path", d=self._outline(x, low, high), class_=f"area {kind}"))
+
+    def ground(self, x: FloatArray, low: FloatArray, high: FloatArray, kind: str, pattern: str = "") -> None:
+        """Fill between two lines under the grid, with a pattern over it where one is named."""
+        path = self._outline(x, low, high)
         self._under.append(element("path", d=path, class_=f"area {kind}"))
         if pattern:
             self._under.append(element("path", d=path, fill=f"url(#{pattern})"))
+
+    def _outline(self, x: FloatArray, low: FloatArray, high: FloatArray) -> str:
+        across = self.across(x)
+        low, high = (np.clip(self.up(edge), _TOP, HEIGHT - _BOTTOM) for edge in (low, high))
+        return f"{_path(np.append(across, across[::-1]), np.append(low, high[::-1]))}Z"
 
     def marks(self, points: Iterable[tuple[float, float, str]], shape: str, kind: str) -> None:
         """Set marks at (x, y), each with what it says."""
@@ -133,8 +140,8 @@ class Chart:
         """Draw a line across at one value and name it."""
         place = float(self.up(y))
         self._over.append(element("path", d=f"M{_LEFT} {place:.1f}H{WIDTH - self.right}", class_=f"line {kind}"))
-        below = place < _TOP + 18
-        self._write(WIDTH - self.right - 3, place + (14 if below else -5), words, "end", kind)
+        above = place > HEIGHT - _BOTTOM - 20
+        self._write(WIDTH - self.right - 3, place + (-5 if above else 13), words, "end", kind)
 
     def upright(self, x: float, words: str, kind: str) -> None:
         """Draw an upright line at one value and name it at the top."""
@@ -151,6 +158,12 @@ class Chart:
         place = min(max(float(self.across(x)), _LEFT + half), WIDTH - self.right - half)
         height = max(float(self.up(y)) - lift, _TOP + 10)
         self._write(place, height, words, anchor, kind)
+
+    def along(self, x: float, y: float, words: str, kind: str) -> None:
+        """Write words at a place of a drawing with two logarithmic axes, along the line of direct proportion."""
+        run, rise = self.across(10 * x) - self.across(x), self.up(10 * y) - self.up(y)
+        turn = f"translate({self.across(x):.1f} {self.up(y):.1f}) rotate({math.degrees(math.atan2(rise, run)):.1f})"
+        self._over.append(element("text", words, transform=turn, dy="4", text_anchor="middle", class_=f"name {kind}"))
 
     def _write(self, x: float, y: float, words: str, anchor: str, kind: str) -> None:
         self._over.append(
@@ -194,14 +207,10 @@ def figure(drawn: Markup, caption: str, told: str, *, size: tuple[int, int] = (W
     return element("figure", picture, element("figcaption", caption), says)
 
 
-def reduced(x: FloatArray, y: FloatArray, columns: int) -> tuple[FloatArray, FloatArray]:
-    """Keep the smallest and the largest of each of `columns` even pieces, so that nothing that shows is lost."""
-    if y.size <= 2 * columns:
-        return x, y
+def extent(x: FloatArray, y: FloatArray, columns: int) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Give place, smallest and largest of each of `columns` even pieces, so that nothing that shows is lost."""
     starts = np.linspace(0, y.size, columns, endpoint=False).astype(int)
-    both = np.stack([np.minimum.reduceat(y, starts), np.maximum.reduceat(y, starts)], axis=1)
-    both[1::2] = both[1::2, ::-1]
-    return np.repeat(x[starts], 2), both.ravel()
+    return x[starts], np.minimum.reduceat(y, starts), np.maximum.reduceat(y, starts)
 
 
 def _path(x: FloatArray, y: FloatArray) -> str:

@@ -9,7 +9,7 @@ from flicker.trace import FloatArray
 
 _CYCLES = 4  # few, for fine stripes are unpleasant to look at
 _STEPS = 240
-_DEPTH_SHOWN = 0.5  # share of the cycle's lowest light that stays visible on either ground
+_GREYS = 25  # that are told apart
 
 
 def light_strip(levels: FloatArray, told: str) -> Markup:
@@ -31,12 +31,12 @@ def light_strip(levels: FloatArray, told: str) -> Markup:
     place = (np.arange(_STEPS) + 0.5) / _STEPS * _CYCLES % 1.0
     shown = np.clip(levels[(place * levels.size).astype(int)] / max(float(levels.max()), 1e-300), 0.0, 1.0)
     # neighbours that look alike are one piece
-    grey = np.round(shown ** (1 / 2.2) * 100).astype(int)
+    grey = (np.round(shown ** (1 / 2.2) * _GREYS) * 100 / _GREYS).astype(int)
     starts = np.flatnonzero(np.diff(grey, prepend=-1))
     ends = np.append(starts[1:], _STEPS)
     pieces = [
         element("rect", x=start, y=0, width=end - start, height=10, fill=f"hsl(45 {40 if level > 4 else 0}% {level}%)")
         for start, end, level in zip(starts.tolist(), ends.tolist(), grey[starts].tolist(), strict=True)
     ]
-    return element("svg", element("desc", told), markup(*pieces), class_="strip", viewBox=f"0 0 {_STEPS} 10",
-                   preserveAspectRatio="none", role="img", aria_label=told)  # fmt: skip
+    return element("svg", element("title", told), markup(*pieces), class_="strip", viewBox=f"0 0 {_STEPS} 10",
+                   preserveAspectRatio="none", shape_rendering="crispEdges", role="img", aria_label=told)  # fmt: skip
