@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import shlex
 import signal
 import threading
 from collections.abc import Iterator
@@ -16,11 +15,13 @@ from flicker.cli.options import (
     limit_options,
     many_options,
     output_options,
+    page_option,
     reading_options,
     several,
     uncertainty_options,
 )
 from flicker.cli.output import (
+    command_line,
     complain,
     make_folder,
     print_words,
@@ -65,11 +66,9 @@ _more_outputs = several(
 @many_options
 @_sweep_options
 @output_options
+@page_option
 @_more_outputs
-@click.pass_context
 def command(
-    context: click.Context,
-    /,
     captures: tuple[str, ...],
     limits: tuple[str, ...],
     limits_file: str | None,
@@ -83,6 +82,7 @@ def command(
     resume: str | None,
     json_target: str | None,
     quiet: bool,
+    html_target: str | None,
     csv_target: str | None,
     figures: str | None,
     record_file: str | None,
@@ -99,6 +99,8 @@ def command(
 
         flicker check bridge-display-night.csv --dark-level 0.012 --limit ieee1789-low-risk
     """
+    from dataclasses import replace
+
     from flicker.files import write_text
     from flicker.limits import chosen_limits
     from flicker.report.check import Answer, Terms
@@ -113,17 +115,22 @@ def command(
     earlier = read_manifest(against) if against else ()
     record = read_record(record_file) if record_file else {}
     sources = [*(step.capture for step in (*steps, *earlier)), manifest, against, limits_file, record_file]
-    spare_the_captures(filter(None, [*sources, reading["dark_capture"]]), [json_target, csv_target])
+    spare_the_captures(filter(None, [*sources, reading["dark_capture"]]), [json_target, csv_target, html_target])
     folder = make_folder(figures) if figures else None
     if resume:
         make_folder(resume)
     in_full = len(steps) <= _IN_FULL or verbose
     measuring = given(clock_ppm=clock_ppm, dark_uncertainty=dark_uncertainty)
     task = Task(chosen_limits(limits, limits_file, on_date), decision, given(**reading), measuring, resume, in_full)
+    shown = task
+    if html_target and in_full:
+        from flicker.report.sheets import judged_article
+
+        shown = replace(task, show=judged_article)
     width = terminal_width()
-    terms = Terms(task.limits, decision, shlex.join(context.find_root().obj or ()), record)
+    terms = Terms(task.limits, decision, command_line(), record)
     with _ends_in_order(), Answer(terms) as answer:
-        for result in _judged(steps, task, workers, quiet):
+        for result in _judged(steps, shown, workers, quiet):
             if "error" in result and len(steps) == 1:
                 raise UnreadableFileError(result["error"])
             answer.add(result)
@@ -135,6 +142,8 @@ def command(
         write_pieces(answer.json_pieces(before), json_target)
         if csv_target:
             write_text(csv_target, answer.table())
+        if html_target:
+            write_text(html_target, answer.page(before))
         if folder:
             from flicker.plots.sweep import save_sweeps
 

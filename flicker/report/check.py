@@ -10,8 +10,10 @@ from typing import Any
 
 from flicker import __version__
 from flicker.limits import Limit, Outcome, Verdict, overall
+from flicker.report.markup import Markup
 from flicker.report.record import record_words
 from flicker.report.results import Spool, table_head, table_rows, table_text
+from flicker.report.sheets import Statement, Sweep
 from flicker.report.sweep import change_words, course_words, sweep_words
 from flicker.report.verdicts import RULES, cures, verdict_words
 from flicker.sweep.course import Change, Course, Point, changes, courses, points_of
@@ -35,6 +37,7 @@ class Answer:
         self._by_id = {limit.id: limit for limit in terms.limits}
         self._spool = Spool()
         self._rows: list[list[Any]] = []
+        self._articles: list[Markup] = []
         self._hashes: list[tuple[str, str]] = []
         self.points: list[Point] = []
         self.errors: list[tuple[str, str]] = []
@@ -48,7 +51,10 @@ class Answer:
         self._spool.close()
 
     def add(self, result: Mapping[str, Any]) -> None:
-        """Take in the JSON form of one capture."""
+        """Take in the JSON form of one capture, and its part of the page where there is one."""
+        if "article" in result:
+            self._articles.append(Markup(result["article"]))
+            result = {key: value for key, value in result.items() if key != "article"}
         self._spool.add(result)
         found = points_of(result)
         self.points += found
@@ -104,6 +110,20 @@ class Answer:
     def table(self) -> str:
         """Give the table, CSV."""
         return table_text(table_head(list(self._by_id)), self._rows)
+
+    def page(self, before: Sequence[Point]) -> str:
+        """Give the page: all captures together where there are several, then each, then the record."""
+        from flicker.report.measured_page import judged_page
+
+        head = table_head(list(self._by_id))
+        swept = Sweep(
+            tuple(self.points),
+            tuple(self.errors),
+            self.courses,
+            self.changes(before) if before else None,
+            tuple(dict(zip(head, row, strict=True)) for row in self._rows),
+        )
+        return judged_page(swept, self._articles, Statement(self._statement(), tuple(self._hashes)))
 
     def _statement(self) -> dict[str, Any]:
         """What a laboratory report must state beside the results."""

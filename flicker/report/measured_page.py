@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 from flicker.report.captures import Measured
 from flicker.report.page import page, sections
-from flicker.report.sheets import Statement, article
+from flicker.report.sheets import Statement, Sweep, article
 
 if TYPE_CHECKING:
     from flicker.report.markup import Markup
@@ -45,7 +45,33 @@ def measured_page(results: Sequence[Measured], command_line: str) -> str:
     return page(title_of(result.data["capture"]["path"] for result in results), parts)
 
 
+def judged_page(swept: Sweep, articles: Sequence[Markup], statement: Statement) -> str:
+    """
+    Make the page of a run of `flicker check`.
+
+    Parameters
+    ----------
+    swept : Sweep
+        All captures.
+    articles : sequence of Markup
+        The captures that are shown in full.
+    statement : Statement
+        By which rules they were judged.
+
+    Returns
+    -------
+    str
+        HTML: of several captures first what they show together, then each, then the record.
+    """
+    parts = list(articles)
+    if len(swept.points) + len(swept.errors) > 1 or swept.changes is not None:
+        parts.insert(0, article("All captures", sections("sweep", swept)))
+    parts.append(article("Record", sections("record", statement)))
+    paths = [*(point.capture for point in swept.points), *(path for path, _ in swept.errors)]
+    return page(title_of(dict.fromkeys(paths)), parts)
+
+
 def title_of(paths: Iterable[str]) -> str:
     """Name a page by its first file."""
-    first, *others = [Path(path).name for path in paths]
+    first, *others = [Path(path).name for path in paths] or ["nothing judged"]
     return f"{first} and {len(others)} more, flicker" if others else f"{first}, flicker"

@@ -10,9 +10,11 @@ from typing import TYPE_CHECKING, Any
 from flicker.report.markup import Markup, element, markup
 from flicker.report.overview import channel_title
 from flicker.report.page import sections
+from flicker.report.verdicts import cures
 
 if TYPE_CHECKING:
     from flicker.analysis import CaptureReport, ChannelReport
+    from flicker.sweep.course import Change, Course, Point
 
 
 @dataclass(frozen=True, slots=True)
@@ -40,6 +42,22 @@ class Statement:
     def measured(cls, command_line: str, captures: Iterable[tuple[str, str]]) -> Statement:
         """State what was only measured, and held against no limit."""
         return cls({"record": {}, "limits": (), "command_line": command_line}, tuple(captures))
+
+
+@dataclass(frozen=True, slots=True)
+class Sweep:
+    """Many captures that were judged, and what became of an earlier sweep."""
+
+    points: tuple[Point, ...]
+    errors: tuple[tuple[str, str], ...]  # path, reason
+    courses: tuple[Course, ...]
+    changes: tuple[Change, ...] | None  # None where there is no earlier sweep
+    rows: tuple[Mapping[str, Any], ...]  # of the table of results, by the names of its columns
+
+
+def judged_article(capture: CaptureReport, data: Mapping[str, Any]) -> str:
+    """Make the part of a page that shows a capture that was judged; `data` is its JSON form with what would cure it."""
+    return capture_article(capture, [cures(channel["verdicts"]) for channel in data["channels"]])
 
 
 def capture_article(capture: CaptureReport, advice: Iterable[Iterable[str]] | None = None) -> Markup:

@@ -20,6 +20,7 @@ _KEEP = {  # of one, of several
     "pass": ("keeps every limit", "keep every limit"),
     "not-applicable": ("falls under no limit", "fall under no limit"),
 }
+NUMBERS = ("level", "frequency", "flicker", "margin")  # columns that hold numbers
 _MODES = {
     "amplitude": "by amplitude",
     "pwm": "by PWM (pulse width)",
@@ -46,32 +47,35 @@ def sweep_words(points: Sequence[Point], errors: Sequence[tuple[str, str]], *, w
     str
         A headline, then a table; of very many captures the worst ones only.
     """
-    lines = [_headline(points, errors)]
+    lines = [sweep_headline(points, errors)]
     shown = list(points)
     if len(shown) > _MOST_ROWS:
         shown = sorted(points, key=weight)[:_MOST_ROWS]
         lines += [f"the {_MOST_ROWS} worst of {len(points)}; --csv writes them all"]
     if shown:
-        lines += ["", *_table(shown, width), *_reasons(shown, width)]
+        lines += ["", *_table(shown, width)]
+        reasons = undecided_reasons(shown)
+        lines += [""] if reasons else []
+        lines += [line for reason in reasons for line in wrap(reason, width, "  ", 2)]
     for path, reason in errors:
         lines += wrap(f"not read: {Path(path).name}: {reason}", width, "  ", 2)
     return "\n".join(lines)
 
 
-def _reasons(points: Sequence[Point], width: int) -> list[str]:
-    """Say why captures are undecided, each reason once with all that it holds for."""
+def undecided_reasons(points: Sequence[Point]) -> list[str]:
+    """Say why captures are undecided, each reason once with the captures that it holds for."""
     reasons: dict[str, list[str]] = {}
     for point in points:
         if point.verdict == "undecided" and point.reason:
             reasons.setdefault(f"{point.limit}: {point.reason}", []).append(Path(point.capture).name)
-    lines = [""] if reasons else []
-    for reason, names in reasons.items():
-        more = f" and {len(names) - 3} more" if len(names) > 3 else ""
-        lines += wrap(f"undecided: {', '.join(names[:3])}{more}: {reason}", width, "  ", 2)
-    return lines
+    return [
+        f"undecided: {', '.join(names[:3])}{f' and {len(names) - 3} more' if len(names) > 3 else ''}: {reason}"
+        for reason, names in reasons.items()
+    ]
 
 
-def _headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -> str:
+def sweep_headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -> str:
+    """Say how many captures keep the limits."""
     counts = Counter(point.verdict for point in points)
     judged = len({point.capture for point in points})
     what = "captures" if judged == len(points) else f"channels of {judged} captures"
@@ -82,7 +86,8 @@ def _headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -> str
     return f"{answer}: of {len(points)} {what}, {', '.join(parts)}"
 
 
-def _table(points: Sequence[Point], width: int) -> list[str]:
+def point_rows(points: Sequence[Point]) -> tuple[list[str], list[list[str]]]:
+    """Give the head and the cells of a table of captures; columns that would say the same throughout are left out."""
     channels = Counter(point.capture for point in points)
     limits = len({point.limit for point in points}) > 1
     units = len({point.unit for point in points}) > 1
@@ -109,10 +114,15 @@ def _table(points: Sequence[Point], width: int) -> list[str]:
             margin_in_words(point.margin),
         ]
         rows.append(row)
+    return head, rows
+
+
+def _table(points: Sequence[Point], width: int) -> list[str]:
+    head, rows = point_rows(points)
     wide = [max(len(row[column]) for row in (head, *rows)) for column in range(len(head))]
     place = head.index("capture")
     wide[place] = max(12, min(wide[place], width - sum(wide) + wide[place] - 2 * len(wide)))
-    numbers = {head.index(name) for name in ("level", "frequency", "flicker", "margin") if name in head}
+    numbers = {head.index(name) for name in NUMBERS if name in head}
     return [_row(row, wide, numbers, place) for row in (head, *rows)]
 
 
@@ -136,9 +146,20 @@ def _amount(value: float | None, unit: str, digits: int = 5) -> str:
 
 def course_words(course: Course, *, width: int = 100) -> str:
     """Say where the worst step is, how the light is dimmed, where that changes, and whether the level rises."""
-    who = " ".join(part for part in (course.unit, f"({course.channel})") if part)
+    lines = [f"{course_title(course)}:"]
+    for sentence in course_sentences(course):
+        lines += wrap(sentence, width, "  ", 2)
+    return "\n".join(lines)
+
+
+def course_title(course: Course) -> str:
+    """Name a course by its specimen and channel."""
+    return f"Over the dimming range of {course.unit} ({course.channel})" if course.unit else "Over the dimming range"
+
+
+def course_sentences(course: Course) -> list[str]:
+    """Give what there is to say of a course, a sentence each."""
     worst = course.worst
-    lines = [f"Over the dimming range of {who}:" if course.unit else "Over the dimming range:"]
     deepest = "" if worst.depth is None else f", {quantity(worst.depth, '%', 3)} deep"
     at = "" if worst.frequency is None else f" at {quantity(worst.frequency, 'Hz', 5)}"
     by = f" by {worst.limit}" if worst.limit else ""
@@ -160,9 +181,7 @@ def course_words(course: Course, *, width: int = 100) -> str:
         "captures, or the driver's steps"
         for before, after in course.breaks
     ] or ["the mean level falls at every step down"]
-    for sentence in sentences:
-        lines += wrap(sentence, width, "  ", 2)
-    return "\n".join(lines)
+    return sentences
 
 
 def _percent(point: Point) -> str:
@@ -171,13 +190,28 @@ def _percent(point: Point) -> str:
 
 def change_words(changes: Sequence[Change], *, width: int = 100) -> str:
     """Say what became of each step between two sweeps, before and after."""
+    lines = [change_headline(changes)]
+    if not changes:
+        return lines[0]
+    head, rows = change_rows(changes)
+    wide = [max(len(row[column]) for row in (head, *rows)) for column in range(len(head))]
+    lines += [_row(row, wide, {0, 1, 2, 3, 4}, -1) for row in (head, *rows)]
+    return "\n".join(lines)
+
+
+def change_headline(changes: Sequence[Change]) -> str:
+    """Say how many steps became better or worse."""
     if not changes:
         return "Before and after: the two sweeps share no step (specimen, channel and level)"
     counts = Counter(change.kind for change in changes)
-    lines = [
+    return (
         f"Before and after, {len(changes)} steps in both: {counts['better']} better, {counts['worse']} worse, "
         f"{counts['same']} with the same verdict"
-    ]
+    )
+
+
+def change_rows(changes: Sequence[Change]) -> tuple[tuple[str, ...], list[tuple[str, ...]]]:
+    """Give the head and the cells of a table of changes, from the highest level to the lowest."""
     head = ("level", "flicker before", "after", "frequency before", "after", "verdict before", "after")
     rows = [
         (
@@ -191,6 +225,4 @@ def change_words(changes: Sequence[Change], *, width: int = 100) -> str:
         )
         for change in sorted(changes, key=lambda change: -(change.after.level or 0.0))
     ]
-    wide = [max(len(row[column]) for row in (head, *rows)) for column in range(len(head))]
-    lines += [_row(row, wide, {0, 1, 2, 3, 4}, -1) for row in (head, *rows)]
-    return "\n".join(lines)
+    return head, rows

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import partial
 from pathlib import Path
@@ -18,7 +18,7 @@ from flicker.sweep.manifest import Step
 from flicker.workers import side_by_side
 
 if TYPE_CHECKING:
-    from flicker.analysis import ChannelReport
+    from flicker.analysis import CaptureReport, ChannelReport
 
 _CURES = ("least_frequency_hz", "most_percent_flicker", "ripple_factor", "ripple_db", "reason")
 
@@ -33,6 +33,7 @@ class Task:
     measuring: Mapping[str, Any] = field(default_factory=dict)  # keywords of `flicker.measure`
     keep: str | None = None  # folder with the results of an earlier run
     advise: bool = False  # whether to work out what would make each broken limit pass
+    show: Callable[[CaptureReport, Mapping[str, Any]], str] | None = None  # makes the part of a page, key `article`
 
 
 def judge_capture(step: Step, task: Task) -> dict[str, Any]:
@@ -60,6 +61,8 @@ def judge_capture(step: Step, task: Task) -> dict[str, Any]:
     if task.advise:
         for channel, judged in zip(data["channels"], capture.channels, strict=True):
             _advise(channel["verdicts"], judged)
+    if task.show is not None:
+        data["article"] = task.show(capture, data)
     return data
 
 
@@ -130,6 +133,7 @@ def _key(step: Step, task: Task) -> str:
         [limit.to_dict() for limit in task.limits],
         task.decision,
         task.advise,
+        task.show is not None,
     )
     digest.update(json.dumps(rest, ensure_ascii=False, default=str).encode())
     for path in (step.capture, task.reading.get("dark_capture")):

@@ -102,10 +102,10 @@ def _regions(chart: Chart, low_risk: Curve, no_effect: Curve) -> None:
 def _bound(chart: Chart, curve: Curve, kind: str) -> None:
     """Draw a bound as far as it reaches and the drawing shows it."""
     for band in curve.bands:
-        ends = np.array([max(band.start, chart.x[0]), min(band.end, chart.x[1])])
-        if ends[0] >= ends[1]:
+        start, end = max(band.start, chart.x[0]), min(band.end, chart.x[1])
+        if start >= end:
             continue
-        frequency = np.geomspace(*ends, 40)
+        frequency = np.geomspace(start, end, 40)
         level = np.array([band.at(one) for one in frequency.tolist()])
         seen = (level >= chart.y[0]) & (level <= chart.y[1])
         if seen.any():
