@@ -10,15 +10,17 @@ from flicker.report.answer import REGION_MARKS, REGION_WORDS
 from flicker.report.figures import measure_name, measured, quantity
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
+    from collections.abc import Iterable, Sequence
 
     from flicker.camera.line_time import LineTime
-    from flicker.camera.screen import ScreenMap
+    from flicker.camera.screen import ScreenMap, Zone
     from flicker.camera.stripes import ChannelStripes
     from flicker.filmed import FilmReport
     from flicker.results import Measure, Note
 
 _NOTE_MARKS = {"error": "!!", "warning": "! ", "info": "i "}
+_ZONES_LISTED = 40
+_ZONE_COLUMNS = (4, 5, 12, 15, 10, 14, 5)  # characters
 _SHOWN = ("percent_flicker", "flicker_index", "rms_modulation", "duty_cycle", "svm", "decay_time")
 
 
@@ -38,19 +40,9 @@ def stripes_words(report: FilmReport, *, width: int = 100) -> str:
     str
         Lines without a line break at the end.
     """
-    stripes, footage = report.stripes, report.stripes.footage
-    lines = [Path(report.path).name]
-    line = f"{quantity(stripes.line_time, 's')} a line" if stripes.line_time else "line time unknown"
-    told = "" if stripes.exposure_told else " (fitted)"
-    exposure = f"exposure {quantity(stripes.exposure, 's')}{told}" if stripes.exposure else "exposure unknown"
-    lines.append(
-        f"{quantity(footage.duration, 's')}: {footage.frames} frames at {quantity(footage.frame_rate, 'Hz', 5)}, "
-        f"{footage.lines} lines read {footage.read_direction}, {line}, {exposure}"
-    )
-    lines.append("")
-    deepest = max(stripes.channels, key=lambda channel: channel.measures["percent_flicker"].value or 0.0)
-    answers = {"What": _what(stripes.frequency), "Depth": _depth(deepest), "Risk": _risk(report), "Next": _next(report)}
-    for label, text in answers.items():
+    stripes = report.stripes
+    lines = [Path(report.path).name, film_recording(report), ""]
+    for label, text in film_answers(report).items():
         lines += _wrapped(text, width, f"  {label:<5}  ", "         ")
     lines.append("")
     lines += list(_table(stripes.channels))
@@ -62,6 +54,30 @@ def stripes_words(report: FilmReport, *, width: int = 100) -> str:
         ]
     lines += list(notes_words(stripes.notes, width))
     return "\n".join(lines)
+
+
+def film_recording(report: FilmReport) -> str:
+    """Say what was filmed: how long, how many frames and lines, at which line time and exposure."""
+    stripes, footage = report.stripes, report.stripes.footage
+    line = f"{quantity(stripes.line_time, 's')} a line" if stripes.line_time else "line time unknown"
+    told = "" if stripes.exposure_told else " (fitted)"
+    exposure = f"exposure {quantity(stripes.exposure, 's')}{told}" if stripes.exposure else "exposure unknown"
+    return (
+        f"{quantity(footage.duration, 's')}: {footage.frames} frames at {quantity(footage.frame_rate, 'Hz', 5)}, "
+        f"{footage.lines} lines read {footage.read_direction}, {line}, {exposure}"
+    )
+
+
+def film_answers(report: FilmReport) -> dict[str, str]:
+    """Give what is read first, by its label: what it is, how deep, how risky, what to do next."""
+    stripes = report.stripes
+    deepest = max(stripes.channels, key=lambda channel: channel.measures["percent_flicker"].value or 0.0)
+    return {
+        "What": _what(stripes.frequency),
+        "Depth": _depth(deepest),
+        "Risk": _risk(report),
+        "Next": _next(report),
+    }
 
 
 def _what(frequency: Measure) -> str:
@@ -105,8 +121,8 @@ def _next(report: FilmReport) -> str:
     )
 
 
-def _table(channels: Iterable[ChannelStripes]) -> Iterable[str]:
-    channels = list(channels)
+def channel_rows(channels: Sequence[ChannelStripes]) -> list[list[str]]:
+    """Give the cells of a table of the channels side by side, a measure a row, their names in the first."""
     shown = [name for name in _SHOWN if any(channel.measures[name].value is not None for channel in channels)]
     cells = [["", *(channel.name for channel in channels)]]
     for name in shown:
@@ -115,8 +131,13 @@ def _table(channels: Iterable[ChannelStripes]) -> Iterable[str]:
             measure = channel.measures[name]
             row.append("-" if measure.value is None else " ".join(part for part in measured(measure) if part))
         cells.append(row)
-    wide = [max(len(row[column]) for row in cells) for column in range(len(channels) + 1)]
-    for row in cells if shown else []:
+    return cells if shown else []
+
+
+def _table(channels: Sequence[ChannelStripes]) -> Iterable[str]:
+    cells = channel_rows(channels)
+    wide = [max(len(row[column]) for row in cells) for column in range(len(channels) + 1)] if cells else []
+    for row in cells:
         yield "  " + "  ".join(cell.ljust(size) for cell, size in zip(row, wide, strict=True)).rstrip()
 
 
@@ -177,27 +198,41 @@ def map_words(found: ScreenMap, path: str, *, width: int = 100) -> str:
     str
         Lines without a line break at the end.
     """
+    lines = [Path(path).name, map_recording(found), "", f"  {map_headline(found)}"]
+    head, rows = zone_rows(found.zones[:_ZONES_LISTED])
+    if rows:
+        lines += ["", "  " + _zone_line(head)]
+    lines += ["  " + _zone_line(row) for row in rows]
+    return "\n".join([*lines, *notes_words(found.notes, width)])
+
+
+def _zone_line(cells: Sequence[str]) -> str:
+    return "  ".join(cell.ljust(size) for cell, size in zip(cells, _ZONE_COLUMNS, strict=True)).rstrip()
+
+
+def map_recording(found: ScreenMap) -> str:
+    """Say what was filmed, and how fine the grid is."""
     rows, columns = found.mean.shape
-    dark = int(found.dark.sum())
     footage = found.footage
-    lines = [
-        Path(path).name,
-        f"{footage.frames} frames at {quantity(footage.frame_rate, 'Hz', 5)}, a grid of {rows} x {columns} cells",
-        "",
-        f"  {len(found.zones)} zones that flicker ({found.kind}); {dark} cells are dark",
-    ]
-    if found.zones:
-        lines += ["", "  zone  cells  frequency     percent flicker  duty cycle  phase (cycles)  level"]
-    for number, zone in enumerate(found.zones[:40], 1):
+    return f"{footage.frames} frames at {quantity(footage.frame_rate, 'Hz', 5)}, a grid of {rows} x {columns} cells"
+
+
+def map_headline(found: ScreenMap) -> str:
+    """Say how many zones flicker, and what they do together."""
+    return f"{len(found.zones)} zones that flicker ({found.kind}); {int(found.dark.sum())} cells are dark"
+
+
+def zone_rows(zones: Sequence[Zone]) -> tuple[Sequence[str], Sequence[Sequence[str]]]:
+    """Give the head and the cells of a table of zones."""
+    rows = []
+    for number, zone in enumerate(zones, 1):
         frequency = "-" if zone.frequency is None else quantity(zone.frequency, "Hz", 6)
         duty = "-" if zone.duty is None else f"{zone.duty:.3f}"
         phase = "-" if zone.phase is None else f"{zone.phase:+.3f}"
         depth = quantity(zone.percent_flicker, "%", 4)
-        lines.append(
-            f"  {number:<4}  {len(zone.cells):<5}  {frequency:<12}  {depth:<15}  {duty:<10}  {phase:<14} "
-            f" {zone.mean:.3f}"
-        )
-    return "\n".join([*lines, *notes_words(found.notes, width)])
+        cells = str(len(zone.cells))
+        rows.append((str(number), cells, frequency, depth, duty, phase, f"{zone.mean:.3f}"))
+    return ("zone", "cells", "frequency", "percent flicker", "duty cycle", "phase (cycles)", "level"), rows
 
 
 def notes_words(notes: Iterable[Note], width: int) -> Iterable[str]:
