@@ -60,13 +60,21 @@ class FilmReport:
         return {"format": "flicker-report", "version": 1, "program": __version__, "captures": [one]}
 
     def families(self, channel: ChannelStripes) -> tuple[Family, ...]:
-        """The one family of lines, where its frequency is known."""
-        if self.stripes.frequency.value is None:
-            return ()
-        depth = channel.measures["percent_flicker"]
-        return (
-            Family(self.stripes.frequency, depth, max(len(channel.components), 1), "read from the stripes of a video"),
-        )
+        """Families of lines, one a light, where their frequencies are known."""
+        place = self.stripes.channels.index(channel)
+        found = []
+        for light, own in [
+            (self.stripes, channel.own or channel.measures),
+            *((other, other.channels[place].measures) for other in self.stripes.others),
+        ]:
+            if light.frequency.value is not None:
+                base = light.frequency.value
+                lines = sum(
+                    abs(one.frequency / base - round(one.frequency / base)) < 1e-6 for one in channel.components
+                )
+                depth = own["percent_flicker"]
+                found.append(Family(light.frequency, depth, max(lines, 1), "read from the stripes of a video"))
+        return tuple(sorted(found, key=lambda family: -(family.percent_flicker.value or 0.0)))
 
     def region(self, channel: ChannelStripes) -> Any:
         """Risk region of a channel, None where its depth is unknown."""

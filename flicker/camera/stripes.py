@@ -8,7 +8,8 @@ from typing import Any
 
 import numpy as np
 
-from flicker.camera.stripes_doubts import clocked, doubts
+from flicker.camera.stripes_apart import tell_apart
+from flicker.camera.stripes_doubts import clocked, doubts, moving
 from flicker.camera.stripes_found import find_bands, frames_of, rows_of, without_held
 from flicker.errors import NotMeasurable
 from flicker.footage import Footage
@@ -16,7 +17,7 @@ from flicker.light import ChannelLight, ComplexArray, Light
 from flicker.results import Component, Measure, Note
 from flicker.signal.stripes_coding import Coding
 from flicker.signal.stripes_drive import Drive, Lag, common_drive
-from flicker.signal.stripes_figures import Samples, figures_of
+from flicker.signal.stripes_figures import Samples, figures_of, together
 from flicker.signal.stripes_fit import StripeFit, fit_wave
 from flicker.signal.stripes_free import FreeShape, shape_of
 from flicker.signal.stripes_shape import Harmonics, PulseShape, fit_exposure, is_rectangle
@@ -40,6 +41,7 @@ class ChannelStripes:
     measures: dict[str, Measure]
     components: tuple[Component, ...]
     light: ChannelLight | None  # None where the exposure is unknown and cannot be found
+    own: dict[str, Measure] | None = None  # of the first light alone, where there are two
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -55,6 +57,7 @@ class Stripes:
     alternatives: tuple[dict[str, Any], ...]
     channels: tuple[ChannelStripes, ...]
     notes: tuple[Note, ...]
+    others: tuple[Stripes, ...] = ()  # a second light, read by itself
 
     @property
     def light(self) -> Light:
@@ -94,6 +97,30 @@ def read_stripes(
     """
     renewed, held = without_held(footage)
     bands = find_bands(renewed, line_time)
+    apart = tell_apart(renewed, bands, line_time)
+    if apart is None:
+        found, _ = _read(footage, renewed, bands, line_time, exposure, clock)
+        return dataclasses.replace(found, notes=found.notes + held)
+    first, draws = _read(footage, apart[0], find_bands(apart[0], line_time), line_time, exposure, clock)
+    second, others = _read(footage, apart[1], find_bands(apart[1], line_time), line_time, exposure, clock)
+    channels = tuple(_together(*pair, draws, others) for pair in zip(first.channels, second.channels, strict=True))
+    message = (
+        f"two lights show, of {first.frequency.value:.6g} Hz and {second.frequency.value:.6g} Hz: each was read with "
+        "the other taken off, about the mean of both; film one alone for its own depth"
+    )
+    notes = (*first.notes, *held, Note("several-lights", "info", message))
+    return dataclasses.replace(first, channels=channels, notes=notes, others=(second,))
+
+
+def _read(
+    footage: Footage,
+    renewed: Footage,
+    bands: StripeFit,
+    line_time: float | None,
+    exposure: float | None,
+    clock: float,
+) -> tuple[Stripes, dict[str, Samples]]:
+    """Read one light whose bands were found in the part of the footage that may be used; give its draws as well."""
     waves = _waves(renewed, bands)
     drive, others_seen = _drive(renewed, waves)
     frequency, fitted, alternatives, notes = clocked(footage, bands, line_time, clock)
@@ -101,7 +128,7 @@ def read_stripes(
     alike: list[PulseShape] = []
     if exposure is None and line_time is not None:
         exposure, alike = _fitted_exposure(drive.seen, 1.0 / footage.frame_rate)
-    notes += held + doubts(footage, bands, line_time, exposure, told)
+    notes += doubts(footage, bands, line_time, exposure, told) + moving(renewed, bands)
     shapes: dict[str, PulseShape | FreeShape] = {}
     if exposure is not None and line_time is not None:
         shapes = _shapes(drive, others_seen, exposure)
@@ -126,9 +153,31 @@ def read_stripes(
             measures |= _unknown(line_time, exposure, lag)
         components, light = _lines(name, draws.get(name), bands, footage, exposure, means[name])
         channels.append(ChannelStripes(name, means[name], waves[name], measures, components, light))
-    return Stripes(
+    stripes = Stripes(
         footage, line_time, exposure, told, frequency, fitted, alternatives, tuple(channels), footage.notes + notes
     )
+    return stripes, draws
+
+
+def _together(
+    one: ChannelStripes, other: ChannelStripes, draws: dict[str, Samples], others: dict[str, Samples]
+) -> ChannelStripes:
+    """Figures of a channel in which two lights meet in every phase."""
+    if one.name not in draws or one.name not in others:
+        return one
+    measures = one.measures | together(draws[one.name], others[one.name], one.measures, other.measures)
+    lines = tuple(sorted((*one.components, *other.components), key=lambda line: -abs(line.amplitude)))
+    light = one.light
+    if light is not None and other.light is not None:
+        light = ChannelLight(
+            one.name,
+            np.concatenate([light.frequencies, other.light.frequencies]),
+            np.concatenate([light.amplitudes, other.light.amplitudes]),
+            (*light.fundamentals, *other.light.fundamentals),
+            None,
+            light.mean,
+        )
+    return dataclasses.replace(one, measures=measures, components=lines, light=light, own=one.measures)
 
 
 def _waves(footage: Footage, bands: StripeFit) -> dict[str, StripeFit]:

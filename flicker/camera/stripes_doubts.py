@@ -7,12 +7,15 @@ from typing import Any
 
 import numpy as np
 
+from flicker.camera.stripes_found import frames_of, rows_of
 from flicker.footage import Footage
 from flicker.results import Measure, Note
-from flicker.signal.stripes_fit import STANDING, StripeFit
+from flicker.signal.stripes_fit import STANDING, StripeFit, taken_off
 from flicker.trace import FloatArray
 
 _STAMPS = 7e-7  # relative standard uncertainty of a stated rate: 29.97 may stand for 30000/1001, a millionth off
+_MOVED = 0.015  # change of the level over some lines beyond the bands
+_SMOOTHED = 16  # lines
 _FAINT = 0.012  # contrast of bands of which compression may erase one or the other
 _HUNTING = 0.03  # standard deviation of the level from frame to frame
 
@@ -117,6 +120,26 @@ def _frame_means(footage: Footage, bands: StripeFit) -> FloatArray:
     kept = np.exp(2j * np.pi * np.outer(bands.harmonics * bands.turns_per_line, numbers)).mean(axis=1)
     turned = np.exp(2j * np.pi * np.outer(times, bands.harmonics * bands.frequency))
     return np.asarray(1.0 + (turned @ (bands.amplitudes * kept)).real)
+
+
+def moving(footage: Footage, bands: StripeFit) -> tuple[Note, ...]:
+    """Note a camera or a scene that moved: what the bands leave is then alike from line to line."""
+    rows = rows_of(footage, "all", frames_of(footage))
+    if bands.scene.size != rows.numbers.size or bands.gain.size != len(rows.times) or rows.numbers.size < 4 * _SMOOTHED:
+        return ()
+    rest = taken_off(rows, bands) / bands.scene - 1.0
+    rest -= rest.mean(axis=1, keepdims=True)  # the gain of a frame is no movement
+    count = rest.shape[1] // _SMOOTHED
+    smooth = float(rest[:, : count * _SMOOTHED].reshape(len(rest), count, _SMOOTHED).mean(axis=2).std())
+    noise = float(np.diff(rest, axis=1).std()) / np.sqrt(2 * _SMOOTHED)
+    if smooth < max(_MOVED, 3 * noise):
+        return ()
+    message = (
+        f"the camera or the scene moved: the level of the lines changes by {100 * smooth:.2g} % beyond what the bands "
+        "explain; the frequency stands, the depth is less sure than its interval says: use a tripod and an even "
+        "surface that keeps still, or choose such a --region"
+    )
+    return (Note("moving-scene", "warning", message),)
 
 
 def _contamination(footage: Footage, bands: StripeFit) -> list[Note]:

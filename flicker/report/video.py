@@ -73,7 +73,7 @@ def film_answers(report: FilmReport) -> dict[str, str]:
     stripes = report.stripes
     deepest = max(stripes.channels, key=lambda channel: channel.measures["percent_flicker"].value or 0.0)
     return {
-        "What": _what(stripes.frequency),
+        "What": ", and ".join(_what(one.frequency) for one in (stripes, *stripes.others)),
         "Depth": _depth(deepest),
         "Risk": _risk(report),
         "Next": _next(report),

@@ -82,7 +82,8 @@ def common_drive(
     covariance of their errors: video codes luma finely and colour coarsely, so that errors of two colours are
     opposed. The channels that agree are then joined by generalised least squares.
     """
-    strength = np.sqrt((np.abs(amplitudes) ** 2).sum(axis=1))
+    noise = 2 * np.einsum("kcc->ck", covariances)
+    strength = np.sqrt(np.maximum(np.abs(amplitudes) ** 2 - 8 * noise, 0.0).sum(axis=1))
     fastest = int(strength.argmax())
     if "green" in names and strength[names.index("green")] > _GREEN_UNLESS * strength[fastest]:
         fastest = names.index("green")
@@ -125,7 +126,8 @@ def _lag(pair: ComplexArray, covariances: FloatArray, turns: FloatArray) -> Lag 
     near = int(losses.argmin())
     bounds = (steps[max(near - 1, 0)], steps[min(near + 1, steps.size - 1)])
     best = float(minimize_scalar(lambda step: loss(np.exp(step)), bounds=bounds, method="bounded").x)
-    least, without = loss(np.exp(best)), loss(0.0)
+    without = loss(0.0)
+    least = min(loss(np.exp(best)), without)
     freedom = max(2 * turns.size - 1, 1)
     scale = max(least / freedom, 1.0)
     allowed = least + _BETTER * scale

@@ -15,6 +15,7 @@ from flicker.signal.stroboscopic import stroboscopic_visibility
 from flicker.trace import FloatArray
 
 _GRID = 1024
+_SVM = 3.7  # exponent of the sum over lines, IEC TR 63158:2018 (from memory)
 _DRAWS = 120
 _EXPOSURE = "the exposure blurs edges: use a photodiode"
 
@@ -169,3 +170,29 @@ def figures_of(
         "svm": measure("1", svm(waves), svm(others), np.inf),
     }
     return measures | {name: Measure.missing("s", _EXPOSURE) for name in ("rise_time", "fall_time")}
+
+
+def together(
+    one: Samples, other: Samples, measures: dict[str, Measure], others: dict[str, Measure]
+) -> dict[str, Measure]:
+    """Figures of two lights that are not locked: they meet in every phase, so that swings add and squares add."""
+    high = one.waves.max(axis=1) + other.waves.max(axis=1) - 1.0
+    low = np.maximum(one.waves.min(axis=1) + other.waves.min(axis=1) - 1.0, 0.0)
+    method = "two lights that meet in every phase"
+    found = {"percent_flicker": _spread("%", 100 * (high - low) / (high + low), method)}
+    squares = one.waves.var(axis=1) + other.waves.var(axis=1)
+    found["rms_modulation"] = _spread("%", 100 * np.sqrt(squares), method)
+    parts = [part["svm"] for part in (measures, others)]
+    if all(part.value is not None for part in parts):
+        value, low_end, high_end = (
+            float(sum((end or 0.0) ** _SVM for end in ends) ** (1 / _SVM))
+            for ends in zip(*((part.value, part.low, part.high) for part in parts), strict=True)
+        )
+        found["svm"] = Measure(value, "1", low_end, high_end, method)
+    reason = "two lights that are not locked to each other have no cycle in common: film each alone"
+    return found | {name: Measure.missing("1", reason) for name in ("flicker_index", "duty_cycle")}
+
+
+def _spread(unit: str, values: FloatArray, method: str) -> Measure:
+    low, high = np.quantile(values[1:], [0.025, 0.975])
+    return Measure(float(values[0]), unit, float(min(low, values[0])), float(max(high, values[0])), method)

@@ -332,6 +332,14 @@ def shows_between(rows: Rows, fit: StripeFit, divisor: int) -> bool:
     return bool((found[slower.harmonics % divisor != 0] > least).any())
 
 
+def taken_off(rows: Rows, fit: StripeFit) -> FloatArray:
+    """Lines with the bands of a fit to them taken off, but for their mean, shape (t, r)."""
+    known = _Work(
+        rows, fit.frequency, fit.turns_per_line, fit.harmonics, fit.amplitudes, fit.scene, fit.gain, fit.errors
+    )
+    return np.asarray(rows.values - fit.scene * fit.gain[:, None] * (known.model()[1] - 1.0))
+
+
 def fit_wave(
     rows: Rows,
     known: StripeFit,

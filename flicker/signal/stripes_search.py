@@ -45,6 +45,11 @@ class Deviation:
         spectrum = scipy.fft.rfft(deviation, size, axis=1)
         return cls(spectrum, size, lines.shape[1], times, float((deviation.astype(float) ** 2).sum()))
 
+    @property
+    def cells(self) -> int:
+        """Number of lines of all frames."""
+        return self.lines * len(self.times)
+
     def peaks(self) -> list[int]:
         """Bins of the strongest separate peaks within the frames, all frames taken together."""
         power = (np.abs(self.spectrum) ** 2).sum(axis=0)
