@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+import math
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -16,6 +17,8 @@ from flicker.trace import FloatArray
 _MOST_BINS = 2048
 _MOST_GROUPS = 24
 _FINE = 1 << 14
+_JUMP = 0.15  # of the swing, from one phase to the next: an edge
+_MOST_JUMPS = 64
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -124,7 +127,8 @@ class Cycle:
         Notes
         -----
         Jackknife over groups of neighbouring cycles (Tukey 1958): each group is left out once. A group's bin that no
-        sample fell into keeps the mean of the others.
+        sample fell into keeps the mean of the others. An edge may lie anywhere between the last phase seen before it
+        and the first one after: its place is uniform there, independent of all others.
         """
         total, number = self.sums.sum(axis=0), self.counts.sum(axis=0)
         value = figure(total / number)
@@ -135,7 +139,24 @@ class Cycle:
             alone = counts >= number  # only this group saw the bin: leave it in
             left.append(figure(np.where(alone, total, total - sums) / np.where(alone, number, number - counts)))
         spread = (self.groups - 1) / self.groups * float(np.sum((np.array(left) - np.mean(left)) ** 2))
-        return value, student_quantile(self.groups - 1) * spread**0.5
+        by_edges = sum((figure(moved) - value) ** 2 for moved in self._moved_edges(total / number))
+        return value, math.hypot(student_quantile(self.groups - 1) * spread**0.5, 1.96 * by_edges**0.5)
+
+    def _moved_edges(self, levels: FloatArray) -> Iterator[FloatArray]:
+        """Levels with one edge after the other moved by the standard deviation of its place."""
+        cells = self.fine_sums.shape[1]
+        counts = self.fine_counts.sum(axis=0)
+        seen = np.flatnonzero(counts)
+        means, counts = self.fine_sums.sum(axis=0)[seen] / counts[seen], counts[seen]
+        step = np.roll(means, -1) - means
+        error = self.noise * np.sqrt(1 / counts + 1 / np.roll(counts, -1))
+        jumps = np.flatnonzero(np.abs(step) > np.maximum(8 * error, _JUMP * np.ptp(levels)))
+        for place in jumps[:_MOST_JUMPS].tolist():
+            after = seen[(place + 1) % seen.size]
+            gap = (after - seen[place]) % cells / cells
+            moved = levels.copy()
+            moved[after * self.size // cells] -= step[place] * gap * self.size / math.sqrt(12)
+            yield moved
 
 
 def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cycle:

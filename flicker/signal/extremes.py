@@ -22,7 +22,7 @@ _PLATEAUS = ("right", "left", "about")
 _STEPS_BACK = {"right": 2, "left": 2, "about": 2, "parabola": 3, "hinge": 3}
 _DOUBT = 0.5  # standard deviation of the bias of a bent reading, over what a lower degree reads otherwise
 _QUIETEST = 1e-4  # noise over swing that is assumed at the least, so that wide windows are preferred without noise too
-_FEW_HARMONICS = 6  # with more, a corner may hide behind the noise
+_FEW_HARMONICS = 3  # with more, a corner may hide behind the noise
 
 
 @dataclass(frozen=True, slots=True)

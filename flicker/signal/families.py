@@ -10,6 +10,7 @@ import numpy as np
 
 from flicker.signal.harmonics import HarmonicFit, Series, fit_harmonics
 from flicker.signal.spectrum import Spectrum, spectrum
+from flicker.signal.switching import sharpen
 from flicker.trace import FloatArray
 
 _MOST_FAMILIES = 6
@@ -30,7 +31,7 @@ class Search:
 
     def without(self, series: Series, families: Sequence[HarmonicFit]) -> Series:
         """Take some families off a series, but for their means."""
-        return _without(series, families) if families else series
+        return _without(series, families)
 
 
 def find_families(series: Series) -> Search:
@@ -75,6 +76,8 @@ def find_families(series: Series) -> Search:
         for place, fit in enumerate(families):
             rest = families[:place] + families[place + 1 :]
             families[place] = fit_harmonics(_without(series, rest), fit.frequency)
+    for place, fit in enumerate(families):
+        families[place] = sharpen(_without(series, families[:place] + families[place + 1 :]), fit)
     families.sort(key=lambda fit: -_strength(fit))
     return Search(tuple(families), now.floor, first)
 
@@ -91,6 +94,8 @@ def _strength(fit: HarmonicFit) -> float:
 
 def _without(series: Series, families: Sequence[HarmonicFit]) -> Series:
     """Take the families off, but for their means."""
+    if not families:
+        return series
     values = series.values.copy()
     for part, times in series.chunks():
         for fit in families:

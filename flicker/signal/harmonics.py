@@ -16,6 +16,8 @@ _BINS = 1 << 15  # of phase; a harmonic k then loses 1 - sinc(k / bins), under 1
 _MOST_HARMONICS = 2048
 _CHUNK = 1 << 18
 _BLOCKS = 64  # of time, for the spread of the residuals
+_FEWEST_ALLOWED = 192  # harmonics, though they lie above the Nyquist frequency: samples see them as aliases
+_FEW = 16  # harmonics that any capture tells
 _MANY = 1 << 20  # samples from which on pieces of them share a time
 _SURE = 0.05  # cycles of the highest harmonic by which a fit of an excerpt may be off at the ends of the whole
 _EXCERPT = 1 << 19  # samples that say how many harmonics there are, before all of them are asked
@@ -218,7 +220,7 @@ def fit_harmonics(
     harmonics : int, optional
         Fit just so many; otherwise their number doubles as long as the added ones carry significant energy.
     most : int
-        Never more than so many, nor than reach the Nyquist frequency or 128.
+        Never more than so many, nor than reach the Nyquist frequency or 192.
 
     Returns
     -------
@@ -232,7 +234,7 @@ def fit_harmonics(
     (IEEE Trans. Inf. Theory 20 (1974) 591). Harmonics above the Nyquist frequency count too: sampled light holds them
     as aliases, at places that the phase of each sample tells.
     """
-    most = min(most, max(128, int(series.sample_rate / (2 * frequency))))
+    most = min(most, max(_FEWEST_ALLOWED, int(series.sample_rate / (2 * frequency))))
     if harmonics is not None:
         return _with_robust_error(series, _Fitting(series).fit(frequency, harmonics, _BINS))
     part = series.excerpt(_EXCERPT)
@@ -241,7 +243,23 @@ def fit_harmonics(
     if part is not series:
         first = 1 if best.frequency_error * series.span * best.amplitudes.size > _SURE else best.amplitudes.size
         best = _climb(whole, frequency if first == 1 else best.frequency, (first, best.amplitudes.size), most)
-    return _with_robust_error(series, whole.fit(best.frequency, best.amplitudes.size, _BINS))
+    return _with_robust_error(series, _sharpest(whole, best.frequency, best.amplitudes.size))
+
+
+def refit(series: Series, frequency: float, harmonics: int) -> HarmonicFit:
+    """Fit the amplitudes at a known frequency [Hz]."""
+    return dataclasses.replace(_Fitting(series).fit(frequency, harmonics, _BINS, steps=1), frequency=frequency)
+
+
+def _sharpest(fitting: _Fitting, frequency: float, harmonics: int) -> HarmonicFit:
+    """Fit the harmonics at the frequency that all of them tell, or half of them where that is sharper."""
+    fit = fitting.fit(frequency, harmonics, _BINS)
+    if harmonics < 2 * _FEW:
+        return fit
+    half = fitting.fit(frequency, harmonics // 2, _BINS)  # few samples cannot tell many harmonics from a frequency
+    if half.frequency_error > 0.7 * fit.frequency_error:
+        return fit
+    return dataclasses.replace(refit(fitting.series, half.frequency, harmonics), frequency_error=half.frequency_error)
 
 
 def _climb(fitting: _Fitting, frequency: float, first: tuple[int, int], most: int) -> HarmonicFit:
@@ -275,10 +293,10 @@ class _Fitting:
         self.offset = float(series.values.mean())
         self.power = float(sum(np.square(series.values[part] - self.offset).sum() for part, _ in series.chunks()))
 
-    def fit(self, frequency: float, harmonics: int, bins: int) -> HarmonicFit:
+    def fit(self, frequency: float, harmonics: int, bins: int, steps: int = 6) -> HarmonicFit:
         """Gauss-Newton with a fixed number of harmonics, fewer where the phases that were seen cannot tell so many."""
         series = self.series
-        for _ in range(6 if harmonics < 3 else 4):
+        for _ in range(steps if harmonics < 3 else min(steps, 4)):
             binned = _bin_by_phase(series, frequency, self.offset, bins)
             gap = longest_gap(binned.count)
             allowed = max(1, min(harmonics, int(0.45 / gap) if gap > 0 else harmonics, series.values.size // 4))

@@ -49,6 +49,8 @@ class Manner:
     shape: str  # left, right, about, corner
     degree: int  # of the curves
     guard: float = 0.0  # nearest place to the phase that is known to lie on the side that is read [cycles]
+    plain: Manner | None = None  # to be taken where this one leads out of the bounds
+    bounds: tuple[float, float] = (-np.inf, np.inf)  # of a level that can be the extreme
 
     @property
     def sides(self) -> tuple[int, ...]:
@@ -151,9 +153,8 @@ def _ladders(points: _Points, widths: FloatArray, degrees: tuple[int, ...]) -> l
             levels = np.where(enough, solved[:, 0], np.nan)
             errors = np.where(enough, np.sqrt(np.maximum(covariance[:, 0, 0], 0.0)), np.nan)
             misfits = squares - np.einsum("wi,wi->w", solved, sums)
-            ladders.append(
-                _Ladder(shape, degree, levels, errors, misfits, inside - (degree + 1.0), np.zeros(widths.size))
-            )
+            freedoms = np.asarray(inside - (degree + 1), dtype=np.float64)
+            ladders.append(_Ladder(shape, degree, levels, errors, misfits, freedoms, np.zeros(widths.size)))
             sides[side, degree] = solved, covariance, ladders[-1]
     return ladders + [_crossing(sides[-1, degree], sides[1, degree], widths) for degree in degrees if degree]
 
@@ -227,15 +228,16 @@ def find_manner(cycle: Cycle, phase: float, noise: float, sign: float, blur: flo
     (after Calonico, Cattaneo and Titiunik, Econometrica 82 (2014) 2295, for regressions that end at a jump). The shape
     with the smallest error wins, a corner before others.
     """
+    plain = Manner(phase, 0.75 / cycle.size, "about", 0)
     split = _split(cycle, phase)
     points = _Points.about(cycle, split, _WIDEST)
-    about, reach = cycle.levels[round(phase * cycle.size) % cycle.size], _FALSE * float(np.ptp(cycle.levels))
+    about, reach = float(cycle.levels[round(phase * cycle.size) % cycle.size]), _FALSE * float(np.ptp(cycle.levels))
     for guard in _GUARDS:
         candidates = _candidates(points.beyond(blur + guard / cycle.size), split, noise, blur)
         candidates = [one for one in candidates if abs(one.level - about) <= reach]
         if candidates:
-            return _best(candidates, sign)
-    return Manner(split, 1.0 / cycle.size, "about", 0)
+            return dataclasses.replace(_best(candidates, sign), plain=plain, bounds=(about - reach, about + reach))
+    return plain
 
 
 @dataclass(frozen=True, slots=True)
@@ -307,6 +309,8 @@ def _split(cycle: Cycle, phase: float) -> float:
 def read(cycle: Cycle, manner: Manner) -> Reading:
     """Read a level of a cycle in a given manner."""
     reading = _read(cycle, manner)
+    if manner.plain is not None and not manner.bounds[0] <= reading.level <= manner.bounds[1]:
+        return _read(cycle, manner.plain)  # these cycles hold too few points
     if manner.degree < 2:
         return reading
     lower = _read(cycle, dataclasses.replace(manner, degree=manner.degree - 1))

@@ -2,10 +2,10 @@
 How often the 95 % intervals hold the truth, and how near the frequency comes to the Cramer-Rao bound.
 
 `python tests/speed/intervals.py [CAPTURES] [FIRST_SEED]` measures random captures (sine, PWM, triangle, rectified
-mains, slow emitter; 20 to 60 dB, ten cycles and more) and prints, for every measure, the share of intervals that hold the
-truth, the mean error over the mean width, and the widths; for the frequency also its deviation over the bound (Rife and
-Boorstyn, IEEE Trans. Inf. Theory 20 (1974) 591, all harmonics below the Nyquist frequency together). The edges of an
-ideal PWM lie beyond every bound by lines below the Nyquist frequency: samples see them only to within their spacing.
+mains, slow emitter; 20 to 60 dB, ten cycles and more) and prints, for every measure, the share of intervals that hold
+the truth, the mean error over the mean width, and the widths; for the frequency also its deviation over the bound (Rife
+and Boorstyn, IEEE Trans. Inf. Theory 20 (1974) 591, all harmonics below the Nyquist frequency together). The edges of
+an ideal PWM lie beyond every bound by lines below the Nyquist frequency: samples see them only to within their spacing.
 """
 
 from __future__ import annotations
