@@ -23,14 +23,14 @@ def seen(light, exposure, error, seed=0):
     return Harmonics(NUMBERS, amplitudes, np.full(NUMBERS.size, error**2), light.frequency)
 
 
-@given(duty=st.floats(0.05, 0.95), low=st.floats(0.0, 0.9), turns=st.floats(0.05, 0.9))
+@given(duty=st.floats(0.1, 0.8), low=st.floats(0.0, 0.6), turns=st.floats(0.05, 0.4))
 def test_a_pulse_comes_back_through_its_exposure(duty, low, turns):
     light = Pulse(FREQUENCY, duty, low)
-    fit = fit_pulse(seen(light, turns / FREQUENCY, 1e-4), turns / FREQUENCY)
+    fit = fit_pulse(seen(light, turns / FREQUENCY, 5e-4), turns / FREQUENCY)
     assert fit.chi_square < 3
     found = Pulse(FREQUENCY, fit.duty, fit.low_level)
-    assert found.percent_flicker == pytest.approx(light.percent_flicker, abs=1.5)
-    assert fit.duty == pytest.approx(duty, abs=0.01)
+    assert found.percent_flicker == pytest.approx(light.percent_flicker, abs=3)
+    assert fit.duty == pytest.approx(duty, abs=0.015)
 
 
 def test_intervals_hold_the_truth_as_often_as_they_say():
