@@ -6,8 +6,8 @@ from typing import Any
 
 import click
 
-from flicker.cli.options import TIME, output_options, video_options
-from flicker.cli.output import make_folder, print_words, spare_the_captures, terminal_width, write_json
+from flicker.cli.options import TIME, output_options, page_option, video_options
+from flicker.cli.output import command_line, make_folder, print_words, spare_the_captures, terminal_width, write_json
 
 
 @click.command("map")
@@ -18,6 +18,7 @@ from flicker.cli.output import make_folder, print_words, spare_the_captures, ter
 @click.option("--rows", type=click.IntRange(1, 200), default=12, help="Rows of the grid; 12 if left out.")
 @click.option("--columns", type=click.IntRange(1, 48), default=16, help="Columns of the grid; 16 if left out.")
 @output_options
+@page_option
 @click.option("--figures", metavar="DIR", help="Write heat maps into a folder.")
 def command(
     video: str,
@@ -26,6 +27,7 @@ def command(
     camera_file: str | None,
     json_target: str | None,
     quiet: bool,
+    html_target: str | None,
     figures: str | None,
     **how: Any,
 ) -> None:
@@ -41,7 +43,7 @@ def command(
     from flicker.filmed import from_camera, map_video
     from flicker.report.video import map_words
 
-    spare_the_captures([video], [json_target])
+    spare_the_captures([video], [json_target, html_target])
     if camera_file is not None:
         how = from_camera(camera_file, how)
     found = map_video(video, rows=rows, columns=columns, **how)
@@ -51,4 +53,9 @@ def command(
 
         words += f"\n  pictures: {save_map(found, make_folder(figures))}"
     write_json(found.to_dict(), json_target)
+    if html_target:
+        from flicker.files import write_text
+        from flicker.report.pages import map_page
+
+        write_text(html_target, map_page(found, video, command_line()))
     print_words(words, json_target)

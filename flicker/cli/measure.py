@@ -104,7 +104,7 @@ def command(
     write_json({**Report(()).to_dict(), "captures": [result.data for result in results]}, json_target)
     if html_target:
         from flicker.files import write_text
-        from flicker.report.measured_page import measured_page
+        from flicker.report.pages import measured_page
 
         write_text(html_target, measured_page(results, command_line()))
     entries = [entry for result in results for entry in result.entries]

@@ -6,8 +6,8 @@ from typing import Any
 
 import click
 
-from flicker.cli.options import TIME, output_options, video_options
-from flicker.cli.output import print_words, spare_the_captures, terminal_width, write_json
+from flicker.cli.options import TIME, output_options, page_option, video_options
+from flicker.cli.output import command_line, print_words, spare_the_captures, terminal_width, write_json
 
 
 @click.command()
@@ -17,7 +17,10 @@ from flicker.cli.output import print_words, spare_the_captures, terminal_width, 
 @click.option("--camera", "camera_file", metavar="FILE.toml", help="Camera file; the options override it.")
 @click.option("--clock-ppm", type=float, metavar="PPM", help="Standard uncertainty of the camera's clock.")
 @output_options
-def command(video: str, camera_file: str | None, json_target: str | None, quiet: bool, **how: Any) -> None:
+@page_option
+def command(
+    video: str, camera_file: str | None, json_target: str | None, quiet: bool, html_target: str | None, **how: Any
+) -> None:
     """Read the light back from the bands of a rolling-shutter VIDEO, every line a sample.
 
     Film the lit surface from a tripod with exposure, gain and focus locked, with a short exposure, at a frame rate of
@@ -30,9 +33,14 @@ def command(video: str, camera_file: str | None, json_target: str | None, quiet:
     from flicker.filmed import from_camera, read_back
     from flicker.report.video import stripes_words
 
-    spare_the_captures([video], [json_target])
+    spare_the_captures([video], [json_target, html_target])
     if camera_file is not None:
         how = from_camera(camera_file, how)
     report = read_back(video, **how)
     write_json(report.to_dict(), json_target)
+    if html_target:
+        from flicker.files import write_text
+        from flicker.report.pages import film_page
+
+        write_text(html_target, film_page(report, command_line()))
     print_words(stripes_words(report, width=terminal_width()), json_target)

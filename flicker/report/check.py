@@ -113,7 +113,7 @@ class Answer:
 
     def page(self, before: Sequence[Point]) -> str:
         """Give the page: all captures together where there are several, then each, then the record."""
-        from flicker.report.measured_page import judged_page
+        from flicker.report.pages import judged_page
 
         head = table_head(list(self._by_id))
         swept = Sweep(

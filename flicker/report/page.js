@@ -4,7 +4,7 @@ for (const figure of document.querySelectorAll("figure")) {
   if (!said) continue;
   const resting = said.textContent;
   const say = (event) => {
-    const title = event.target.closest("[data-says]")?.querySelector("title");
+    const title = event.target.closest("g, rect")?.querySelector(":scope > title");
     said.textContent = title ? title.textContent : resting;
   };
   figure.addEventListener("pointerover", say);

@@ -210,7 +210,7 @@ def change_headline(changes: Sequence[Change]) -> str:
     )
 
 
-def change_rows(changes: Sequence[Change]) -> tuple[tuple[str, ...], list[tuple[str, ...]]]:
+def change_rows(changes: Sequence[Change]) -> tuple[Sequence[str], Sequence[Sequence[str]]]:
     """Give the head and the cells of a table of changes, from the highest level to the lowest."""
     head = ("level", "flicker before", "after", "frequency before", "after", "verdict before", "after")
     rows = [

@@ -41,6 +41,10 @@ class Scale:
             low, high, given = math.log(low), math.log(high), np.log(np.maximum(given, 1e-300))
         return self.start + (given - low) / (high - low) * (self.end - self.start)
 
+    def holds(self, value: float) -> bool:
+        """Tell whether a value lies on the scale."""
+        return self.low <= value <= self.high
+
     def ticks(self) -> list[float]:
         """Choose round values to be named."""
         return _decades(self.low, self.high) if self.logarithmic else _steps(self.low, self.high)
@@ -115,8 +119,10 @@ class Chart:
         return f"{_path(np.append(across, across[::-1]), np.append(low, high[::-1]))}Z"
 
     def marks(self, points: Iterable[tuple[float, float, str]], shape: str, kind: str) -> None:
-        """Set marks at (x, y), each with what it says."""
+        """Set marks at (x, y), each with what it says; those beyond the axes are left out."""
         for x, y, says in points:
+            if not (self.across.holds(x) and self.up.holds(y)):
+                continue
             self._over.append(
                 element(
                     "g",
@@ -124,7 +130,6 @@ class Chart:
                     element("path", d=SHAPES[shape]),
                     class_=f"mark {kind}",
                     transform=f"translate({self.across(x):.1f} {self.up(y):.1f})",
-                    data_says=True,
                     tabindex=0,
                 )
             )
@@ -203,7 +208,7 @@ def figure(drawn: Markup, caption: str, told: str, *, size: tuple[int, int] = (W
     """Put a drawing into a figure: with a caption, and with words for those who cannot see it."""
     picture = element("svg", element("desc", told), drawn, viewBox=f"0 0 {size[0]} {size[1]}", role="img",
                       aria_label=f"{caption}. {told}")  # fmt: skip
-    says = element("output", "\N{NO-BREAK SPACE}", aria_live="polite") if "data-says" in drawn else None
+    says = element("output", "\N{NO-BREAK SPACE}", aria_live="polite") if "<title>" in drawn else None
     return element("figure", picture, element("figcaption", caption), says)
 
 

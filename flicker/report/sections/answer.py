@@ -34,7 +34,7 @@ def answer(sheet: ChannelSheet) -> Markup:
     region = channel.risk_region.region if channel.risk_region else "unknown"
     return markup(
         _strip(channel),
-        element("p", _sign(region), sentence(channel), class_=f"sentence {region}"),
+        element("p", region_sign(region), sentence(channel), class_=f"sentence {region}"),
         pairs(entries, class_="answers"),
     )
 
@@ -63,7 +63,7 @@ def _strip(channel: ChannelReport) -> Markup | None:
     return light_strip(cycle.levels, "Four cycles of this light as a strip, bright where the light is bright")
 
 
-def _sign(region: str) -> Markup | None:
+def region_sign(region: str) -> Markup | None:
     """Draw the mark of a region, large; the sentence beside it says the same."""
     if region not in REGION_SHAPES:
         return None

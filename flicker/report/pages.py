@@ -1,4 +1,4 @@
-"""The page of captures that were measured, and of captures that were judged."""
+"""The pages that commands write: captures measured or judged, a map, a light read back from a video."""
 
 from __future__ import annotations
 
@@ -7,11 +7,13 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from flicker.report.captures import Measured
+from flicker.report.markup import Markup
 from flicker.report.page import page, sections
 from flicker.report.sheets import Statement, Sweep, article
 
 if TYPE_CHECKING:
-    from flicker.report.markup import Markup
+    from flicker.camera.screen import ScreenMap
+    from flicker.filmed import FilmReport
 
 
 def measured_page(results: Sequence[Measured], command_line: str) -> str:
@@ -75,3 +77,20 @@ def title_of(paths: Iterable[str]) -> str:
     """Name a page by its first file."""
     first, *others = [Path(path).name for path in paths] or ["nothing judged"]
     return f"{first} and {len(others)} more, flicker" if others else f"{first}, flicker"
+
+
+def map_page(found: ScreenMap, path: str, command_line: str) -> str:
+    """Make the page of a map of a video: the zones, the heat maps, the record."""
+    shown = article(Path(path).name, sections("map", found))
+    return page(title_of([path]), [shown, _record(command_line, path, found.footage.sha256)])
+
+
+def film_page(report: FilmReport, command_line: str) -> str:
+    """Make the page of a light read back from a video."""
+    shown = article(Path(report.path).name, sections("film", report))
+    return page(title_of([report.path]), [shown, _record(command_line, report.path, report.stripes.footage.sha256)])
+
+
+def _record(command_line: str, path: str, sha256: str | None) -> Markup:
+    statement = Statement.measured(command_line, [(path, sha256 or "not a file")])
+    return article("Record", sections("record", statement))
