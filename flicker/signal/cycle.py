@@ -190,8 +190,7 @@ def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cy
     fine = np.zeros(_FINE)
     for _, times in series.chunks():
         fine += np.bincount(_index(times, frequency, 0.0, _FINE), minlength=_FINE)
-    gap = longest_gap(fine)
-    bins = int(min(most_bins, max(2, series.values.size // 8), 1.0 / max(gap, 1.0 / most_bins)))
+    bins = int(min(most_bins, max(2, series.values.size // 8), _phases_seen(fine)))
     first = float((series.segments[0].start - series.centre) * frequency) - 0.5 / bins
     while True:
         parts = max(_FINE // bins, 1)
@@ -207,6 +206,14 @@ def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cy
     edges = _edges(levels, squares, counts.sum(axis=0), noise)
     offset = (0.5 / bins + first + series.centre * frequency) % 1.0
     return Cycle(frequency, fine_sums, fine_counts, sums, counts, noise, series.span, offset, edges)
+
+
+def _phases_seen(counts: FloatArray) -> float:
+    """Number of phases that samples tell apart: those they fall on, where these are few, else one a longest gap."""
+    filled = counts > 0
+    groups = int(np.count_nonzero(filled & ~np.roll(filled, 1)))
+    gap = longest_gap(counts)
+    return groups if 0.8 < groups * gap < 1.1 else 1.0 / max(gap, 1.0 / counts.size)
 
 
 def _noise(squares: FloatArray, counts: FloatArray) -> float:
