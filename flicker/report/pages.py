@@ -43,7 +43,7 @@ def measured_page(results: Sequence[Measured], command_line: str) -> str:
         for result in results
         if not result.error
     )
-    parts.append(article("Record", sections("record", Statement.measured(command_line, hashes))))
+    parts.append(article("Record", sections("record", Statement.measured(command_line, hashes)), short=True))
     return page(title_of(result.data["capture"]["path"] for result in results), parts)
 
 
@@ -68,7 +68,7 @@ def judged_page(swept: Sweep, articles: Sequence[Markup], statement: Statement) 
     parts = list(articles)
     if len(swept.points) + len(swept.errors) > 1 or swept.changes is not None:
         parts.insert(0, article("All captures", sections("sweep", swept)))
-    parts.append(article("Record", sections("record", statement)))
+    parts.append(article("Record", sections("record", statement), short=True))
     paths = [*(point.capture for point in swept.points), *(path for path, _ in swept.errors)]
     return page(title_of(dict.fromkeys(paths)), parts)
 
@@ -93,4 +93,4 @@ def film_page(report: FilmReport, command_line: str) -> str:
 
 def _record(command_line: str, path: str, sha256: str | None) -> Markup:
     statement = Statement.measured(command_line, [(path, sha256 or "not a file")])
-    return article("Record", sections("record", statement))
+    return article("Record", sections("record", statement), short=True)

@@ -85,6 +85,6 @@ def capture_article(capture: CaptureReport, advice: Iterable[Iterable[str]] | No
     return markup(*channels, article(f"{name}, all channels", sections("capture", capture)))
 
 
-def article(title: str, *contents: Markup) -> Markup:
-    """Make a part of the page under its own heading."""
-    return element("article", element("h2", title), *contents)
+def article(title: str, *contents: Markup, short: bool = False) -> Markup:
+    """Make a part of the page under its own heading; on paper it begins a new sheet unless it is short."""
+    return element("article", element("h2", title), *contents, class_="short" if short else None)
