@@ -22,6 +22,7 @@ from flicker.trace import FloatArray
 _DARK = 0.04  # of the brightest cell: below this a cell is dark
 _FAST = 90.0  # frame rate from which frames alone follow a light [Hz]
 _DEPTH, _DUTY, _PHASE = 12.0, 0.05, 0.04  # by how much neighbours of one zone may differ [%, 1, cycles]
+_GAP = 0.1  # of a cycle that no frame shows, above which depth and duty cycle are guesses
 _CODED = 0.003  # of the strongest harmonic of a cell: what coding does to every other one
 _FAINT = 0.2  # amplitude over the mean up to which coding erases some of it
 _SAME = 0.01  # relative difference of frequency within a zone
@@ -128,6 +129,8 @@ def map_screen(
         )
     cells = _Cells(footage, rows, line_time)
     frequencies = cells.frequencies()
+    if line_time is None:
+        _need_phases(footage, frequencies)
     if exposure is None:
         exposure = _likeliest_exposure(cells, frequencies)
         message = (
@@ -164,6 +167,20 @@ def map_screen(
         footage,
         tuple(notes),
     )
+
+
+def _need_phases(footage: Footage, frequencies: FloatArray) -> None:
+    """Refuse frames that show the light in a few phases of its cycle only."""
+    if not np.isfinite(frequencies).any():
+        return
+    frequency = float(np.nanmedian(frequencies))
+    phases = np.sort(footage.times * frequency % 1.0)
+    gap = float(np.diff(np.r_[phases, phases[0] + 1.0]).max())
+    if gap > _GAP:
+        raise NotMeasurable(
+            f"frames at {footage.frame_rate:.5g} Hz meet a light of {frequency:.5g} Hz in few phases of its cycle "
+            f"and leave out {100 * gap:.0f} % of it: film longer, or at another frame rate"
+        )
 
 
 class _Cells:

@@ -38,7 +38,7 @@ def command(
 
     Example:
 
-        flicker map bridge-display-960fps.mp4 --frame-rate 960 --exposure 1/2000 --figures pictures
+        flicker map bridge-display-1000fps.mp4 --frame-rate 1000 --exposure 1/2000 --figures pictures
     """
     from flicker.filmed import from_camera, map_video
     from flicker.report.video import map_words

@@ -6,18 +6,22 @@ from pathlib import Path
 
 _SETTINGS = ("dock-camera.toml", "night-watch.toml", "night-watch-new-driver.toml")
 _WALK_THROUGH = "walk-through.md"
+_FILMS = "truth-of-films.json"
 
 
 def demo_files() -> tuple[str, ...]:
     """Names of the files that `write_demo` makes, in the order in which it makes them."""
+    from flicker.demo.films import films
     from flicker.demo.scenes import SCENES
 
-    return (*(scene.file for scene in SCENES), "truth.json", *_SETTINGS, _WALK_THROUGH)
+    captures, clips = (scene.file for scene in SCENES), (film.file for film in films())
+    return (*captures, "truth.json", *_SETTINGS, *clips, _FILMS, _WALK_THROUGH)
 
 
 def write_demo(folder: Path) -> None:
     """Write the captures and all that goes with them, and a commented walk through the commands."""
     write_captures(folder)
+    write_films(folder)
     _copy(_WALK_THROUGH, folder)
 
 
@@ -34,6 +38,20 @@ def write_captures(folder: Path) -> None:
     write_text(folder / "truth.json", json.dumps(truth, indent=2, ensure_ascii=False) + "\n")
     for name in _SETTINGS:
         _copy(name, folder)
+
+
+def write_films(folder: Path) -> None:
+    """Film the clips and write their truth."""
+    import json
+
+    from flicker.demo.films import films
+    from flicker.files import write_text
+
+    clips = films()
+    for film in clips:
+        film.write(folder / film.file)
+    truth = {film.file: film.truth() for film in clips}
+    write_text(folder / _FILMS, json.dumps(truth, indent=2, ensure_ascii=False) + "\n")
 
 
 def _copy(name: str, folder: Path) -> None:

@@ -18,6 +18,7 @@ _TRANSFER_TAGS = {1: "bt709", 4: "2.2", 5: "2.8", 6: "bt709", 8: "linear", 13: "
 _TRANSFER_TAGS |= {16: "pq", 18: "hlg"}  # ITU-T H.273
 _MATRIX_TAGS = {1: "bt709", 4: "bt601", 5: "bt601", 6: "bt601", 7: "smpte240m", 9: "bt2020", 10: "bt2020"}
 _LOSSLESS = {"ffv1", "huffyuv", "ffvhuff", "utvideo", "magicyuv", "lagarith", "png", "rawvideo", "v210", "v410", "r210"}
+_ROUNDED = 1.25  # spread of stamps of a constant rate: one step of the time base, and what the fit is off
 _ALONE = 1  # picture type of a frame that is coded without others
 _HIGH_DEFINITION = 720  # lines from which untagged video is taken as BT.709: common practice, no source
 
@@ -231,7 +232,7 @@ def true_times(
         notes.append(Note("variable-frame-rate", "info", message))
         rate = (ticks.size - 1) / times[-1]
     if frame_rate is not None:
-        played = 1 / (median * time_base)
+        played = 1 / (mean * time_base)
         if abs(played / frame_rate - 1) > 1e-3:
             message = f"the file plays at {played:.6g} Hz; it is taken as shot at {frame_rate:.6g} Hz, as told"
             notes.append(Note("frame-rate-told", "info", message))
@@ -246,6 +247,6 @@ def _regular(ticks: FloatArray, step: float, stated: float) -> float | None:
         candidates.append(float(np.polyfit(number, ticks, 1)[0]))
     for interval in candidates:
         number = np.rint(ticks / interval)
-        if np.ptp(ticks - number * interval) <= 1.02 and (np.diff(number) >= 1).all():
+        if np.ptp(ticks - number * interval) <= _ROUNDED and (np.diff(number) >= 1).all():
             return interval
     return None

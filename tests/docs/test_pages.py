@@ -3,19 +3,17 @@
 import importlib.util
 import re
 import shlex
+import shutil
 import subprocess
 import sys
 from pathlib import Path
 
 import click
-import numpy as np
 import pytest
 from click.testing import CliRunner
 
-from flicker.camera.render import Lit, Shot, write_clip
 from flicker.cli import program
 from flicker.demo import demo_files, write_demo
-from flicker.light import Pulse
 
 ROOT = Path(__file__).resolve().parents[2]
 _SPEC = importlib.util.spec_from_file_location("refresh", ROOT / "docs" / "refresh.py")
@@ -41,25 +39,15 @@ def example_of(name):
 
 
 @pytest.fixture(scope="session")
-def clips(tmp_path_factory):
-    """Clips that the examples name: a generator's LED, a lamp on the dock, a display filmed fast."""
-    folder = tmp_path_factory.mktemp("clips")
-    scene = 0.14 + 0.04 * np.sin(np.arange(240)[:, None] / 23) + 0.02 * np.cos(np.arange(64) / 5)
-    still = {"noise": 0.01, "options": {"crf": "14"}}
-    generator = Shot(60e-6, 25.0, 1 / 2000, 40, [Lit(scene, [Pulse(1003.0, 0.5)])], **still)
-    lamp = Shot(14.8e-6, 25.0, 1 / 1000, 30, [Lit(scene, [Pulse(479.4, 0.5)])], **still)
-    display = Shot(1e-9, 960.0, 1 / 2000, 120, [Lit(scene[:96], [Pulse(239.7, 0.4)])], **still)
-    names = {"generator-1003hz.mp4": generator, "dock-lamp.mp4": lamp, "bridge-display-960fps.mp4": display}
-    for name, shot in names.items():
-        write_clip(folder / name, shot)
-    return [folder / name for name in names]
+def demo(tmp_path_factory):
+    folder = tmp_path_factory.mktemp("demo")
+    write_demo(folder)
+    return folder
 
 
 @pytest.fixture
-def demo_folder(tmp_path, monkeypatch, clips):
-    write_demo(tmp_path)
-    for clip in clips:
-        (tmp_path / clip.name).symlink_to(clip)
+def demo_folder(tmp_path, monkeypatch, demo):
+    shutil.copytree(demo, tmp_path, dirs_exist_ok=True)
     monkeypatch.chdir(tmp_path)
     return tmp_path
 
