@@ -8,12 +8,47 @@ from typing import TYPE_CHECKING
 
 from flicker.report.captures import Measured
 from flicker.report.markup import Markup
+from flicker.report.overview import OverviewEntry, overview_entries
 from flicker.report.page import page, sections
-from flicker.report.sheets import Statement, Sweep, article
+from flicker.report.sheets import Statement, Sweep, article, capture_article
+from flicker.report.verdicts import RULES
 
 if TYPE_CHECKING:
+    from flicker.analysis import Report
     from flicker.camera.screen import ScreenMap
     from flicker.filmed import FilmReport
+
+
+def report_page(report: Report) -> str:
+    """
+    Make the page of a report, as `flicker measure --html` and, with its verdicts, `flicker check --html` do.
+
+    Parameters
+    ----------
+    report : Report
+        From `flicker.measure`, or from `flicker.check`.
+
+    Returns
+    -------
+    str
+        HTML that needs no other file; write it as UTF-8.
+    """
+    limits = {verdict.limit.id: verdict.limit for found in report.captures for one in found.channels
+              for verdict in one.verdicts}  # fmt: skip
+    rules = {verdict.decision for found in report.captures for one in found.channels for verdict in one.verdicts}
+    said = {
+        "record": {},
+        "command_line": "",
+        "limits": [limit.to_dict() for limit in limits.values()],
+        "decision_rule": {"meaning": "; ".join(RULES[rule] for rule in sorted(rules))},
+    }
+    entries = [entry for found in report.captures for entry in overview_entries(found)]
+    parts = _side_by_side(entries, [(found.path or "", found.error) for found in report.captures if found.error])
+    read = [(found, found.capture) for found in report.captures if found.capture is not None]
+    parts += [capture_article(found) for found, _ in read]
+    hashes = tuple((found.path or "capture", capture.sha256 or "not a file") for found, capture in read)
+    parts.append(_closing(Statement(said, hashes)))
+    return page(title_of(found.path or "capture" for found in report.captures), parts)
 
 
 def measured_page(results: Sequence[Measured], command_line: str) -> str:
@@ -32,18 +67,16 @@ def measured_page(results: Sequence[Measured], command_line: str) -> str:
     str
         HTML: of several captures first all side by side, then each, then the record.
     """
-    parts: list[Markup] = []
     entries = [entry for result in results for entry in result.entries]
-    if len(entries) > 1:
-        errors = [(result.data["capture"]["path"], result.error) for result in results if result.error]
-        parts.append(article("Side by side", sections("overview", (entries, errors))))
+    errors = [(result.data["capture"]["path"], result.error) for result in results if result.error]
+    parts = _side_by_side(entries, errors)
     parts += [result.article for result in results if result.article is not None]
     hashes = tuple(
         (result.data["capture"]["path"], result.data["capture"]["sha256"] or "not a file")
         for result in results
         if not result.error
     )
-    parts.append(article("Record", sections("record", Statement.measured(command_line, hashes)), short=True))
+    parts.append(_closing(Statement.measured(command_line, hashes)))
     return page(title_of(result.data["capture"]["path"] for result in results), parts)
 
 
@@ -68,7 +101,7 @@ def judged_page(swept: Sweep, articles: Sequence[Markup], statement: Statement) 
     parts = list(articles)
     if len(swept.points) + len(swept.errors) > 1 or swept.changes is not None:
         parts.insert(0, article("All captures", sections("sweep", swept)))
-    parts.append(article("Record", sections("record", statement), short=True))
+    parts.append(_closing(statement))
     paths = [*(point.capture for point in swept.points), *(path for path, _ in swept.errors)]
     return page(title_of(dict.fromkeys(paths)), parts)
 
@@ -92,5 +125,12 @@ def film_page(report: FilmReport, command_line: str) -> str:
 
 
 def _record(command_line: str, path: str, sha256: str | None) -> Markup:
-    statement = Statement.measured(command_line, [(path, sha256 or "not a file")])
+    return _closing(Statement.measured(command_line, [(path, sha256 or "not a file")]))
+
+
+def _closing(statement: Statement) -> Markup:
     return article("Record", sections("record", statement), short=True)
+
+
+def _side_by_side(entries: Sequence[OverviewEntry], errors: Sequence[tuple[str, str]]) -> list[Markup]:
+    return [article("Side by side", sections("overview", (entries, errors)))] if len(entries) > 1 else []

@@ -49,7 +49,9 @@ def record_words(statement: Mapping[str, Any], hashes: Sequence[tuple[str, str]]
 def record_entries(statement: Mapping[str, Any]) -> list[tuple[str, str]]:
     """Give the items of a statement, each with its label; of captures that were only measured no rule is stated."""
     entries = [(ITEMS[key], str(value)) for key, value in statement["record"].items()]
-    entries += [("program", f"flicker {__version__}"), ("command", statement["command_line"])]
+    entries.append(("program", f"flicker {__version__}"))
+    if statement["command_line"]:
+        entries.append(("command", statement["command_line"]))
     if statement["limits"]:
         entries.append(("decision rule", statement["decision_rule"]["meaning"]))
     sources = dict.fromkeys(f"{limit['source']} ({limit['basis']})" for limit in statement["limits"])
