@@ -1,4 +1,4 @@
-"""The page of a large capture is small and ready at once; a report with its page costs little more than empty panels."""
+"""Pages of large captures are small and ready at once; a report with its page costs little more than empty panels."""
 
 import shutil
 import subprocess

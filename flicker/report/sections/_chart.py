@@ -161,7 +161,7 @@ class Chart:
         """Write words at a place, lifted by some units; they never run out of the drawing."""
         half = 3.6 * len(words) if anchor == "middle" else 0.0
         place = min(max(float(self.across(x)), _LEFT + half), WIDTH - self.right - half)
-        height = max(float(self.up(y)) - lift, _TOP + 10)
+        height = max(float(self.up(y)) - lift, _TOP + 25)
         self._write(place, height, words, anchor, kind)
 
     def along(self, x: float, y: float, words: str, kind: str) -> None:

@@ -60,9 +60,9 @@ def draw_plane(
         (True, True),
     )  # fmt: skip
     _regions(chart, *risk_curves())
-    for limit in limits:
-        if isinstance(limit.bound, Curve):
-            _bound(chart, limit.bound, "other")
+    others = {limit.id: limit.bound for limit in limits if isinstance(limit.bound, Curve)}
+    for bound in others.values():
+        _bound(chart, bound, "other")
     chart.marks([(x, y, f"line of {quantity(y, '%', 3)} at {quantity(x, 'Hz', 5)}") for x, y in found], "bar", "faint")
     chart.marks(
         [
@@ -78,8 +78,8 @@ def draw_plane(
     if not placed and not found:
         chart.name(100.0, 0.3, "steady light: no modulation was found")
     caption = f"Modulation over frequency with the regions of {STANDARD}; large marks: families, small ones: lines"
-    if any(isinstance(limit.bound, Curve) for limit in limits):
-        caption += "; dotted: the other limits it was held against"
+    if others:
+        caption += f"; dotted: {', '.join(others)}"
     return chart.figure(caption, told)
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -109,7 +110,7 @@ def _belongs_to(line: Component, families: tuple[Family, ...]) -> str:
 
 
 def _name(family: Family) -> str:
-    origin = family.origin.split(":")[0].split(",")[0]
+    origin = re.split(r"[:,(]", family.origin)[0].strip()
     return " ".join(part for part in (quantity(family.fundamental.value or 0.0, "Hz", 4), origin) if part)
 
 
