@@ -10,5 +10,7 @@ for (const figure of document.querySelectorAll("figure")) {
   figure.addEventListener("pointerover", say);
   figure.addEventListener("pointerdown", say);
   figure.addEventListener("focusin", say);
-  figure.addEventListener("pointerleave", () => (said.textContent = resting));
+  figure.addEventListener("pointerleave", (event) => {
+    if (event.pointerType === "mouse") said.textContent = resting; // a finger that is lifted leaves too
+  });
 }

@@ -71,7 +71,13 @@ def spectrum(sheet: ChannelSheet) -> Markup | None:
     ]
     told = "; ".join(f"{row[1]} at {row[0]}" for row in rows[:3]) or "no line was found"
     more = element("p", f"the strongest of {len(lines)} lines; --json lists them all", class_="reason")
-    caption = "Peak amplitude over frequency; a mark stands on each line that was found, one shape for each family"
+    caption = "Peak amplitude over frequency; " + (
+        "a mark stands on each line that was found, one shape for each family"
+        if lines
+        else "no line rises above the noise"
+        if relative
+        else "no depth, and so no line, without the mean level"
+    )
     head = ("line", "modulation", *(["family"] if several else []))
     listed = markup(table(head, rows, numbers=(0, 1)), more if len(lines) > len(rows) else None) if rows else None
     return element(

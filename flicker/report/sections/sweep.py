@@ -35,6 +35,7 @@ if TYPE_CHECKING:
     from flicker.sweep.course import Course, Point
 
 _MOST_ROWS = 300
+_MOST_COURSES = 12
 _MEASURES = ("percent_flicker", "fundamental_frequency", "flicker_index", "svm", "pst_lm", "duty_cycle")
 _VERDICTS = {"fail": "breaks a limit", "undecided": "undecided", "pass": "keeps every limit", "not-applicable": ""}
 _MIDDLE = 50.0  # of the axis of levels [%]
@@ -52,8 +53,12 @@ def sweep_answer(swept: Sweep) -> Markup:
             element("h4", course_title(course)),
             element("ul", *(element("li", sentence) for sentence in course_sentences(course))),
         )
-        for course in swept.courses
+        for course in _worst(swept.courses)
     ]
+    if len(swept.courses) > _MOST_COURSES:
+        courses.insert(
+            0, element("p", f"the {_MOST_COURSES} worst of {len(swept.courses)} dimming ranges", class_="reason")
+        )
     changed = change_headline(swept.changes) if swept.changes is not None else None
     return markup(
         element("p", sign, sweep_headline(swept.points, swept.errors), class_=f"sentence {outcome}"),
@@ -62,6 +67,12 @@ def sweep_answer(swept: Sweep) -> Markup:
         *courses,
         not_read(swept.errors),
     )
+
+
+def _worst(courses: Sequence[Course]) -> Sequence[Course]:
+    """Of very many dimming ranges the worst, in the order in which they came."""
+    kept = sorted(courses, key=lambda course: weight(course.worst))[:_MOST_COURSES]
+    return [course for course in courses if course in kept]
 
 
 def _next_step(swept: Sweep, outcome: Outcome) -> Markup | None:
@@ -81,7 +92,7 @@ def sweep_courses(swept: Sweep) -> Markup | None:
     """Draw each measure over the dimming level, one mark a capture."""
     drawn = [
         markup(element("h4", course_title(course)), element("div", *charts, class_="drawings"))
-        for course in swept.courses
+        for course in _worst(swept.courses)
         if (charts := _charts(course, swept))
     ]
     return markup(*drawn) or None
@@ -111,8 +122,13 @@ def sweep_changes(swept: Sweep) -> Markup | None:
     """Lay two sweeps beside each other, step by step."""
     if not swept.changes:
         return None
-    head, rows = change_rows(swept.changes)
-    return table(head, rows, numbers=range(5))
+    shown = sorted(swept.changes, key=lambda change: weight(change.after))[:_MOST_ROWS]
+    head, rows = change_rows(shown)
+    more = len(swept.changes) - len(shown)
+    return markup(
+        table(head, rows, numbers=range(5)),
+        element("p", f"and {more} milder ones: --json lists them all", class_="reason") if more else None,
+    )
 
 
 def _charts(course: Course, swept: Sweep) -> list[Markup]:

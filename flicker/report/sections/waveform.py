@@ -30,12 +30,19 @@ def waveform(sheet: ChannelSheet) -> Markup:
     channel = sheet.channel
     trace = channel.trace
     count = _first_cycles(channel)
-    drawn = [_readings(channel, count, "The first cycles, as recorded" if count < trace.samples else "As recorded")]
+    drawn = [_readings(channel, count, _beginning(channel, count))]
     if trace.samples > _WHOLE_FROM * count:
         drawn.append(_readings(channel, trace.samples, "The whole capture"))
     with suppress(NotMeasurable):
         drawn.insert(1, _mean_cycle(channel))
     return element("div", *drawn, class_="drawings")
+
+
+def _beginning(channel: ChannelReport, count: int) -> str:
+    if count >= channel.trace.samples:
+        return "As recorded"
+    periodic = channel.measures["fundamental_frequency"].value is not None
+    return f"The first {'cycles' if periodic else _span(channel.trace, count)}, as recorded"
 
 
 def _first_cycles(channel: ChannelReport) -> int:
