@@ -151,8 +151,28 @@ def test_a_mark_of_a_sweep_says_its_capture(opened):
     figure.locator("g.mark.fail").first.hover()
     said = figure.locator("output").inner_text()
     assert re.search(r"after-\d+\.csv: FAIL by ieee1789-low-risk", said)
-    figure.locator("g.mark.faint").first.focus()
-    assert figure.locator("output").inner_text().startswith("before: ")
+
+
+def test_the_keyboard_goes_from_mark_to_mark(opened):
+    page = opened("sweep")
+    figure = page.locator("figure").first
+    assert figure.locator('[tabindex="0"]').count() == 1, "one stop of the tab key a figure"
+    figure.locator('[tabindex="0"]').focus()
+    said = []
+    for _ in range(3):
+        said.append(figure.locator("output").inner_text())
+        page.keyboard.press("ArrowRight")
+    assert [words.removeprefix("before: ").split(":")[0] for words in said] == ["5 %", "5 %", "10 %"]
+    assert sum(words.startswith("before: ") for words in said) >= 1
+
+
+def test_the_keyboard_goes_over_the_cells_of_a_map(opened):
+    page = opened("map")
+    figure = page.locator("figure").first
+    figure.locator('[tabindex="0"]').focus()
+    for key in ("ArrowDown", "ArrowRight", "ArrowUp", "ArrowUp"):
+        page.keyboard.press(key)
+    assert figure.locator("output").inner_text().startswith("row 1, column 2: ")
 
 
 def test_a_cell_of_a_map_says_its_values_to_who_touches_it(opened):

@@ -130,7 +130,6 @@ class Chart:
                     element("path", d=SHAPES[shape]),
                     class_=f"mark {kind}",
                     transform=f"translate({self.across(x):.1f} {self.up(y):.1f})",
-                    tabindex=0,
                 )
             )
 

@@ -76,7 +76,7 @@ def draw_plane(
         if number == 0:
             chart.name(x, y, f"{quantity(y, '%', 3)} at {quantity(x, 'Hz', 4)}", lift=-19 if y > _BELOW else 11)
     if not placed and not found:
-        chart.name(800.0, 0.6, "steady light: no modulation was found")
+        chart.name(400.0, 0.6, "steady light")
     caption = f"Modulation over frequency with the regions of {STANDARD}; large marks: families, small ones: lines"
     if others:
         caption += f"; dotted: {', '.join(others)}"
