@@ -11,6 +11,8 @@ from flicker.report.record import CAUTION, record_entries
 if TYPE_CHECKING:
     from flicker.report.sheets import Statement
 
+_LISTED_OPENLY = 30
+
 
 @section(of="record", title="For the laboratory", order=10)
 def record(statement: Statement) -> Markup:
@@ -18,5 +20,8 @@ def record(statement: Statement) -> Markup:
     entries: list[tuple[str, Content]] = [*record_entries(statement.said)]
     files = [element("li", path, element("br"), element("code", digest)) for path, digest in statement.captures]
     if files:
-        entries.append(("captures (SHA-256)", element("ul", *files)))
+        listed = element("ul", *files)
+        if len(files) > _LISTED_OPENLY:
+            listed = element("details", element("summary", f"{len(files)} captures"), listed)
+        entries.append(("captures (SHA-256)", listed))
     return markup(pairs(entries), element("p", CAUTION, class_="reason"))

@@ -81,7 +81,7 @@ def _next_step(swept: Sweep, outcome: Outcome) -> Markup | None:
         return None
     worst = min(swept.points, key=weight)
     cure = {
-        "fail": f"begin with the worst capture, flicker margin {worst.capture} says what would cure it",
+        "fail": f"begin with the worst capture: flicker margin {worst.capture} says what would cure it",
         "undecided": "cure what keeps captures undecided; the reasons stand under the table",
     }
     return pairs([("Next", element("strong", cure[outcome]))], class_="answers")
