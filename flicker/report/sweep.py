@@ -78,7 +78,7 @@ def sweep_headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -
     """Say how many captures keep the limits."""
     counts = Counter(point.verdict for point in points)
     judged = len({point.capture for point in points})
-    what = "captures" if judged == len(points) else f"channels of {judged} captures"
+    what = "captures" if judged == len(points) else f"channels of {judged} capture{'s' if judged > 1 else ''}"
     parts = [f"{counts[outcome]} {_KEEP[outcome][counts[outcome] > 1]}" for outcome in OUTCOMES if counts[outcome]]
     if errors:
         parts.append(f"{len(errors)} more could not be read")
