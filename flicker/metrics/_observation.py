@@ -62,11 +62,11 @@ class Observation:
     @cached_property
     def cycles(self) -> tuple[Cycle, ...]:
         """Mean cycle of each family with the others taken off, in the order of `search.families`."""
-        families = self.search.families
-        return tuple(
-            fold(self.search.without(self.series, families[:place] + families[place + 1 :]), fit.frequency)
-            for place, fit in enumerate(families)
-        )
+        families, cycles = self.search.families, []
+        for place, fit in enumerate(families):
+            alone = self.search.without(self.series, families[:place] + families[place + 1 :])
+            cycles.append(fold(alone, fit.frequency, track=fit.track))
+        return tuple(cycles)
 
     @cached_property
     def family_extremes(self) -> tuple[Extremes, ...]:

@@ -12,6 +12,7 @@ import numpy.typing as npt
 from flicker.errors import NotMeasurable
 from flicker.signal.harmonics import Series, longest_gap
 from flicker.signal.intervals import student_quantile
+from flicker.signal.track import Track
 from flicker.trace import FloatArray
 
 _MOST_BINS = 2048
@@ -159,7 +160,7 @@ class Cycle:
             yield moved
 
 
-def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cycle:
+def fold(series: Series, frequency: float, *, track: Track | None = None, most_bins: int = _MOST_BINS) -> Cycle:
     """
     Fold a signal on its period.
 
@@ -169,6 +170,8 @@ def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cy
         Readings above dark.
     frequency : float
         Of the cycle. [Hz]
+    track : Track, optional
+        Of the phase, where the frequency wanders.
     most_bins : int
         Bins of phase at the most; fewer where samples are few, or where a sample rate that is nearly a multiple
         of the frequency leaves phases that no sample has seen.
@@ -189,12 +192,12 @@ def fold(series: Series, frequency: float, *, most_bins: int = _MOST_BINS) -> Cy
     groups = max(2, min(_MOST_GROUPS, int(cycles)))
     fine = np.zeros(_FINE)
     for _, times in series.chunks():
-        fine += np.bincount(_index(times, frequency, 0.0, _FINE), minlength=_FINE)
+        fine += np.bincount(_index(_phase(series, times, frequency, track), _FINE), minlength=_FINE)
     bins = int(min(most_bins, max(2, series.values.size // 8), _phases_seen(fine)))
     first = float((series.segments[0].start - series.centre) * frequency) - 0.5 / bins
     while True:
         parts = max(_FINE // bins, 1)
-        fine_sums, fine_counts, square = _group_sums(series, frequency, first, groups, bins, parts)
+        fine_sums, fine_counts, square = _group_sums(series, frequency, track, first, groups, bins, parts)
         sums, counts = (fine.reshape(groups, bins, parts).sum(axis=2) for fine in (fine_sums, fine_counts))
         if bins <= 2 or (counts[::2].sum(axis=0).min() > 0 and counts[1::2].sum(axis=0).min() > 0):
             break
@@ -239,13 +242,17 @@ def _edges(levels: FloatArray, squares: FloatArray, counts: FloatArray, noise: f
     return np.asarray(restless & between & (np.abs(after - before) > 8 * noise / np.sqrt(counts)))
 
 
-def _index(times: FloatArray, frequency: float, first: float, bins: int) -> np.ndarray:
-    phase = times * frequency - first
+def _phase(series: Series, times: FloatArray, frequency: float, track: Track | None) -> FloatArray:
+    steady = times * frequency
+    return steady if track is None else steady + track.at(times + series.centre)
+
+
+def _index(phase: FloatArray, bins: int) -> np.ndarray:
     return np.minimum(((phase - np.floor(phase)) * bins).astype(np.intp), bins - 1)
 
 
 def _group_sums(
-    series: Series, frequency: float, first: float, groups: int, bins: int, parts: int
+    series: Series, frequency: float, track: Track | None, first: float, groups: int, bins: int, parts: int
 ) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Sums and counts by group and part of a bin, shape (groups, bins * parts); sums of squares by bin, (bins,)."""
     cells = bins * parts
@@ -255,7 +262,7 @@ def _group_sums(
     for part, times in series.chunks():
         values = series.values[part]
         group = np.minimum(((times - begin) * per_second).astype(np.intp), groups - 1)
-        index = _index(times, frequency, first, cells)
+        index = _index(_phase(series, times, frequency, track) - first, cells)
         cell = group * cells + index
         sums += np.bincount(cell, values, minlength=groups * cells)
         counts += np.bincount(cell, minlength=groups * cells)

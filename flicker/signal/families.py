@@ -11,12 +11,17 @@ import numpy as np
 from flicker.signal.harmonics import HarmonicFit, Series, fit_harmonics
 from flicker.signal.spectrum import Spectrum, spectrum
 from flicker.signal.switching import sharpen
+from flicker.signal.wander import follow, refine
 from flicker.trace import FloatArray
 
 _MOST_FAMILIES = 6
+_FOLDED = 0.1  # of the spectrum
+_ALIASES = 200  # harmonics of a known light that are not taken for another one, beyond the Nyquist frequency too
 _MOST_DIVISOR = 8
 _EXCERPT = 1 << 19  # samples that settle the octave
 _ROUNDS = 2  # in which each family is fitted beside the others
+_RULERS = (4, 16, 64)  # harmonics that refine a track, one after the other
+_CLEARLY = 0.8  # of the noise that a steady frequency leaves
 _FEWEST_CYCLES = 1.5
 _FEWEST_CYCLES_BELOW = 3.0  # of a fundamental below the strongest line: fewer could be drift
 
@@ -65,7 +70,7 @@ def find_families(series: Series) -> Search:
         line = _next_line(now, lowest, series.sample_rate / 2, families)
         if line is None:
             break
-        fit = _settle_octave(left, fit_harmonics(left, line[0]), now)
+        fit = _followed(left, line[0], _settle_octave(left, fit_harmonics(left, line[0]), now), now)
         if fit.frequency * series.span < _FEWEST_CYCLES:
             break
         families.append(fit)
@@ -75,11 +80,22 @@ def find_families(series: Series) -> Search:
     for _ in range(_ROUNDS if len(families) > 1 else 0):
         for place, fit in enumerate(families):
             rest = families[:place] + families[place + 1 :]
-            families[place] = fit_harmonics(_without(series, rest), fit.frequency)
+            families[place] = fit_harmonics(_without(series, rest), fit.frequency, track=fit.track)
     for place, fit in enumerate(families):
         families[place] = sharpen(_without(series, families[:place] + families[place + 1 :]), fit)
     families.sort(key=lambda fit: -_strength(fit))
     return Search(tuple(families), now.floor, first)
+
+
+def _followed(series: Series, line: float, steady: HarmonicFit, now: Spectrum) -> HarmonicFit:
+    """Fit a line once more along its wandering phase, and keep that where it leaves clearly less."""
+    found = follow(series, line)
+    if found is None:
+        return steady
+    fit = _settle_octave(series, fit_harmonics(series, found[0], track=found[1]), now)
+    for harmonics in _RULERS:
+        fit = fit_harmonics(series, fit.frequency, track=refine(series, fit, harmonics))
+    return fit if fit.noise < _CLEARLY * steady.noise else steady
 
 
 def _longest_run(series: Series) -> FloatArray:
@@ -107,9 +123,14 @@ def _next_line(now: Spectrum, lowest: float, highest: float, families: list[Harm
     """Find the strongest line that is neither left over from a family's harmonics nor lost among their aliases."""
     skip = []
     for fit in families:
-        reach = 3.0 * now.resolution + 3.0 * fit.frequency_error
-        for number in range(1, min(int(highest / fit.frequency), 200) + 1):
-            middle = number * fit.frequency
+        wander = fit.track.deviation if fit.track else 0.0
+        seen = int(np.ceil(highest / fit.frequency))
+        folded = int(_FOLDED * highest / (6.0 * now.resolution))  # aliases may hide a small part of the spectrum only
+        for number in range(1, min(max(seen, folded), _ALIASES) + 1):
+            middle = abs(
+                (number * fit.frequency + highest) % (2 * highest) - highest
+            )  # folded at the Nyquist frequency
+            reach = 3.0 * (now.resolution + fit.frequency_error) + 2.0 * number * wander
             skip.append(slice(max(int((middle - reach) / now.spacing), 0), int((middle + reach) / now.spacing) + 2))
     line = now.strongest_line(lowest, highest, skip)
     unmodelled = max((2.0 * fit.unresolved for fit in families), default=0.0)
@@ -118,7 +139,7 @@ def _next_line(now: Spectrum, lowest: float, highest: float, families: list[Harm
 
 def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicFit:
     """Where the strongest line is a harmonic, go down to the fundamental that fills the places between."""
-    part = series.excerpt(_EXCERPT)
+    part, track = series.excerpt(_EXCERPT), fit.track
     for divisor in (2, 3, 4, 5):
         fundamental = fit.frequency / divisor
         if fundamental < _FEWEST_CYCLES_BELOW * now.resolution:
@@ -127,7 +148,8 @@ def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicF
         places = [n for n in places if n * fundamental < series.sample_rate / 2]
         if not _hinted(now, [n * fundamental for n in places]):
             continue
-        lower = fit_harmonics(part, fundamental, harmonics=2 * divisor)
+        slower = track.scaled(1 / divisor) if track else None
+        lower = fit_harmonics(part, fundamental, harmonics=2 * divisor, track=slower)
         if abs(lower.frequency - fundamental) > 4 * (lower.frequency_error + fit.frequency_error / divisor):
             continue
         if lower.amplitudes.size < 2 * divisor:
@@ -135,7 +157,7 @@ def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicF
         heights = np.abs(lower.amplitudes[np.array(places) - 1])
         least = max(4.0 * lower.amplitude_error, 3 * fit.unresolved)
         if np.count_nonzero(heights > least) * 2 >= len(places):
-            whole = fit_harmonics(series, lower.frequency)
+            whole = fit_harmonics(series, lower.frequency, track=slower)
             filled = [n for n in places if n <= whole.amplitudes.size]
             if whole.noise < fit.noise and _locked(series, whole, filled):
                 return whole
@@ -174,7 +196,8 @@ def _merge_related(series: Series, families: list[HarmonicFit]) -> list[Harmonic
         if abs(newest.frequency / ratio.numerator - fundamental) > 4 * error:
             continue
         rest = earlier[:place] + earlier[place + 1 :]
-        joined = fit_harmonics(_without(series, rest), fundamental)
+        track = other.track.scaled(1 / ratio.denominator) if other.track else None
+        joined = fit_harmonics(_without(series, rest), fundamental, track=track)
         upper = max(ratio.numerator, ratio.denominator)
         heights = np.abs(joined.amplitudes[: upper - 1])
         if np.count_nonzero(heights > 4 * joined.amplitude_error) * 2 >= upper - 1:

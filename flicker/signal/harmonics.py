@@ -10,6 +10,7 @@ import numpy as np
 import scipy.fft
 
 from flicker.light import ComplexArray
+from flicker.signal.track import Track
 from flicker.trace import FloatArray, Segment
 
 _BINS = 1 << 15  # of phase; a harmonic k then loses 1 - sinc(k / bins), under 1e-3 at k = 2048
@@ -87,16 +88,19 @@ class _Binned:
     value_time: FloatArray
 
 
-def _bin_by_phase(series: Series, frequency: float, offset: float, bins: int) -> _Binned:
+def _bin_by_phase(series: Series, frequency: float, offset: float, bins: int, track: Track | None) -> _Binned:
     """Sum by phase; `bins` is a power of two. Many samples are weighted with the time of their piece, not their own."""
-    many = series.values.size >= _MANY
+    many = series.values.size >= _MANY and track is None
     length = series.values.size // (2 * _BLOCKS) if many else _CHUNK
     ramp = np.arange(min(length, series.values.size), dtype=float)
     turns, seconds = ramp * (frequency * bins / series.sample_rate), ramp / series.sample_rate
     sums = np.zeros((5, bins))
     for part, begin in series.pieces(length):
         size = part.stop - part.start
-        index = (turns[:size] + (begin * frequency) % 1.0 * bins).astype(np.intp)
+        place = turns[:size] + (begin * frequency) % 1.0 * bins
+        if track is not None:
+            place += (track.at(seconds[:size] + (begin + series.centre)) + track.lag) * bins
+        index = place.astype(np.intp)
         index &= bins - 1
         values = series.values[part]
         if many:
@@ -137,6 +141,7 @@ class HarmonicFit:
     samples: int
     centre: float  # [s]
     longest_gap: float  # longest stretch of phase that no sample has seen [cycles]
+    track: Track | None = None  # of the phase, where the frequency wanders
 
     @property
     def amplitude_error(self) -> float:
@@ -153,8 +158,13 @@ class HarmonicFit:
     def at(self, times: FloatArray) -> FloatArray:
         """Evaluate the fit at times, shape (n,), through a table of its cycle."""
         table = self.table(_BINS)
-        phase = (times - self.centre) * self.frequency
+        phase = self.phase(times)
         return table[np.minimum(((phase - np.floor(phase)) * _BINS).astype(np.intp), _BINS - 1)]
+
+    def phase(self, times: FloatArray) -> FloatArray:
+        """Phase at times, shape (n,). [cycles]"""
+        steady = (times - self.centre) * self.frequency
+        return steady if self.track is None else steady + self.track.at(times)
 
     def table(self, size: int) -> FloatArray:
         """One cycle of the fit at phases (b + 0.5) / size from the centre, shape (size,)."""
@@ -206,7 +216,12 @@ def _solve(count: FloatArray, sums: FloatArray, harmonics: int, tolerance: float
 
 
 def fit_harmonics(
-    series: Series, frequency: float, *, harmonics: int | None = None, most: int = _MOST_HARMONICS
+    series: Series,
+    frequency: float,
+    *,
+    harmonics: int | None = None,
+    most: int = _MOST_HARMONICS,
+    track: Track | None = None,
 ) -> HarmonicFit:
     """
     Refine the frequency of a periodic signal, using every harmonic that rises above the noise and every sample.
@@ -219,6 +234,8 @@ def fit_harmonics(
         Starting value, within a third of 1 / span of the truth. [Hz]
     harmonics : int, optional
         Fit just so many; otherwise their number doubles as long as the added ones carry significant energy.
+    track : Track, optional
+        Of the phase, where the frequency wanders.
     most : int
         Never more than so many, nor than reach the Nyquist frequency or 192.
 
@@ -236,19 +253,19 @@ def fit_harmonics(
     """
     most = min(most, max(_FEWEST_ALLOWED, int(series.sample_rate / (2 * frequency))))
     if harmonics is not None:
-        return _with_robust_error(series, _Fitting(series).fit(frequency, harmonics, _BINS))
+        return _with_robust_error(series, _Fitting(series, track).fit(frequency, harmonics, _BINS))
     part = series.excerpt(_EXCERPT)
-    best = _climb(_Fitting(part), frequency, (1, 3), most)
-    whole = _Fitting(series)
+    best = _climb(_Fitting(part, track), frequency, (1, 3), most)
+    whole = _Fitting(series, track)
     if part is not series:
         first = 1 if best.frequency_error * series.span * best.amplitudes.size > _SURE else best.amplitudes.size
         best = _climb(whole, frequency if first == 1 else best.frequency, (first, best.amplitudes.size), most)
     return _with_robust_error(series, _sharpest(whole, best.frequency, best.amplitudes.size))
 
 
-def refit(series: Series, frequency: float, harmonics: int) -> HarmonicFit:
+def refit(series: Series, frequency: float, harmonics: int, track: Track | None = None) -> HarmonicFit:
     """Fit the amplitudes at a known frequency [Hz]."""
-    return dataclasses.replace(_Fitting(series).fit(frequency, harmonics, _BINS, steps=1), frequency=frequency)
+    return dataclasses.replace(_Fitting(series, track).fit(frequency, harmonics, _BINS, steps=1), frequency=frequency)
 
 
 def _sharpest(fitting: _Fitting, frequency: float, harmonics: int) -> HarmonicFit:
@@ -259,7 +276,8 @@ def _sharpest(fitting: _Fitting, frequency: float, harmonics: int) -> HarmonicFi
     half = fitting.fit(frequency, harmonics // 2, _BINS)  # few samples cannot tell many harmonics from a frequency
     if half.frequency_error > 0.7 * fit.frequency_error:
         return fit
-    return dataclasses.replace(refit(fitting.series, half.frequency, harmonics), frequency_error=half.frequency_error)
+    fit = refit(fitting.series, half.frequency, harmonics, fitting.track)
+    return dataclasses.replace(fit, frequency_error=half.frequency_error)
 
 
 def _climb(fitting: _Fitting, frequency: float, first: tuple[int, int], most: int) -> HarmonicFit:
@@ -288,8 +306,8 @@ def _bins(harmonics: int) -> int:
 class _Fitting:
     """A series about to be fitted; its mean and power are taken once."""
 
-    def __init__(self, series: Series) -> None:
-        self.series = series
+    def __init__(self, series: Series, track: Track | None) -> None:
+        self.series, self.track = series, track
         self.offset = float(series.values.mean())
         self.power = float(sum(np.square(series.values[part] - self.offset).sum() for part, _ in series.chunks()))
 
@@ -297,7 +315,7 @@ class _Fitting:
         """Gauss-Newton with a fixed number of harmonics, fewer where the phases that were seen cannot tell so many."""
         series = self.series
         for _ in range(steps if harmonics < 3 else min(steps, 4)):
-            binned = _bin_by_phase(series, frequency, self.offset, bins)
+            binned = _bin_by_phase(series, frequency, self.offset, bins, self.track)
             gap = longest_gap(binned.count)
             allowed = max(1, min(harmonics, int(0.45 / gap) if gap > 0 else harmonics, series.values.size // 4))
             coefficients = _solve(binned.count, binned.value, allowed)
@@ -315,6 +333,7 @@ class _Fitting:
             series.values.size,
             series.centre,
             gap,
+            self.track,
         )
 
 
@@ -336,7 +355,7 @@ def _with_robust_error(series: Series, fit: HarmonicFit) -> HarmonicFit:
     scores, information = np.zeros(blocks), 0.0
     first = series.segments[0].start - series.centre
     for part, times in series.chunks():
-        phase = times * fit.frequency
+        phase = fit.phase(times + series.centre)
         index = np.minimum(((phase - np.floor(phase)) * _BINS).astype(np.intp), _BINS - 1)
         along = slope[index] * times
         information += float(np.dot(along, along))

@@ -77,7 +77,7 @@ def sharpen(series: Series, fit: HarmonicFit) -> HarmonicFit:
     ends = [_end(room, best, limit) for limit in (-most, most)]
     frequency = fit.frequency + 0.5 * (ends[0] + ends[1])
     error = 0.25 * (ends[1] - ends[0])
-    return dataclasses.replace(refit(series, frequency, fit.amplitudes.size), frequency_error=error)
+    return dataclasses.replace(refit(series, frequency, fit.amplitudes.size, fit.track), frequency_error=error)
 
 
 def _beside(
@@ -86,7 +86,7 @@ def _beside(
     """Phases from an edge [cycles], times from the centre [s] and values of the samples beside each edge."""
     found: list[list[tuple[FloatArray, FloatArray, FloatArray]]] = [[] for _ in places]
     for part, times in series.chunks():
-        phase = times * fit.frequency + (series.centre - fit.centre) * fit.frequency
+        phase = fit.phase(times + series.centre)
         for rows, place in zip(found, places.tolist(), strict=True):
             offset = (phase - place + 0.5) % 1.0 - 0.5
             near = np.abs(offset) < reach
