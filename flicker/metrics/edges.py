@@ -84,7 +84,7 @@ def decay_time(cycle: Cycle) -> Measure:
     """
     tail = decay_tail(cycle.levels, float(np.quantile(cycle.standard_error, 0.5)))
     if tail is None:
-        raise NotMeasurable("nothing falls exponentially in this cycle: a decay time needs light that is switched off")
+        raise NotMeasurable("no edge with an exponential tail behind it in this cycle: a decay time needs light that is switched off")
     value, half = cycle.interval(tail.time_of)
     if not half < _VAGUE * value:
         raise NotMeasurable("the tail is too short or too noisy for a decay time: record longer, or at a longer pause")

@@ -15,6 +15,8 @@ _FEWEST = 8  # bins of a tail
 _FASTEST = 1.5  # 1/e time of a tail [bins]
 _SLOWEST = 8.0  # 1/e time of a tail over the stretch that is seen of it
 _CLEAR = 15.0  # fall of a tail over the standard error of a bin
+_ROUNDED = 0.2  # of the swing: so far the sensor may round the edge before a tail
+_LARGEST = 50.0  # exponent
 _STARTS = (0.9, 0.6, 0.4, 0.25, 0.15, 0.1)  # of the swing, from which a tail may begin
 
 
@@ -124,7 +126,8 @@ def decay_tail(levels: FloatArray, noise: float) -> Tail | None:
     -------
     Tail or None
         The longest stretch before the next rise that an exponential describes to within the noise or 0.7 % of its
-        fall; None where there is none that bends.
+        fall; None where there is none that bends, or where the light went down to it more slowly than the exponential
+        itself would have: the foot of a slow sine is no tail.
 
     Notes
     -----
@@ -146,9 +149,17 @@ def decay_tail(levels: FloatArray, noise: float) -> Tail | None:
         bends = _FASTEST <= fit.time <= _SLOWEST * part.size and fit.swing > 0
         bent = fit.left[: max(_FEWEST, int(4.0 * fit.time))]
         quiet = 1.3 * noise * min(1.0, (_PIECES / bent.size) ** 0.5)
-        if bends and drop > _CLEAR * noise and _misfit(bent) < max(quiet, 0.007 * drop):
+        follows = bends and _follows_an_edge(fall, fit, first, peak, low + _STARTS[0] * (high - low))
+        if follows and drop > _CLEAR * noise and _misfit(bent) < max(quiet, 0.007 * drop):
             return Tail(turn, first, fall.size - 1, fit.time)
     return None
+
+
+def _follows_an_edge(fall: FloatArray, fit: _Exponential, first: int, peak: int, top: float) -> bool:
+    """Whether the light fell from `top` to the start of the stretch at least as fast as the exponential would have."""
+    begin = peak + int(np.argmax(fall[peak:] <= top))
+    earlier = fit.swing * math.expm1(min((first - begin) / fit.time, _LARGEST))
+    return float(fall[first]) + earlier <= top + _ROUNDED * float(np.ptp(fall))
 
 
 def _onset_of_rise(levels: FloatArray, noise: float) -> int:

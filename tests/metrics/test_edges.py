@@ -10,6 +10,7 @@ from hypothesis import strategies as st
 from flicker.errors import NotMeasurable
 from flicker.metrics import Observation
 from flicker.metrics.edges import decay_time, fall_time, rise_time
+from flicker.signal.edges import decay_tail
 from flicker.waveforms import pwm, rectified_sine, sampled, sine, triangle
 
 
@@ -98,3 +99,14 @@ def test_light_without_edges_says_so(light):
 def test_edges_that_the_samples_do_not_resolve():
     with pytest.raises(NotMeasurable, match="faster than the samples resolve"):
         rise_time(cycle_of(pwm(240.3, 0.3).at))
+
+
+@pytest.mark.parametrize("noise", [0.0, 0.005, 0.02])
+@pytest.mark.parametrize("bins", [100, 400, 1000])
+@pytest.mark.parametrize("second", [0.0, 0.1, 0.2])
+def test_the_foot_of_a_slow_sine_is_no_tail(bins, second, noise):
+    """Definition: a tail is what follows a switched edge; a sine has none."""
+    phase = np.arange(bins) / bins
+    light = 1 + 0.5 * np.sin(2 * np.pi * phase) + 0.5 * second * np.sin(4 * np.pi * phase + 1)
+    for seed in range(10):
+        assert decay_tail(light + np.random.default_rng(seed).normal(0, 0.5 * noise, bins), 0.5 * noise) is None
