@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import math
+import os
 from collections.abc import Iterator, Mapping, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from fractions import Fraction
 from pathlib import Path
@@ -186,6 +188,20 @@ def _frame_of(light: npt.NDArray[np.float32], shot: Shot) -> Any:
     return frame
 
 
+@contextmanager
+def _scheduled_as_before() -> Iterator[None]:
+    """Give the process back its scheduling: an encoder for AV1 makes it a real-time one, which starves all others."""
+    if not hasattr(os, "sched_getscheduler"):
+        yield
+        return
+    policy, parameters = os.sched_getscheduler(0), os.sched_getparam(0)
+    try:
+        yield
+    finally:
+        if os.sched_getscheduler(0) != policy:
+            os.sched_setscheduler(0, policy, parameters)
+
+
 def write_clip(path: str | Path, shot: Shot, codec: str = "libx264") -> None:
     """
     Film a shot into a video file; the suffix names the container.
@@ -210,7 +226,7 @@ def write_clip(path: str | Path, shot: Shot, codec: str = "libx264") -> None:
     if "420" in shot.pixel_format and (height % 2 or width % 2):
         raise InputError(f"a picture of {width} x {height} cannot be coded as {shot.pixel_format}: both must be even")
     stamps = np.rint((frame_times(shot) - frame_times(shot)[0]) * _TICKS).astype(int)
-    with whole_file(path) as temporary, av.open(str(temporary), "w") as container:
+    with _scheduled_as_before(), whole_file(path) as temporary, av.open(str(temporary), "w") as container:
         stream: Any = container.add_stream(codec, rate=Fraction(shot.frame_rate).limit_denominator(100_000))
         stream.width, stream.height, stream.pix_fmt = width, height, shot.pixel_format
         stream.codec_context.time_base = Fraction(1, _TICKS)
