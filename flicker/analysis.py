@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from flicker import __version__, readers
+from flicker.along import Along, measure_along
 from flicker.conditioning import condition
 from flicker.conditioning.detector import undo_detector
 from flicker.conditioning.frames import ALIASING, aliasing, exposure_undone
@@ -54,7 +55,9 @@ def read(path: str | Path, **options: Any) -> Capture:
     return replace(capture, traces=tuple(undo_detector(trace, bandwidth) for trace in capture.traces))
 
 
-def measure(*captures: Capture, clock_ppm: float = 0.0, dark_uncertainty: float = 0.0) -> Report:
+def measure(
+    *captures: Capture, clock_ppm: float = 0.0, dark_uncertainty: float = 0.0, window: float | None = None
+) -> Report:
     """
     Measure every channel of one or several captures.
 
@@ -66,26 +69,36 @@ def measure(*captures: Capture, clock_ppm: float = 0.0, dark_uncertainty: float 
         Standard uncertainty of the sample clock, which no capture can show. [1e-6]
     dark_uncertainty : float
         Standard uncertainty of the dark level, in the unit of the capture.
+    window : float, optional
+        Take every measure along the capture too, in windows of this length. [s]
 
     Returns
     -------
     Report
         One entry a capture, in order.
+
+    Raises
+    ------
+    InputError
+        If no window of that length fits, or it holds too few samples.
     """
     return Report(
         tuple(
             CaptureReport(
                 str(capture.path) if capture.path else None,
                 capture,
-                tuple(_measure_trace(trace, clock_ppm, dark_uncertainty) for trace in capture.traces),
+                tuple(_measure_trace(trace, clock_ppm, dark_uncertainty, window) for trace in capture.traces),
             )
             for capture in captures
         )
     )
 
 
-def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float) -> ChannelReport:
-    observation = Observation(trace, clock=clock_ppm * 1e-6, dark_uncertainty=dark_uncertainty)
+def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float, window: float | None) -> ChannelReport:
+    def observed(part: Trace) -> Observation:
+        return Observation(part, clock=clock_ppm * 1e-6, dark_uncertainty=dark_uncertainty)
+
+    observation = observed(trace)
     measures = evaluate(observation)
     depth_known = measures["percent_flicker"].value is not None
     components = observation.components if depth_known else ()
@@ -94,11 +107,7 @@ def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float) -> C
         reason = measures["percent_flicker"].reason
         families = tuple(replace(family, percent_flicker=Measure.missing("%", reason)) for family in families)
     seen = measures["fundamental_frequency"].value
-    if seen is not None and trace.exposure and depth_known:
-        fit = observation.fit
-        relative = (fit.amplitudes / observation.level, fit.amplitude_error / observation.level)
-        undone = exposure_undone(*relative, seen, trace.exposure)
-        measures |= {name: measure for name, measure in undone.items() if name != "svm"}
+    measures = _with_exposure_undone(observation, measures)
     notes = trace.notes
     if seen is not None and any(note.code == ALIASING for note in notes):
         doubt = aliasing(seen, trace.sample_rate)
@@ -106,7 +115,23 @@ def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float) -> C
         components = ()  # no line of them need be a line of the light
         families = tuple(replace(one, percent_flicker=Measure.missing("%", doubt.message)) for one in families)
     region = risk_region(components, families) if depth_known else None
-    return ChannelReport(observation, measures, notes, components, families, region)
+    along = measure_along(trace, window, lambda part: _all_measures(observed(part))) if window else None
+    return ChannelReport(observation, measures, notes, components, families, region, along=along)
+
+
+def _all_measures(observation: Observation) -> dict[str, Measure]:
+    return _with_exposure_undone(observation, evaluate(observation))
+
+
+def _with_exposure_undone(observation: Observation, measures: dict[str, Measure]) -> dict[str, Measure]:
+    """Give back to the depths what the exposure of the samples took."""
+    seen, exposure = measures["fundamental_frequency"].value, observation.trace.exposure
+    if seen is None or not exposure or measures["percent_flicker"].value is None:
+        return measures
+    fit = observation.fit
+    relative = (fit.amplitudes / observation.level, fit.amplitude_error / observation.level)
+    undone = exposure_undone(*relative, seen, exposure)
+    return measures | {name: measure for name, measure in undone.items() if name != "svm"}
 
 
 def light_of(path: str | Path, *, filmed: Mapping[str, Any] | None = None, **options: Any) -> tuple[Light, str]:
@@ -211,6 +236,7 @@ class ChannelReport:
     families: tuple[Family, ...]
     risk_region: RiskRegion | None
     verdicts: tuple[Verdict, ...] = ()
+    along: Along | None = None
 
     @property
     def trace(self) -> Trace:
@@ -240,6 +266,7 @@ class ChannelReport:
             "risk_region": self.risk_region.to_dict() if self.risk_region else None,
             "verdicts": [verdict.to_dict() for verdict in self.verdicts],
             "history": list(trace.history),
+            **({"along": self.along.to_dict()} if self.along else {}),
         }
 
 

@@ -39,6 +39,7 @@ class Measure:
     high: float | None = None
     method: str = ""
     reason: str = ""
+    series: tuple[tuple[float, float], ...] = ()  # start [s] and value of each window that the measure is taken in
 
     def __post_init__(self) -> None:
         for number in (self.value, self.low, self.high):
@@ -56,7 +57,10 @@ class Measure:
         """Give the JSON form of `docs/json.md`."""
         if self.value is None:
             return {"value": None, "unit": self.unit, "reason": self.reason}
-        return {"value": self.value, "unit": self.unit, "low": self.low, "high": self.high, "method": self.method}
+        data = {"value": self.value, "unit": self.unit, "low": self.low, "high": self.high, "method": self.method}
+        if self.series:
+            data["series"] = [{"start_s": start, "value": value} for start, value in self.series]
+        return data
 
 
 @dataclass(frozen=True, slots=True)

@@ -20,7 +20,7 @@ FLOORS = (
     ("sweep",),
     ("tunable", "validation"),
     ("analysis",),
-    ("filmed",),
+    ("filmed", "along"),
     ("readers", "camera", "limits", "metrics", "conditioning"),
     ("signal",),
     ("waveforms",),

@@ -13,6 +13,7 @@ from flicker.cli.options import (
     page_option,
     reading_options,
     uncertainty_options,
+    window_option,
 )
 from flicker.cli.output import (
     colour_wanted,
@@ -32,6 +33,7 @@ from flicker.errors import ExitStatus, UnreadableFileError
 @click.argument("captures", nargs=-1, metavar="CAPTURE...")
 @reading_options
 @uncertainty_options
+@window_option
 @many_options
 @output_options
 @page_option
@@ -42,6 +44,7 @@ def command(
     captures: tuple[str, ...],
     clock_ppm: float | None,
     dark_uncertainty: float | None,
+    window: float | None,
     manifest: str | None,
     workers: int,
     json_target: str | None,
@@ -87,7 +90,7 @@ def command(
 
         names = picture_names(paths)
     width, colour = terminal_width(), colour_wanted()
-    measuring = given(clock_ppm=clock_ppm, dark_uncertainty=dark_uncertainty)
+    measuring = given(clock_ppm=clock_ppm, dark_uncertainty=dark_uncertainty, window=window)
     task = Task(given(**reading), measuring, width, colour, verbose, folder, camera_file, html_target is not None)
     results = []
     found = side_by_side(partial(measure_capture, task=task), list(zip(steps, names, strict=True)), workers)

@@ -224,6 +224,10 @@ uncertainty_options = several(
     ),
 )
 
+window_option = click.option(
+    "--window", type=TIME, help="Take every measure along the capture too, in windows of this length."
+)
+
 many_options = several(
     click.option("--manifest", metavar="FILE.csv", help="Captures with their conditions: capture, unit, level, ..."),
     click.option("--workers", type=click.IntRange(min=1), default=1, metavar="N", help="Captures side by side."),

@@ -57,7 +57,7 @@ def pst_lm(trace: Trace, observation: Observation) -> Measure:
     end of the interval (two lights together never read more than the sum of what each reads). Light that was sampled
     without a filter against aliases may show a beat that is not there.
     """
-    light = _one_run(trace)
+    light, begin = _one_run(trace)
     felt, rate, mean, noise = _sensation(light, trace.sample_rate, observation.level, float(trace.dark_level or 0.0))
     windows = _windows(felt.size, rate)
     series = [severity.severity_of(felt[first:last]) for first, last in windows]
@@ -68,37 +68,12 @@ def pst_lm(trace: Trace, observation: Observation) -> Measure:
     method = f"IEC TR 61547-1, {(last - first) / rate:.0f} s at {rate:.0f} Hz; noise alone would read {noise:.2g}"
     if len(series) > 1:
         method += f"; largest of {len(series)} windows: {', '.join(f'{one:.3g}' for one in series)}"
-    return Measure(value, "1", low, value + half, method)
+    along = tuple((begin + start / rate, one) for (start, _), one in zip(windows, series, strict=True))
+    return Measure(value, "1", low, value + half, method, series=along if len(along) > 1 else ())
 
 
-def severity_series(trace: Trace, observation: Observation) -> tuple[tuple[float, float], ...]:
-    """
-    Give Pst LM along a capture.
-
-    Parameters
-    ----------
-    trace, observation
-        As for `pst_lm`.
-
-    Returns
-    -------
-    tuple of (float, float)
-        Start of each window of 180 s [s], and its Pst LM [1]; the last windows overlap where the capture is no
-        multiple of 180 s.
-
-    Raises
-    ------
-    NotMeasurable
-        As for `pst_lm`.
-    """
-    light = _one_run(trace)
-    felt, rate, *_ = _sensation(light, trace.sample_rate, observation.level, float(trace.dark_level or 0.0))
-    windows = _windows(felt.size, rate)
-    return tuple((trace.start + first / rate, severity.severity_of(felt[first:last])) for first, last in windows)
-
-
-def _one_run(trace: Trace) -> FloatArray:
-    """Give the longest stretch without a gap, if it can carry the measure."""
+def _one_run(trace: Trace) -> tuple[FloatArray, float]:
+    """Give the longest stretch without a gap and its start [s], if it can carry the measure."""
     if trace.sample_rate < _SLOWEST:
         raise NotMeasurable(
             f"light up to 80 Hz counts and nothing may fold back into it, and the rate is {trace.sample_rate:.6g} Hz: "
@@ -110,7 +85,8 @@ def _one_run(trace: Trace) -> FloatArray:
     if seconds < _ALMOST * _WINDOW:
         without = " without a gap" if len(trace.segments) > 1 else ""
         raise NotMeasurable(f"at least 180 s{without} are needed, and the capture has {seconds:.3g} s: record longer")
-    return trace.light[first:last]
+    begin = next(segment.start for segment in trace.segments if segment.first == first)
+    return trace.light[first:last], begin
 
 
 def _sensation(

@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from flicker.errors import NotMeasurable
+from flicker.plots.along import draw_along, has_course
 from flicker.plots.plane import draw_plane
 from flicker.plots.spectrum import draw_spectrum
 from flicker.plots.style import save_figure
@@ -22,6 +23,7 @@ PICTURES: dict[str, tuple[str, Callable[[ChannelReport, str], Figure]]] = {
     "waveform": ("light over time, and its mean cycle", draw_waveform),
     "spectrum": ("spectrum relative to the mean", draw_spectrum),
     "plane": ("modulation over frequency, regions of IEEE 1789-2015", draw_plane),
+    "along": ("measures along the capture", draw_along),
 }
 
 
@@ -60,6 +62,8 @@ def write_pictures(capture: CaptureReport, folder: Path, name: str) -> Pictures:
     for channel in capture.channels:
         title = name if len(capture.channels) == 1 else f"{name}-{_plain(channel.trace.name)}"
         for kind, (about, draw) in PICTURES.items():
+            if kind == "along" and not has_course(channel):
+                continue
             try:
                 figure = draw(channel, f"{title}: {about}")
             except NotMeasurable as reason:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING
 
+from flicker.report.along import along_words, severity_words
 from flicker.report.answer import caution, depth, next_step, risk, short_reason, what
 from flicker.report.figures import measure_name, measured, quantity
 from flicker.report.overview import OverviewEntry, channel_title, overview, overview_entries
@@ -79,6 +80,7 @@ def _channel_block(
     yield ""
     yield from _measure_table(channel, width, paint, verbose)
     yield from _missing(channel, width)
+    yield from _along(channel, width)
     yield from _notes(channel.notes, width)
     if verbose:
         yield from _details(channel, width, paint)
@@ -135,6 +137,19 @@ def _missing(channel: ChannelReport, width: int) -> Iterable[str]:
         yield f"{_INDENT}not measured"
     for reason, names in reasons.items():
         yield from wrap(f"{', '.join(names)}: {reason}", width, _INDENT * 2, hang=2)
+
+
+def _along(channel: ChannelReport, width: int) -> Iterable[str]:
+    if channel.along:
+        first, *rest = along_words(channel.along)
+        yield ""
+        yield from wrap(first, width, _INDENT, hang=2)
+        for sentence in rest:
+            yield from wrap(sentence, width, _INDENT * 2, hang=2)
+    severity = severity_words(channel.measures["pst_lm"])
+    if severity:
+        yield ""
+        yield from wrap(severity, width, _INDENT, hang=2)
 
 
 def _notes(notes: Iterable[Note], width: int) -> Iterable[str]:

@@ -7,7 +7,7 @@ from hypothesis import strategies as st
 
 from flicker.errors import NotMeasurable
 from flicker.metrics import Observation
-from flicker.metrics.severity import pst_lm, severity_series
+from flicker.metrics.severity import pst_lm
 from flicker.signal import severity
 from flicker.trace import Segment, Trace
 
@@ -145,8 +145,9 @@ def test_noise_lowers_the_lower_end_only():
 def test_the_largest_of_several_windows_counts_and_all_are_told():
     quiet, loud = tone(8.8, 0.1), tone(8.8, 0.4175)
     trace = Trace(np.concatenate([quiet, loud, quiet]), RATE, dark_level=0.0)
-    series = severity_series(trace, Observation(trace))
     got = pst_lm(trace, Observation(trace))
+    series = got.series
+    assert got.to_dict()["series"][1] == {"start_s": series[1][0], "value": series[1][1]}
     assert len(series) == 3
     assert got.value == pytest.approx(max(value for _, value in series))
     assert "largest of 3 windows" in got.method
