@@ -37,7 +37,11 @@ from flicker.errors import ExitStatus, UnreadableFileError
 @many_options
 @output_options
 @page_option
-@click.option("--figures", metavar="DIR", help="Write the waveform, the spectrum and the risk plane as pictures.")
+@click.option(
+    "--figures",
+    metavar="DIR",
+    help="Write the waveform, the spectrum, the risk plane and, with --window, the course of the measures as pictures.",
+)
 @click.option("--camera", "camera_file", metavar="FILE.toml", help="With --figures: draw what this camera will record.")
 @click.option("--verbose", is_flag=True, help="Add how each figure was obtained, the lines, the history.")
 def command(

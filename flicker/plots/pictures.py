@@ -23,6 +23,8 @@ PICTURES: dict[str, tuple[str, Callable[[ChannelReport, str], Figure]]] = {
     "waveform": ("light over time, and its mean cycle", draw_waveform),
     "spectrum": ("spectrum relative to the mean", draw_spectrum),
     "plane": ("modulation over frequency, regions of IEEE 1789-2015", draw_plane),
+}
+_COURSE: dict[str, tuple[str, Callable[[ChannelReport, str], Figure]]] = {
     "along": ("measures along the capture", draw_along),
 }
 
@@ -61,9 +63,7 @@ def write_pictures(capture: CaptureReport, folder: Path, name: str) -> Pictures:
     missing: dict[str, str] = {}
     for channel in capture.channels:
         title = name if len(capture.channels) == 1 else f"{name}-{_plain(channel.trace.name)}"
-        for kind, (about, draw) in PICTURES.items():
-            if kind == "along" and not has_course(channel):
-                continue
+        for kind, (about, draw) in (PICTURES | (_COURSE if has_course(channel) else {})).items():
             try:
                 figure = draw(channel, f"{title}: {about}")
             except NotMeasurable as reason:
