@@ -10,7 +10,7 @@ import numpy as np
 
 from flicker.camera.stripes_apart import tell_apart
 from flicker.camera.stripes_doubts import clocked, doubts, moving
-from flicker.camera.stripes_found import find_bands, frames_of, rows_of, without_held
+from flicker.camera.stripes_found import find_bands, frames_of, need_renewed, rows_of, without_held
 from flicker.errors import NotMeasurable
 from flicker.footage import Footage
 from flicker.light import ChannelLight, ComplexArray, Light
@@ -97,6 +97,7 @@ def read_stripes(
     """
     renewed, held = without_held(footage)
     bands = find_bands(renewed, line_time)
+    need_renewed(footage, bands)
     apart = tell_apart(renewed, bands, line_time)
     if apart is None:
         found, _ = _read(footage, renewed, bands, line_time, exposure, clock)

@@ -18,6 +18,8 @@ _FAINTEST = 5e-3  # share of the variation that a tone must explain
 _LOWEST_BAND = 2e-3  # amplitude over the mean below which compression makes bands of its own
 _FRAMES_USED = 64
 _HELD = 0.6  # of the height of the bands in most frames, below which a frame holds those of its neighbours
+_UNEVEN = 0.45  # height in the frames with the faintest bands over that in most, below which bands may be ghosts
+_FAINT = 0.015  # contrast of bands that compression may renew in some frames only
 _FEWEST_BANDS = 3  # from which the bands of each frame can be weighed by themselves
 _FEWEST_FRAMES = 10
 _RATES = (24.0, 25.0, 30.0, 48.0, 50.0, 60.0)
@@ -56,14 +58,11 @@ def without_held(footage: Footage) -> tuple[Footage, tuple[Note, ...]]:
     A frame that is coded from its neighbours may keep their faint bands in place of its own; bands that alternate
     from frame to frame then seem to have another frequency.
     """
-    lines = footage.lines_of("all")
-    level = lines.mean(axis=0)
-    lit = level > 0.05 * np.median(level)
-    spectrum = np.abs(np.fft.rfft((lines[:, lit] / level[lit] - 1) * np.hanning(int(lit.sum())), axis=1)) ** 2
-    peak = int(spectrum.sum(axis=0)[_FEWEST_BANDS:].argmax()) + _FEWEST_BANDS if spectrum.shape[1] > 8 else 0
-    height = np.sqrt(spectrum[:, max(peak - 1, 0) : peak + 2].sum(axis=1))
+    height = _heights(footage)
+    if footage.lossless or height is None:
+        return footage, ()
     strong = height > _HELD * np.quantile(height, 0.9)
-    if footage.lossless or peak <= _FEWEST_BANDS or not 0.25 < strong.mean() < 0.9 or strong.sum() < _FEWEST_FRAMES:
+    if not 0.25 < strong.mean() < 0.9 or strong.sum() < _FEWEST_FRAMES:
         return footage, ()
     message = (
         f"{int((~strong).sum())} of {strong.size} frames show their bands much fainter than the others: compression "
@@ -76,6 +75,32 @@ def without_held(footage: Footage) -> tuple[Footage, tuple[Note, ...]]:
         alone=None if footage.alone is None else footage.alone[strong],
     )
     return kept, (Note("bands-held", "warning", message),)
+
+
+def need_renewed(footage: Footage, bands: StripeFit) -> None:
+    """Refuse faint bands of which compression renewed so few that another frequency may be meant."""
+    height = None if footage.lossless or bands.contrast > _FAINT else _heights(footage)
+    if height is None or np.quantile(height, 0.1) > _UNEVEN * np.quantile(height, 0.9):
+        return
+    raise NotMeasurable(
+        f"bands of {100 * bands.contrast:.2g} % show, but compression renewed them in some frames only, so that their "
+        f"frequency may be {bands.frequency:.5g} Hz or any that differs by a share of the frame rate: film with a "
+        "shorter exposure, more light or less compression"
+    )
+
+
+def _heights(footage: Footage) -> FloatArray | None:
+    """Height of the bands in each frame, shape (t,); None where a frame holds too few bands to tell."""
+    lines = footage.lines_of("all")
+    level = lines.mean(axis=0)
+    lit = level > 0.05 * np.median(level)
+    spectrum = np.abs(np.fft.rfft((lines[:, lit] / level[lit] - 1) * np.hanning(int(lit.sum())), axis=1)) ** 2
+    if spectrum.shape[1] <= 8:
+        return None
+    peak = int(spectrum.sum(axis=0)[_FEWEST_BANDS:].argmax()) + _FEWEST_BANDS
+    if peak == _FEWEST_BANDS:
+        return None
+    return np.asarray(np.sqrt(spectrum[:, peak - 1 : peak + 2].sum(axis=1)))
 
 
 def frames_of(footage: Footage, *, first: bool = False) -> npt.NDArray[np.intp]:
