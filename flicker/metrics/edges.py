@@ -16,6 +16,7 @@ from flicker.trace import FloatArray
 _MOST_BETWEEN = 0.45  # of the cycle that light with edges may spend between its ends; a sine spends 0.57
 _VAGUE = 0.25  # half of the interval of a decay time, over the time
 _FEWEST_BINS = 3.0  # that an edge must fill
+_READING = 0.1  # bins to which a crossing is read between its neighbours
 _NOISIEST = 0.033  # standard error of a bin, over the swing
 
 
@@ -84,7 +85,9 @@ def decay_time(cycle: Cycle) -> Measure:
     """
     tail = decay_tail(cycle.levels, float(np.quantile(cycle.standard_error, 0.5)))
     if tail is None:
-        raise NotMeasurable("no edge with an exponential tail behind it in this cycle: a decay time needs light that is switched off")
+        raise NotMeasurable(
+            "no edge with an exponential tail behind it in this cycle: a decay time needs light that is switched off"
+        )
     value, half = cycle.interval(tail.time_of)
     if not half < _VAGUE * value:
         raise NotMeasurable("the tail is too short or too noisy for a decay time: record longer, or at a longer pause")
@@ -114,6 +117,6 @@ def _edge(cycle: Cycle, sign: int) -> Measure:
             f"the edges are faster than the samples resolve, below {_FEWEST_BINS * scale:.2g} s: record at a higher "
             "rate, or at one that is no multiple of the frequency"
         )
-    half = math.hypot(half, 0.5)
+    half = math.hypot(half, _READING)
     method = f"10 to 90 % on the mean cycle, {cycle.size} bins"
     return Measure(value * scale, "s", max(value - half, 0.0) * scale, (value + half) * scale, method)
