@@ -10,7 +10,7 @@ import numpy as np
 
 from flicker.camera.stripes_apart import tell_apart
 from flicker.camera.stripes_doubts import clocked, doubts, moving
-from flicker.camera.stripes_found import find_bands, frames_of, need_renewed, rows_of, without_held
+from flicker.camera.stripes_found import find_bands, frames_of, need_fit, need_renewed, rows_of, without_held
 from flicker.errors import NotMeasurable
 from flicker.footage import Footage
 from flicker.light import ChannelLight, ComplexArray, Light
@@ -123,6 +123,7 @@ def _read(
 ) -> tuple[Stripes, dict[str, Samples]]:
     """Read one light whose bands were found in the part of the footage that may be used; give its draws as well."""
     waves = _waves(renewed, bands)
+    need_fit(waves)
     drive, others_seen = _drive(renewed, waves)
     frequency, fitted, alternatives, notes = clocked(footage, bands, line_time, clock)
     told = exposure is not None

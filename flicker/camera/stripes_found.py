@@ -20,6 +20,9 @@ _FRAMES_USED = 64
 _HELD = 0.6  # of the height of the bands in most frames, below which a frame holds those of its neighbours
 _UNEVEN = 0.45  # height in the frames with the faintest bands over that in most, below which bands may be ghosts
 _FAINT = 0.015  # contrast of bands that compression may renew in some frames only
+_MISFIT = 0.1  # of the level, left by a fit: more than any noise
+_NEARLY_STILL = 0.75  # how well the phases of a harmonic agree over the frames where it is hard to tell from the scene
+_STRONG = 5  # harmonics that a deep light cannot do without
 _FEWEST_BANDS = 3  # from which the bands of each frame can be weighed by themselves
 _FEWEST_FRAMES = 10
 _RATES = (24.0, 25.0, 30.0, 48.0, 50.0, 60.0)
@@ -87,6 +90,17 @@ def need_renewed(footage: Footage, bands: StripeFit) -> None:
         f"frequency may be {bands.frequency:.5g} Hz or any that differs by a share of the frame rate: film with a "
         "shorter exposure, more light or less compression"
     )
+
+
+def need_fit(waves: dict[str, StripeFit]) -> None:
+    """Refuse a deep light of which a strong harmonic stands still: without it the others explain the lines badly."""
+    worst = max(waves.values(), key=lambda wave: wave.noise)
+    still = np.flatnonzero(worst.standing[:_STRONG] > _NEARLY_STILL) + 1
+    if worst.noise > _MISFIT and still.size:
+        raise NotMeasurable(
+            f"bands of about {worst.frequency:.5g} Hz move, but harmonic {', '.join(map(str, still))} of it stands "
+            "all but still in the picture, and without it light and scene cannot be told apart: film at another frame rate"
+        )
 
 
 def _heights(footage: Footage) -> FloatArray | None:

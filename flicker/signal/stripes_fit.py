@@ -23,6 +23,7 @@ _FEWEST_BANDS = 1.2  # in a frame that is to show all phases of the light by its
 _CLEARLY = 4.0  # mean square over its variance from which a change is believed
 _BETWEEN = 0.02  # of the strongest harmonic: lines between the harmonics that speak for a lower frequency
 _SHARED_NOISE = 1.5  # by how much noise that neighbouring lines share makes errors larger
+_WORSE = 1.02  # growth of what is left that undoes a step
 _LIT = 0.03  # of the median level: darker lines are left out
 
 
@@ -136,6 +137,9 @@ class _Work:
     scene: FloatArray
     gain: FloatArray
     free: FloatArray  # share of each harmonic that the scene cannot take up
+    damping: float = 1.0  # of the steps: where the scene holds much of the bands, whole steps run away
+    least: float = np.inf  # smallest mean square that was left
+    kept: ComplexArray | None = None  # the amplitudes that left it
 
     @classmethod
     def begin(cls, rows: Rows, frequency: float, turns: float, most: int = _MOST_HARMONICS) -> _Work:
@@ -158,19 +162,27 @@ class _Work:
 
     def update(self, *, clock: bool) -> None:
         """One round: the level of each line, the wave, and the frequency with the cycles a line."""
-        bins, light = self.model()
-        light *= self.gain[:, None]
-        self.scene = (self.rows.values * light).sum(axis=0) / (light**2).sum(axis=0)
-        light /= self.gain[:, None]
-        left = self.relative() - light
-        weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
+        bins, left, weights = self.weighed()
+        lost = float((weights * left**2).mean())
+        if self.kept is not None and not lost <= self.least * _WORSE:
+            self.amplitudes, self.damping = self.kept, 0.3 * self.damping
+            bins, left, weights = self.weighed()
+        else:
+            self.least, self.kept = lost, self.amplitudes
         right = _right(bins.ravel(), (weights * left).ravel(), self.harmonics)
         step = _amplitudes(bins.ravel(), weights.ravel(), self.harmonics, right)
-        self.amplitudes = self.amplitudes + step / self.free
+        self.amplitudes = self.amplitudes + self.damping * step / self.free
         if clock:
             frequency, turns, *_ = self.clock(bins, left, weights)
             self.frequency += frequency
             self.turns += turns
+
+    def weighed(self) -> tuple[Any, FloatArray, FloatArray]:
+        """Bins of phase, what the best scene for these amplitudes leaves, and weights, each of shape (t, r)."""
+        bins, light = self.model()
+        seen = light * self.gain[:, None]
+        self.scene = (self.rows.values * seen).sum(axis=0) / (seen**2).sum(axis=0)
+        return bins, self.relative() - light, np.broadcast_to(self.scene**2 / np.mean(self.scene**2), light.shape)
 
     def clock(self, bins: Any, left: FloatArray, weights: FloatArray) -> tuple[float, float, float, float]:
         """Corrections of frequency and of cycles a line by Gauss-Newton, each with its standard error."""
@@ -201,9 +213,10 @@ class _Work:
 
     def finish(self) -> StripeFit:
         """Standard errors from groups of frames, and what is left."""
-        bins, light = self.model()
-        left = self.relative() - light
-        weights = np.broadcast_to(self.scene**2 / np.mean(self.scene**2), left.shape)
+        bins, left, weights = self.weighed()
+        if self.kept is not None and not float((weights * left**2).mean()) <= self.least * _WORSE:
+            self.amplitudes = self.kept
+            bins, left, weights = self.weighed()
         _, _, frequency_error, turns_error = self.clock(bins, left, weights)
         groups = np.array_split(np.arange(len(left)), max(2, min(_GROUPS, len(left) // 3)))
         pull = weights * left

@@ -117,3 +117,11 @@ def test_a_depth_that_the_clip_cannot_carry_is_not_given(tmp_path):
             assert "film" in depth.reason
         else:
             assert depth.low <= 100 <= depth.high
+
+
+def test_a_deep_light_with_a_strong_harmonic_that_stands_still_is_refused(tmp_path):
+    """At 2 f = 37 x 25 Hz + 0.1 Hz every line meets two phases of the light only."""
+    light = Pulse(462.55, 0.33)
+    write_clip(tmp_path / "still.mkv", Shot(LINE_TIME, 25.0, EXPOSURE, 50, [Lit(SCENE, [light])], noise=0.01), "ffv1")
+    with pytest.raises(NotMeasurable, match=r"stands all but still.*another frame rate"):
+        read_stripes(read_footage(tmp_path / "still.mkv"), line_time=LINE_TIME, exposure=EXPOSURE)
