@@ -99,7 +99,8 @@ def need_fit(waves: dict[str, StripeFit]) -> None:
     if worst.noise > _MISFIT and still.size:
         raise NotMeasurable(
             f"bands of about {worst.frequency:.5g} Hz move, but harmonic {', '.join(map(str, still))} of it stands "
-            "all but still in the picture, and without it light and scene cannot be told apart: film at another frame rate"
+            "all but still in the picture, and without it light and scene cannot be told apart: film at another frame "
+            "rate"
         )
 
 
