@@ -47,6 +47,9 @@ def tell_apart(footage: Footage, bands: StripeFit, line_time: float | None) -> t
     deviation = Deviation.of(rest, rows.times)
     strongest = float(np.abs(bands.amplitudes).max())
     least = max(_LEAST if footage.lossless else _LEAST_LOSSY, _SHARE * strongest)
+    seen = 2 / deviation.lines * np.sqrt((np.abs(deviation.spectrum) ** 2).mean(axis=0).max())
+    if seen < least:  # in no frame by itself is there enough for a second light
+        return None
     tones = [
         tone for tone in search_frequency(deviation, line_time) if not _of_the_first(tone.frequency, bands, footage)
     ]
