@@ -65,4 +65,4 @@ def aliasing(seen: float, frame_rate: float) -> Note:
         "another: read the light with flicker stripes, or settle its frequency by a second clip at another rate with "
         "--same-light"
     )
-    return Note(ALIASING, "warning", message)
+    return Note("aliasing-possible", "warning", message)
