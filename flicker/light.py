@@ -119,6 +119,7 @@ class ChannelLight:
     fundamentals: tuple[float, ...] = ()  # of the families that the lines belong to, deepest first [Hz]
     pulse: Pulse | None = None
     mean: float = 1.0  # level above dark, any unit
+    wander: float = 0.0  # how far the deepest family's frequency goes from its mean to either side, a share of it
 
     def __post_init__(self) -> None:
         order = np.argsort(np.asarray(self.frequencies, dtype=float), kind="stable")
@@ -171,6 +172,11 @@ class Light:
     def frequency(self) -> float | None:
         """Fundamental of the first channel that has one. [Hz]"""
         return next((channel.frequency for channel in self.channels if channel.frequency), None)
+
+    @property
+    def wander(self) -> float:
+        """How far the frequency of the worst channel wanders to either side, as a share of it."""
+        return max(channel.wander for channel in self.channels)
 
 
 def pwm_light(

@@ -82,7 +82,7 @@ def predict_bands(
     tolerance: float = 0.0,
     *,
     light_scan: float = 0.0,
-    wander: float = 0.0,
+    wander: float | None = None,
     viewing_distance: float | None = None,
     gain: float = 1.0,
 ) -> Prediction:
@@ -103,8 +103,9 @@ def predict_bands(
     light_scan : float
         Time by which the light at the end of the picture lags that at its start, counted the way the lines are read,
         as behind a scanning backlight. [s]
-    wander : float
-        How far the frequency wanders to either side while the camera looks (spread spectrum, dither), as a share of it.
+    wander : float, optional
+        How far the frequency wanders to either side while the camera looks (spread spectrum, dither), as a share of it;
+        otherwise as the light was measured.
     viewing_distance : float or None
         In picture heights; None judges from the distance that shows the bands best.
     gain : float
@@ -137,6 +138,7 @@ def predict_bands(
     """
     seen = _windows(camera, exposure)
     check_share(tolerance, "tolerance")
+    wander = light.wander if wander is None else wander
     check_share(wander, "wander")
     if not (math.isfinite(gain) and gain > 0):
         raise InputError(f"the gain of the grading must be above 0, not {gain}")

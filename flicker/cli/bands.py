@@ -32,7 +32,7 @@ _what_to_predict = several(
         help="Exposure, repeatable; 1/50+1/400 is a sensor that takes both, one after the other, and adds them up.",
     ),
     click.option("--tolerance", type=DEVIATION, help="How far the light's frequency may be off."),
-    click.option("--wander", type=DEVIATION, help="How far it wanders to either side while the camera looks (dither)."),
+    click.option("--wander", type=DEVIATION, help="How far it wanders to either side (dither); else as measured."),
     click.option("--light-scan", type=TIME, help="By how much a scanning backlight lags at the end of the picture."),
     click.option("--light-scan-against", is_flag=True, help="The backlight scans against the way the lines are read."),
     click.option("--contrast-limit", type=PERCENT, help="Up to which bands a setting is called clean; 1 if left out."),
@@ -97,7 +97,7 @@ def command(
         tolerance=tolerance,
         limit=contrast_limit,
         light_scan=-(light_scan or 0.0) if light_scan_against else light_scan or 0.0,
-        wander=wander or 0.0,
+        wander=wander,
         viewing_distance=viewing_distance,
         gain=1.0 if grade_gain is None else grade_gain,
     )

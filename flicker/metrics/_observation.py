@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from functools import cached_property
 
 import numpy as np
@@ -14,6 +15,7 @@ from flicker.signal.extremes import Extremes, extremes
 from flicker.signal.families import Search, find_families
 from flicker.signal.harmonics import HarmonicFit, Series
 from flicker.signal.intervals import power_threshold
+from flicker.signal.sidebands import sideband_words
 from flicker.trace import FloatArray, Trace
 
 _MOST_COMPONENTS = 400
@@ -209,9 +211,16 @@ class Observation:
             lines = int(np.count_nonzero(heights > 4 * fit.amplitude_error))
             depth = self._depth_of(ends)
             origin = guess_origin(fit.frequency, _rectangular(cycle.levels))
-            found.append((ends.high - ends.low, Family(self._frequency_of(fit), depth, max(lines, 1), origin)))
-        found.sort(key=lambda pair: -pair[0])
-        return tuple(family for _, family in found)
+            family = Family(self._frequency_of(fit), depth, max(lines, 1), origin)
+            found.append((ends.high - ends.low, fit, family))
+        found.sort(key=lambda row: -row[0])
+        deeper = [(fit.frequency, fit.frequency_error) for _, fit, _ in found]
+        families = []
+        for place, (_, fit, family) in enumerate(found):
+            parents, errors = zip(*deeper[:place], strict=True) if place else ((), ())
+            sideband = sideband_words(fit.frequency, parents, fit.frequency_error, errors)
+            families.append(replace(family, origin=sideband or family.origin))
+        return tuple(families)
 
     def _depth_of(self, ends: Extremes) -> Measure:
         try:
@@ -230,7 +239,13 @@ class Observation:
             np.array([line.amplitude for line in components], dtype=complex),
             fundamentals=fundamentals,
             mean=self.level,
+            wander=self._wander,
         )
+
+    @property
+    def _wander(self) -> float:
+        track = self.fit.track if self.search.families else None
+        return track.deviation / self.fit.frequency if track else 0.0
 
     def spectrum(self) -> tuple[FloatArray, FloatArray]:
         """Frequencies [Hz] and peak amplitudes relative to the mean (in the trace's unit where the mean is lost)."""

@@ -130,7 +130,7 @@ def _measure_table(channel: ChannelReport, width: int, paint: Paint, verbose: bo
 def _missing(channel: ChannelReport, width: int) -> Iterable[str]:
     reasons: dict[str, list[str]] = {}
     for name, measure in channel.measures.items():
-        if measure.value is None:
+        if measure.value is None and not (name == "wander_rate" and _keeps_still(channel)):
             reasons.setdefault(short_reason(measure, channel.notes), []).append(measure_name(name))
     if reasons:
         yield ""
@@ -150,6 +150,11 @@ def _along(channel: ChannelReport, width: int) -> Iterable[str]:
     if severity:
         yield ""
         yield from wrap(severity, width, _INDENT, hang=2)
+
+
+def _keeps_still(channel: ChannelReport) -> bool:
+    wander = channel.measures.get("frequency_wander")
+    return wander is not None and wander.value == 0.0
 
 
 def _notes(notes: Iterable[Note], width: int) -> Iterable[str]:

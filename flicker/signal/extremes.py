@@ -21,6 +21,7 @@ _PLATEAUS = ("right", "left", "about")
 # either side of the place or about it, and two shapes that bend
 _STEPS_BACK = {"right": 2, "left": 2, "about": 2, "parabola": 3, "hinge": 3}
 _DOUBT = 0.5  # standard deviation of the bias of a bent reading, over what a lower degree reads otherwise
+_TRACKED = 3.0  # standard errors by which cycles of a wandering frequency may lie apart
 _QUIETEST = 1e-4  # noise over swing that is assumed at the least, so that wide windows are preferred without noise too
 _FEW_HARMONICS = 3  # with more, a corner may hide behind the noise
 
@@ -77,6 +78,7 @@ def extremes(cycle: Cycle, fit: HarmonicFit) -> Extremes:
     places = [_places(half) for half in halves]
     noise = max(min(cycle.noise, fit.noise), _QUIETEST * float(np.ptp(cycle.levels)))
     blur = 2.0 * fit.frequency_error * cycle.span + 1.0 / cycle.fine_sums.shape[1]
+    blur += _TRACKED * fit.track.error if fit.track else 0.0
     values, scores, white, bent = [], np.zeros((2, cycle.groups)), np.zeros((2, 2)), np.zeros((2, 2))
     for end, sign in enumerate((1.0, -1.0)):
         here, there = (

@@ -166,7 +166,7 @@ def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicF
 
 def _hinted(now: Spectrum, frequencies: list[float]) -> bool:
     """Whether the spectrum holds more than noise would leave at a third of some places."""
-    bins = np.rint(np.array(frequencies) / now.spacing).astype(int)
+    bins = np.clip(np.rint(np.array(frequencies) / now.spacing).astype(int), 1, now.amplitudes.size - 2)
     tops = np.max([now.amplitudes[bins + step] for step in (-1, 0, 1)], axis=0)
     return bool(np.count_nonzero(tops**2 > 3 * now.noise_power(bins)) * 3 >= bins.size)
 

@@ -65,7 +65,7 @@ class Spectrum:
         (float, float) or None
             Frequency (parabola through the logarithms) [Hz] and amplitude; None when nothing rises above the noise.
         """
-        first, last = int(np.ceil(above / self.spacing)), int(np.floor(below / self.spacing)) + 1
+        first, last = int(np.ceil(above / self.spacing)), int(min(below / self.spacing, self.amplitudes.size)) + 1
         first, last = max(first, 1), min(last, self.amplitudes.size - 1)
         if last <= first:
             return None

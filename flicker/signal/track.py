@@ -8,7 +8,10 @@ from functools import cached_property
 
 import numpy as np
 
+from flicker.signal.spectrum import spectrum
 from flicker.trace import FloatArray
+
+_CLEAR = 20.0  # standard errors that the range of the frequency must have, or it is read over a longer step
 
 
 @dataclass(frozen=True, eq=False)
@@ -38,18 +41,31 @@ class Track:
         """Whole number of cycles that makes every entry positive."""
         return float(np.ceil(np.abs(self.cycles).max()))
 
-    @property
-    def deviations(self) -> FloatArray:
-        """How far the frequency is above its mean between neighbouring entries, shape (j - 1,). [Hz]"""
-        return np.asarray(np.diff(self.cycles) / np.diff(self.times))
+    @cached_property
+    def _deviation(self) -> tuple[float, float]:
+        for step in range(1, max(self.times.size // 8, 2)):
+            over = self.times[step:] - self.times[:-step]
+            low, high = np.quantile((self.cycles[step:] - self.cycles[:-step]) / over, [0.005, 0.995])
+            error = float(2.0**0.5 * self.error / np.quantile(over, 0.5))
+            if _CLEAR * error < high - low:
+                break
+        return 0.5 * float(high - low), error
 
     @property
     def deviation(self) -> float:
         """How far the frequency goes from its mean to either side, all but the outermost hundredth. [Hz]"""
-        low, high = np.quantile(self.deviations, [0.005, 0.995])
-        return 0.5 * float(high - low)
+        return self._deviation[0]
 
     @property
     def deviation_error(self) -> float:
         """Standard error of `deviation` from the errors of the entries. [Hz]"""
-        return self.error / float(np.quantile(np.diff(self.times), 0.5))
+        return self._deviation[1]
+
+    def rate(self) -> float | None:
+        """How often the frequency wanders to and fro; None where that has no steady rate. [Hz]"""
+        even = np.linspace(self.times[0], self.times[-1], self.times.size)
+        cycles = self.at(even)
+        found = spectrum(cycles, 1 / (even[1] - even[0])).strongest_line(1.5 / (even[-1] - even[0]), np.inf)
+        if found is None or found[1] ** 2 < float(np.var(cycles)):  # half of the power, or more
+            return None
+        return found[0]

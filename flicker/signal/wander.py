@@ -17,6 +17,7 @@ _STEP = 0.7  # of the distance of samples in phase over a block, by which edges 
 _FEWEST = 12  # blocks
 _UNSURE = 0.06  # cycles of noise in a block, above which blocks are made longer
 _MOVED = 0.004  # cycles: what moves less does not blur the mean cycle
+UNSEEN = 2 * np.pi * 2**0.5 * _MOVED / (4 * _BLOCK)  # wander, over the frequency, that may stay unseen
 _SMOOTH = 1.4  # times that the phase must move further than it jumps from block to block
 _SWELLING = 0.2  # of the phase that moves: a line that swells more has another beside it
 _TABLE = 1 << 13
