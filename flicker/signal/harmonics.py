@@ -53,6 +53,20 @@ class Series:
         for part, begin in self.pieces():
             yield part, np.arange(part.stop - part.start) / self.sample_rate + begin
 
+    def coarser(self, sample_rate: float) -> Series:
+        """Average neighbouring samples, so that about the given rate is left [Hz]."""
+        group = int(self.sample_rate / sample_rate)
+        if group < 2:
+            return self
+        values, segments, first = [], [], 0
+        for begin, end, start in _runs(self.values.size, self.segments):
+            whole = (end - begin) // group
+            if whole:
+                values.append(self.values[begin : begin + whole * group].reshape(whole, group).mean(axis=1))
+                segments.append(Segment(first, start + 0.5 * (group - 1) / self.sample_rate))
+                first += whole
+        return Series.of(np.concatenate(values), self.sample_rate / group, segments) if values else self
+
     def excerpt(self, samples: int) -> Series:
         """At most so many samples in a row, from the middle of the series; segments stay apart."""
         if samples >= self.values.size:
@@ -271,7 +285,7 @@ def refit(series: Series, frequency: float, harmonics: int, track: Track | None 
 def _sharpest(fitting: _Fitting, frequency: float, harmonics: int) -> HarmonicFit:
     """Fit the harmonics at the frequency that all of them tell, or half of them where that is sharper."""
     fit = fitting.fit(frequency, harmonics, _BINS)
-    if harmonics < 2 * _FEW:
+    if harmonics < 2 * _FEW or fitting.series.values.size >= _MANY:
         return fit
     half = fitting.fit(frequency, harmonics // 2, _BINS)  # few samples cannot tell many harmonics from a frequency
     if half.frequency_error > 0.7 * fit.frequency_error:

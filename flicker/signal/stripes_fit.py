@@ -9,7 +9,6 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 import scipy.fft
-import scipy.linalg
 
 from flicker.light import ComplexArray
 from flicker.trace import FloatArray
@@ -120,7 +119,9 @@ def _amplitudes(bins: Any, weights: FloatArray, harmonics: FloatArray, right: Co
     whole = np.zeros((2 * highest + 1, columns.shape[1] + unwanted.size), dtype=complex)
     whole[wanted, : columns.shape[1]] = columns
     whole[unwanted, columns.shape[1] + np.arange(unwanted.size)] = 1.0
-    solved = scipy.linalg.solve_toeplitz(moments, whole)
+    from scipy.linalg import solve_toeplitz
+
+    solved = solve_toeplitz(moments, whole)
     found, held = solved[:, : columns.shape[1]], solved[:, columns.shape[1] :]
     if unwanted.size:
         found = found - held @ np.linalg.solve(held[unwanted], found[unwanted])

@@ -121,7 +121,8 @@ def _solve(moments: FloatArray, right: FloatArray, widths: FloatArray) -> tuple[
     number = np.arange(degree + 1)
     scale = widths[:, None] ** number
     normal = moments[:, number[:, None] + number] / (scale[:, :, None] * scale[:, None, :])
-    inverse = np.linalg.pinv(normal, rcond=1e-12, hermitian=True) / (scale[:, :, None] * scale[:, None, :])
+    ridge = (1e-12 * np.trace(normal, axis1=1, axis2=2) + 1e-9)[:, None, None] * np.eye(degree + 1)
+    inverse = np.linalg.inv(normal + ridge) / (scale[:, :, None] * scale[:, None, :])
     return np.einsum("wij,wj->wi", inverse, right), inverse
 
 

@@ -87,10 +87,10 @@ def _beside(
     found: list[list[tuple[FloatArray, FloatArray, FloatArray]]] = [[] for _ in places]
     for part, times in series.chunks():
         phase = fit.phase(times + series.centre)
+        phase -= np.floor(phase)
         for rows, place in zip(found, places.tolist(), strict=True):
-            offset = (phase - place + 0.5) % 1.0 - 0.5
-            near = np.abs(offset) < reach
-            rows.append((offset[near], times[near], series.values[part][near]))
+            near = np.flatnonzero(np.abs(np.abs(phase - place) - 0.5) > 0.5 - reach)
+            rows.append(((phase[near] - place + 0.5) % 1.0 - 0.5, times[near], series.values[part][near]))
     columns = [[np.concatenate(column) for column in zip(*rows, strict=True)] for rows in found]
     return [(offsets, times, values) for offsets, times, values in columns]
 

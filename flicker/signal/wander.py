@@ -12,6 +12,7 @@ from flicker.signal.track import Track
 from flicker.trace import FloatArray
 
 _BLOCK = 2.0  # cycles in which the phase is taken as steady, at the least
+_PER_CYCLE = 64.0  # samples that are enough to follow a phase
 _SAMPLES = 100  # in a block, at the least
 _STEP = 0.7  # of the distance of samples in phase over a block, by which edges seem to move
 _FEWEST = 12  # blocks
@@ -55,6 +56,7 @@ def follow(series: Series, frequency: float) -> tuple[float, Track] | None:
     Complex demodulation (Bingham, Godfrey and Tukey, IEEE Trans. Audio Electroacoust. 15 (1967) 56) in blocks of whole
     cycles, made longer until the noise in one is small. The noise of the phase is read from its fourth differences.
     """
+    series = series.coarser(_PER_CYCLE * frequency)
     cycles = max(_BLOCK, _SAMPLES * frequency / series.sample_rate)
     while True:
         blocks = _line_by_block(series, frequency, cycles / frequency)
