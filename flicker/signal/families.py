@@ -21,6 +21,7 @@ _MOST_DIVISOR = 8
 _EXCERPT = 1 << 19  # samples that settle the octave
 _ROUNDS = 2  # in which each family is fitted beside the others
 _RULERS = (4, 16, 64)  # harmonics that refine a track, one after the other
+_ALIKE = 1.4  # noise that a fundamental may leave, over what its harmonic alone leaves: gaps may allow fewer lines
 _CLEARLY = 0.8  # of the noise that a steady frequency leaves
 _FEWEST_CYCLES = 1.5
 _FEWEST_CYCLES_BELOW = 3.0  # of a fundamental below the strongest line: fewer could be drift
@@ -159,7 +160,7 @@ def _settle_octave(series: Series, fit: HarmonicFit, now: Spectrum) -> HarmonicF
         if np.count_nonzero(heights > least) * 2 >= len(places):
             whole = fit_harmonics(series, lower.frequency, track=slower)
             filled = [n for n in places if n <= whole.amplitudes.size]
-            if whole.noise < fit.noise and _locked(series, whole, filled):
+            if whole.noise < _ALIKE * fit.noise and _locked(series, whole, filled):
                 return whole
     return fit
 
@@ -177,7 +178,8 @@ def _locked(series: Series, fit: HarmonicFit, places: list[int]) -> bool:
     for number in places:
         middle, reach = number * fit.frequency, 2 * now.resolution
         line = now.strongest_line(middle - reach, middle + reach)
-        if line is not None and line[1] > 0.05 * abs(fit.amplitudes[number - 1]):
+        height = abs(fit.amplitudes[number - 1])
+        if line is not None and line[1] > min(max(0.05 * height, 3 * fit.unresolved), 0.5 * height):
             return False
     return True
 
