@@ -27,6 +27,7 @@ _HOMES = {
     "predict_bands": "flicker.camera",
     "pwm_light": "flicker.light",
     "read": "flicker.analysis",
+    "same_light": "flicker.analysis",
 }
 
 __all__ = [*_HOMES, "__version__"]

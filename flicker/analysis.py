@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from flicker import __version__, readers
+from flicker.aliases import SameLight, Seen, settle
 from flicker.along import Along, measure_along
 from flicker.conditioning import condition
 from flicker.conditioning.detector import undo_detector
@@ -179,6 +180,40 @@ def light_of(path: str | Path, *, filmed: Mapping[str, Any] | None = None, **opt
         f"its stripes, {1e6 * (report.stripes.line_time or 0):.4g} µs a line, "
         f"exposure {1e3 * (report.stripes.exposure or 0):.4g} ms ({told})"
     )
+
+
+def same_light(report: Report, clock_ppm: float | None = None) -> SameLight:
+    """
+    Settle the frequency of one light that several captures show at different sample or frame rates.
+
+    Parameters
+    ----------
+    report : Report
+        Of the captures; the first channel of each counts.
+    clock_ppm : float, optional
+        Standard uncertainty of each sample clock; 100 where it is not stated. [1e-6]
+
+    Returns
+    -------
+    SameLight
+        The one frequency that fits, or those that do.
+
+    Raises
+    ------
+    InputError
+        If fewer than two captures show a frequency, or all have one rate.
+    """
+    seen = [one for capture in report.captures if (one := seen_in(capture)) is not None]
+    return settle(seen, None if clock_ppm is None else 1e-6 * clock_ppm)
+
+
+def seen_in(capture: CaptureReport) -> Seen | None:
+    """Give what the first channel of a capture shows of a light's frequency; None for steady light."""
+    fundamental = capture.channels[0].measures["fundamental_frequency"] if capture.channels else None
+    if fundamental is None or fundamental.value is None or fundamental.high is None:
+        return None
+    error = (fundamental.high - fundamental.value) / 1.96
+    return Seen(capture.path or "", fundamental.value, error, capture.channels[0].trace.sample_rate)
 
 
 def check(

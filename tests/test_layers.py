@@ -20,7 +20,7 @@ FLOORS = (
     ("sweep",),
     ("tunable", "validation"),
     ("analysis",),
-    ("filmed", "along"),
+    ("filmed", "along", "aliases"),
     ("readers", "camera", "limits", "metrics", "conditioning"),
     ("signal",),
     ("waveforms",),

@@ -34,6 +34,11 @@ from flicker.errors import ExitStatus, UnreadableFileError
 @reading_options
 @uncertainty_options
 @window_option
+@click.option(
+    "--same-light",
+    is_flag=True,
+    help="The captures show one light at different rates: find the frequency that fits them all.",
+)
 @many_options
 @output_options
 @page_option
@@ -49,6 +54,7 @@ def command(
     clock_ppm: float | None,
     dark_uncertainty: float | None,
     window: float | None,
+    same_light: bool,
     manifest: str | None,
     workers: int,
     json_target: str | None,
@@ -72,7 +78,7 @@ def command(
 
     from flicker.analysis import Report
     from flicker.report.captures import Task, measure_capture
-    from flicker.report.words import closing_words
+    from flicker.report.words import closing_words, same_light_words
     from flicker.sweep.manifest import Step, read_manifest
     from flicker.workers import side_by_side
 
@@ -108,7 +114,14 @@ def command(
         if result.words:
             print_words(result.words + "\n", json_target)
         results.append(result)
-    write_json({**Report(()).to_dict(), "captures": [result.data for result in results]}, json_target)
+    settled = None
+    if same_light:
+        from flicker.aliases import settle
+
+        seen = [result.seen for result in results if result.seen]
+        settled = settle(seen, None if clock_ppm is None else 1e-6 * clock_ppm)
+    common = {"same_light": settled.to_dict()} if settled else {}
+    write_json({**Report(()).to_dict(), "captures": [result.data for result in results], **common}, json_target)
     if html_target:
         from flicker.files import write_text
         from flicker.report.pages import measured_page
@@ -117,5 +130,7 @@ def command(
     entries = [entry for result in results for entry in result.entries]
     for block in closing_words(entries, width=width, colour=colour):
         print_words(block + "\n", json_target)
+    if settled:
+        print_words(same_light_words(settled, width=width, colour=colour) + "\n", json_target)
     if any(result.error for result in results):
         raise SystemExit(int(ExitStatus.UNUSABLE_INPUT))

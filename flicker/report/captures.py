@@ -11,6 +11,7 @@ from flicker.errors import FlickerError, NotMeasurable
 from flicker.report.overview import OverviewEntry
 
 if TYPE_CHECKING:
+    from flicker.aliases import Seen
     from flicker.analysis import CaptureReport
     from flicker.report.markup import Markup
     from flicker.sweep.manifest import Step
@@ -39,6 +40,7 @@ class Measured:
     words: str = ""
     error: str = ""
     no_picture: dict[str, str] = field(default_factory=dict)  # pictures that could not be drawn, and why
+    seen: Seen | None = None  # the frequency that it shows
     article: Markup | None = None  # its part of the page, where one was asked for
 
 
@@ -58,7 +60,7 @@ def measure_capture(item: tuple[Step, str], task: Task) -> Measured:
     Measured
         Plain data that travels between processes.
     """
-    from flicker.analysis import CaptureReport, measure, read
+    from flicker.analysis import CaptureReport, measure, read, seen_in
     from flicker.report.overview import overview_entries
     from flicker.report.words import capture_words
 
@@ -84,7 +86,8 @@ def measure_capture(item: tuple[Step, str], task: Task) -> Measured:
         from flicker.report.sheets import capture_article
 
         article = capture_article(capture)
-    return Measured(_data(capture, step), tuple(overview_entries(capture)), words, "", no_picture, article)
+    found = tuple(overview_entries(capture))
+    return Measured(_data(capture, step), found, words, "", no_picture, seen_in(capture), article)
 
 
 def _write_frame(capture: CaptureReport, camera: str, file: Path) -> dict[str, str]:

@@ -12,6 +12,7 @@ from flicker.report.overview import OverviewEntry, channel_title, overview, over
 from flicker.report.typesetting import Paint, wrap
 
 if TYPE_CHECKING:
+    from flicker.aliases import SameLight
     from flicker.analysis import CaptureReport, ChannelReport, Report
     from flicker.results import Note
 
@@ -61,6 +62,21 @@ def closing_words(entries: Sequence[OverviewEntry], *, width: int = 100, colour:
     if any(entry.flickers for entry in entries):
         blocks.append("\n".join(paint.faint(line) for line in wrap(_CAMERA_HINT, width, _INDENT, hang=2)))
     return blocks
+
+
+def same_light_words(found: SameLight, *, width: int = 100, colour: bool = False) -> str:
+    """Say which frequency fits several captures of one light, or why none does."""
+    paint = Paint(colour=colour)
+    text = found.reason
+    if found.frequency is not None:
+        half = 1.96 * found.error
+        text = f"{quantity(found.frequency, 'Hz', 7)} ± {quantity(half, 'Hz', 2)} fits all captures"
+    lines = [paint.bold("One light in all captures"), "", *_answer("What", text, width, paint, ("1",))]
+    for frequency, off in found.others[:2]:
+        nearest = f"{quantity(frequency, 'Hz', 6)} misses one of them by {off:.3g} standard errors"
+        lines += _answer("not", nearest, width, paint, ("0",))
+    clocks = f"each clock taken as right to {found.clock * 1e6:g} ppm; --clock-ppm states it"
+    return "\n".join([*lines, *_answer("with", clocks, width, paint, ("0",))])
 
 
 def _channel_block(
