@@ -26,6 +26,8 @@ def clocked(
     """Frequency, line time that fits, other pairs of the two, and doubts about them."""
     rate = footage.frame_rate
     low, high = 0.15 / rate / footage.lines_of_frame, 1.05 / rate / footage.lines_of_frame
+    if line_time is not None:
+        low, high = min(low, 0.5 * line_time), max(high, 2.0 * line_time)
     sign = 1.0 if bands.turns_per_line > 0 else -1.0
     pairs = []
     for shift in range(-2000, 2001) if line_time is None else range(-3, 4):

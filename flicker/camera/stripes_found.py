@@ -25,6 +25,8 @@ _NEARLY_STILL = 0.75  # how well the phases of a harmonic agree over the frames 
 _STRONG = 5  # harmonics that a deep light cannot do without
 _FEWEST_BANDS = 3  # from which the bands of each frame can be weighed by themselves
 _FEWEST_FRAMES = 10
+_EVEN = 0.002  # of the time between frames: they come evenly
+_TOLD = 0.002  # relative error of a line time that is told
 _RATES = (24.0, 25.0, 30.0, 48.0, 50.0, 60.0)
 
 
@@ -51,7 +53,27 @@ def find_bands(footage: Footage, line_time: float | None) -> StripeFit:
             fit = longer
     if not (np.abs(fit.amplitudes) > np.maximum(8 * fit.errors, _LOWEST_BAND)).any():
         raise NotMeasurable(_no_bands(lines, footage, line_time))
-    return fit
+    return fit if line_time is None else _at_line_time(footage, fit, line_time)
+
+
+def _at_line_time(footage: Footage, fit: StripeFit, line_time: float) -> StripeFit:
+    """
+    Of the frequencies a whole frame rate apart, which even frames cannot tell, take the one that the line time means.
+
+    A readout that fills little of the frame shows few bands, so that the search may take a neighbour.
+    """
+    steps = np.diff(footage.times)
+    if float(np.std(steps)) > _EVEN * float(np.mean(steps)):
+        return fit
+    meant = abs(fit.turns_per_line) / line_time
+    shift = round((meant - fit.frequency) / footage.frame_rate)
+    near = abs(fit.frequency + shift * footage.frame_rate - meant)
+    doubt = 3.0 * fit.turns_error / line_time + _TOLD * meant  # what is told of a line time is not exact either
+    if shift == 0 or abs(shift) > 3 or near > doubt or abs(fit.frequency - meant) < doubt:
+        return fit
+    added = shift * footage.frame_rate  # whole turns from frame to frame; the middle of the footage is no frame
+    turned = np.exp(-2j * np.pi * fit.harmonics * added * float(footage.times[0] - np.mean(footage.times)))
+    return dataclasses.replace(fit, frequency=fit.frequency + added, amplitudes=fit.amplitudes * turned)
 
 
 def without_held(footage: Footage) -> tuple[Footage, tuple[Note, ...]]:

@@ -141,3 +141,14 @@ def test_the_command_writes_a_report(tmp_path):
     words = CliRunner().invoke(program, ["stripes", str(clip), *options]).output
     assert "463.2" in words
     assert "percent flicker" in words
+
+
+@pytest.mark.parametrize("frequency", [463.2, 993.0, 1003.0, 2400.7])
+def test_a_short_readout_does_not_take_the_neighbour_a_frame_rate_away(tmp_path, frequency):
+    texture = TEXTURE[:120]
+    shot = Shot(30e-6, 25.0, 1 / 2000, 40, [Lit(texture, (Pulse(frequency, 0.35, 0.1),) * 3)], noise=0.01)
+    write_clip(tmp_path / "clip.mp4", shot)
+    found = read_stripes(read_footage(tmp_path / "clip.mp4"), line_time=30e-6, exposure=1 / 2000)
+    assert found.frequency.value == pytest.approx(frequency, rel=20e-6)
+    assert min(abs(one["frequency_hz"] - frequency) for one in found.alternatives) == pytest.approx(25.0, abs=0.1)
+    assert not {"moving-scene", "exposure-hunting", "line-time-off"} & {note.code for note in found.notes}
