@@ -47,11 +47,11 @@ class Registry(Mapping[str, Entry], Generic[Entry]):
 
     def _load(self) -> dict[str, Entry]:
         if not self._loaded:
-            self._loaded = True
             package = importlib.import_module(self._package)
             for module in sorted(pkgutil.iter_modules(package.__path__), key=lambda found: found.name):
                 if not module.name.startswith("_"):
                     importlib.import_module(f"{self._package}.{module.name}")
+            self._loaded = True  # only now: what failed to load fails again, and leaves no half list
         return self._entries
 
     def __getitem__(self, name: str) -> Entry:

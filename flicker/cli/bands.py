@@ -49,7 +49,7 @@ _outputs = several(
 )
 
 
-@click.command()
+@click.command(short_help="What a camera will record: bands, how deep, which way they roll.")
 @click.argument("capture", metavar="[CAPTURE]", required=False)
 @light_options
 @filmed_options

@@ -58,7 +58,7 @@ _more_outputs = several(
 )
 
 
-@click.command()
+@click.command(short_help="Judge captures against limits; the exit status is the answer.")
 @click.argument("captures", nargs=-1, metavar="CAPTURE...")
 @limit_options
 @reading_options

@@ -8,7 +8,7 @@ from flicker.cli.output import make_folder, print_words
 from flicker.errors import InputError
 
 
-@click.command()
+@click.command(short_help="Write demonstration captures and a walk through them.")
 @click.argument("folder", metavar="DIR")
 def command(folder: str) -> None:
     """Write the demonstration captures into DIR, with a commented walk through them.

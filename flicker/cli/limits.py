@@ -7,7 +7,7 @@ import click
 from flicker.cli.output import print_words, terminal_width, write_json
 
 
-@click.command()
+@click.command(short_help="The limits known, each with its clause and its source.")
 @click.argument("names", metavar="[ID]...", nargs=-1)
 @click.option("--on-date", metavar="DATE", help="Limits as they stood on a day, such as 2024-08-31.")
 @click.option("--limits-file", metavar="FILE.toml", help="A sheet of your own, beside those built in.")

@@ -8,7 +8,7 @@ from flicker.cli.options import FREQUENCY, MOMENT, TIME, Region, output_options
 from flicker.cli.output import print_words, spare_the_captures, terminal_width, write_json
 
 
-@click.command()
+@click.command(short_help="A camera's line time, from a light of known frequency.")
 @click.argument("video", metavar="VIDEO")
 @click.option("--light-frequency", type=FREQUENCY, required=True, help="Frequency of the light in view.")
 @click.option("--light-ppm", type=float, metavar="PPM", help="Standard uncertainty of that frequency.")

@@ -10,7 +10,7 @@ from flicker.cli.options import TIME, output_options, page_option, video_options
 from flicker.cli.output import command_line, make_folder, print_words, spare_the_captures, terminal_width, write_json
 
 
-@click.command("map")
+@click.command("map", short_help="Depth, frequency, phase and level over the picture.")
 @click.argument("video", metavar="VIDEO")
 @video_options
 @click.option("--exposure", type=TIME, help="How long a line collects light; fitted if left out.")

@@ -37,7 +37,7 @@ _camera_options = several(
 )
 
 
-@click.command()
+@click.command(short_help="What change of a light would keep each limit.")
 @click.argument("capture", metavar="[CAPTURE]", required=False)
 @light_options
 @limit_options

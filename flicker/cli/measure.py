@@ -29,7 +29,7 @@ from flicker.cli.output import (
 from flicker.errors import ExitStatus, UnreadableFileError
 
 
-@click.command()
+@click.command(short_help="Depth, frequency and risk of a light, with intervals.")
 @click.argument("captures", nargs=-1, metavar="CAPTURE...")
 @reading_options
 @uncertainty_options

@@ -7,7 +7,7 @@ import click
 from flicker.cli.output import colour_wanted, print_words, spare_the_captures, terminal_width, write_json
 
 
-@click.command()
+@click.command(short_help="The exposure and frame rate that keep every light clean.")
 @click.argument("plan_file", metavar="PLAN.toml")
 @click.option("--json", "json_target", metavar="FILE|-", help="Write the plan as JSON; - for standard output.")
 def command(plan_file: str, json_target: str | None) -> None:

@@ -10,7 +10,7 @@ from flicker.cli.options import TIME, output_options, page_option, video_options
 from flicker.cli.output import command_line, print_words, spare_the_captures, terminal_width, write_json
 
 
-@click.command()
+@click.command(short_help="Read the light back from the bands of an ordinary video.")
 @click.argument("video", metavar="VIDEO")
 @video_options
 @click.option("--exposure", type=TIME, help="How long a line collects light; fitted where the bands show it.")

@@ -7,7 +7,7 @@ import click
 from flicker.cli.output import print_words, terminal_width, write_json
 
 
-@click.command()
+@click.command(short_help="Hold the program against its check values.")
 @click.option("--json", "json_target", metavar="FILE|-", help="Write the check values as JSON; - for standard output.")
 def command(json_target: str | None) -> None:
     """Hold the program against closed forms, tables and worked values, and print source, expected, got, deviation.

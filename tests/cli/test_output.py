@@ -118,3 +118,13 @@ def test_a_folder_is_made_with_its_parents_or_refused(tmp_path):
         output.make_folder(str(tmp_path / "file"))
     with pytest.raises(InputError, match="no folder"):
         output.make_folder(str(tmp_path / "file" / "below"))
+
+
+def test_the_list_of_commands_is_not_cut_short():
+    from click.testing import CliRunner
+
+    from flicker.cli import program
+
+    listed = CliRunner().invoke(program, ["--help"], terminal_width=80).output.split("Commands:")[1]
+    assert "..." not in listed
+    assert all(line.rstrip().endswith(".") for line in listed.splitlines() if line.strip())
