@@ -78,11 +78,7 @@ def frequency_wander(fit: HarmonicFit, observation: Observation) -> Measure:
     camera exposes, light that wanders has no exposure that hides it whole. Wander faster than an eighth of the
     frequency is not seen.
     """
-    cycles = observation.series.span * fit.frequency
-    if cycles < _FEWEST_TO_FOLLOW:
-        raise NotMeasurable(
-            f"{cycles:.3g} cycles are too few to follow their phase: record at least {_FEWEST_TO_FOLLOW:.0f}"
-        )
+    _need_cycles(observation, fit)
     if fit.track is None:
         return Measure(0.0, "%", 0.0, 100 * UNSEEN_WANDER, "phase in blocks of cycles; it keeps still to within noise")
     value, half = (100 * one / fit.frequency for one in (fit.track.deviation, 1.96 * fit.track.deviation_error))
@@ -91,7 +87,7 @@ def frequency_wander(fit: HarmonicFit, observation: Observation) -> Measure:
 
 
 @metric(unit="Hz", source="definition: strongest line of the tracked phase", order=14)
-def wander_rate(fit: HarmonicFit) -> Measure:
+def wander_rate(fit: HarmonicFit, observation: Observation) -> Measure:
     """
     How often the frequency wanders to and fro.
 
@@ -99,6 +95,8 @@ def wander_rate(fit: HarmonicFit) -> Measure:
     ----------
     fit : HarmonicFit
         Of the deepest family, with the track of its phase where that moves.
+    observation : Observation
+        Of the trace.
 
     Returns
     -------
@@ -108,12 +106,13 @@ def wander_rate(fit: HarmonicFit) -> Measure:
     Raises
     ------
     NotMeasurable
-        If the frequency keeps still, or wanders without a steady rate.
+        If the frequency keeps still, or wanders without a steady rate, or too few cycles were recorded.
 
     Notes
     -----
     The strongest line of the tracked phase, where it holds half of what the phase moves or more.
     """
+    _need_cycles(observation, fit)
     if fit.track is None:
         raise NotMeasurable("the frequency does not wander")
     rate = fit.track.rate()
@@ -121,6 +120,14 @@ def wander_rate(fit: HarmonicFit) -> Measure:
         raise NotMeasurable("the frequency wanders without a steady rate")
     width = 1.0 / float(fit.track.times[-1] - fit.track.times[0])
     return Measure(rate, "Hz", max(rate - width, 0.0), rate + width, "strongest line of the tracked phase")
+
+
+def _need_cycles(observation: Observation, fit: HarmonicFit) -> None:
+    cycles = observation.series.span * fit.frequency
+    if cycles < _FEWEST_TO_FOLLOW:
+        raise NotMeasurable(
+            f"{cycles:.3g} cycles are too few to follow their phase: record at least {_FEWEST_TO_FOLLOW:.0f}"
+        )
 
 
 @metric(unit="1", source="definition: share of the period above half level", order=50)

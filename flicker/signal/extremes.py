@@ -16,7 +16,6 @@ from flicker.signal.summit import find_manner, read
 from flicker.trace import FloatArray
 
 _CONTRADICTION = 2.0  # standard errors by which a wide window may differ from a narrower one
-_PLATEAUS = ("right", "left", "about")
 # steps back from the widest window that is not contradicted, whose bias is of the size of its error: plateaus on
 # either side of the place or about it, and two shapes that bend
 _STEPS_BACK = {"right": 2, "left": 2, "about": 2, "parabola": 3, "hinge": 3}

@@ -79,3 +79,9 @@ def test_a_track_passes_through_its_entries_smoothly():
     assert track.at(between) == pytest.approx(np.sin(4 * np.pi * between), abs=5e-3), "the curve it was made from"
     assert track.scaled(0.5).at(times) == pytest.approx(0.5 * track.cycles)
     assert track.rate() == pytest.approx(2.0, abs=0.1)
+
+
+def test_a_few_cycles_are_too_few_to_follow():
+    observation, _ = wandering(240.0, 0.3, 0.1, 0.0, 3.0, duration=0.05)
+    for name in ("frequency_wander", "wander_rate"):
+        assert "too few to follow" in figure(name, observation).reason
