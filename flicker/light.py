@@ -84,10 +84,10 @@ class Pulse:
         else:
             lowest, highest = self._extremes()
             decay = self.frequency * self.decay  # in cycles
-            until = np.minimum(inside, self.duty)
-            after = np.maximum(inside - self.duty, 0.0)
-            response = until + (1.0 - lowest) * decay * np.expm1(-until / decay)
-            response -= highest * decay * np.expm1(-after / decay)
+            on = inside < self.duty
+            grown = decay * np.expm1(np.where(on, inside, inside - self.duty) / -decay)
+            whole_pulse = self.duty + (1.0 - lowest) * decay * math.expm1(-self.duty / decay)
+            response = np.where(on, inside + (1.0 - lowest) * grown, whole_pulse - highest * grown)
         return np.asarray(whole + (self.low_level * inside + (1.0 - self.low_level) * response) / self._mean)
 
     def amplitudes(self, harmonics: npt.ArrayLike) -> ComplexArray:

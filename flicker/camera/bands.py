@@ -256,10 +256,10 @@ def deepest_pulsing(
     or readout time are unknown. With less than a band in the picture it is the bound of all lines at once.
     """
     slowest = min((family.frequency for families in groups for family in families), default=math.inf)
-    delays = frame_delays(camera)
-    if delays is None or (camera.shutter == "rolling" and camera.readout_time is None):
+    if camera.shutter == "rolling" and (camera.readout_time is None or slowest * camera.readout_time >= 1.0):
         return None
-    if camera.shutter == "rolling" and slowest * (camera.readout_time or 0.0) >= 1.0:
+    delays = frame_delays(camera)
+    if delays is None:
         return None
     return max(
         contrast.worst(families, seen, None if tolerance else contrast.moving(families, delays), tolerance)

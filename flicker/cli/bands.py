@@ -16,9 +16,18 @@ from flicker.cli.options import (
     filmed_options,
     light_from_options,
     light_options,
+    page_option,
     several,
 )
-from flicker.cli.output import colour_wanted, make_folder, print_words, spare_the_captures, terminal_width, write_json
+from flicker.cli.output import (
+    colour_wanted,
+    command_line,
+    make_folder,
+    print_words,
+    spare_the_captures,
+    terminal_width,
+    write_json,
+)
 
 if TYPE_CHECKING:
     from flicker.camera.answer import Answer
@@ -56,6 +65,7 @@ _outputs = several(
 @camera_options
 @_what_to_predict
 @_outputs
+@page_option
 def command(
     capture: str | None,
     exposures: tuple[tuple[float, ...], ...],
@@ -70,6 +80,7 @@ def command(
     figures: str | None,
     clip: str | None,
     scene: str | None,
+    html_target: str | None,
     **options: Any,
 ) -> None:
     """Predict what a camera will record of a light: bands, how deep, how many, which way they roll.
@@ -87,7 +98,7 @@ def command(
     from flicker.report.bands import bands_words
     from flicker.report.typesetting import wrap
 
-    spare_the_captures([] if capture is None else [capture], [json_target, clip])
+    spare_the_captures([] if capture is None else [capture], [json_target, clip, html_target])
     light, source = light_from_options(capture, options)
     camera = camera_from_options(options)
     answer = predict_all(
@@ -103,6 +114,11 @@ def command(
     )
     notes = _draw(answer, figures, clip, scene) if figures or clip else ()
     write_json({"capture": capture, "light_from": source or None, **answer.to_dict()}, json_target)
+    if html_target:
+        from flicker.files import write_text
+        from flicker.report.pages import bands_page
+
+        write_text(html_target, bands_page(answer, command_line(), capture, source))
     words = bands_words(answer, width=terminal_width(), colour=colour_wanted())
     told = wrap(f"i The light was read from {source}.", terminal_width(), "  ", hang=2) if source else []
     print_words("\n".join([words, *told, *notes]), json_target)

@@ -28,7 +28,7 @@ def percent(value: float) -> str:
     return "0 %" if value < 0.005 else quantity(value, "%", 3) if value >= 0.995 else quantity(value, "%", 2)
 
 
-def _cell(value: float | None) -> str:
+def cell(value: float | None) -> str:
     """Give a contrast [%] for a column of a table."""
     return "–" if value is None else f"{value:.2f} %" if value < 99.995 else "100 %"
 
@@ -54,16 +54,16 @@ def bands_words(answer: Answer, *, width: int = 100, colour: bool = False) -> st
     answers: dict[str, list[str]] = {}
     movements = _movements(predictions, camera)
     if len(predictions) == 1:
-        answers["See"] = [f"{_name(worst, camera)}: {see(worst, camera)}"]
+        answers["See"] = [f"{name_of(worst, camera)}: {see(worst, camera)}"]
     elif len(movements) == 1:
         depth = see(worst, camera).split(",")[0]
-        answers["See"] = [f"{movements.pop()}; the worst is {_name(worst, camera)}, {depth}"]
+        answers["See"] = [f"{movements.pop()}; the worst is {name_of(worst, camera)}, {depth}"]
     answers["Why"] = [why(light, camera, worst)]
     answers["Colour"] = list(colour_words(worst))
-    answers["Frames"] = list(_frames(light, camera, predictions))
+    answers["Frames"] = list(frames_words(light, camera, predictions))
     answers["Dial in"] = list(dial_in(answer))
     blocks.append(list(_answers(answers, width, paint)))
-    notes = list(_notes(answer))
+    notes = list(notes_of(answer))
     if notes:
         blocks.append([line for note in notes for line in wrap(note, width, "  ", hang=2)])
     return "\n\n".join("\n".join(block) for block in blocks)
@@ -109,7 +109,8 @@ def camera_words(camera: Camera) -> str:
     return f"{camera.name or 'Camera'}: {', '.join(words) or 'nothing known but the exposure'}"
 
 
-def _name(one: Prediction, camera: Camera) -> str:
+def name_of(one: Prediction, camera: Camera) -> str:
+    """Name the exposure, or the staggered ones, as people dial them."""
     if isinstance(one.exposure_s, tuple):
         return " + ".join(exposure_label(length) for length in one.exposure_s)
     return exposure_label(one.exposure_s, camera.frame_rate)
@@ -119,23 +120,31 @@ def _table(predictions: Sequence[Prediction], camera: Camera, tolerance: float |
     pulsing = camera.shutter == "global"
     figures = [one.frame_flicker_percent if pulsing else one.contrast_percent for one in predictions]
     heads = ["exposure", *(figures[0] if len(figures[0]) > 1 else ["pulsing" if pulsing else "contrast"])]
-    rows = [[_name(one, camera), *map(_cell, row.values())] for one, row in zip(predictions, figures, strict=True)]
+    rows = [[name_of(one, camera), *map(cell, row.values())] for one, row in zip(predictions, figures, strict=True)]
     if tolerance:
         heads.append(f"±{quantity(100 * tolerance, '%', 3)}")
         for row, one in zip(rows, predictions, strict=True):
-            row.append(_cell(one.worst_frame_flicker_percent if pulsing else one.worst_contrast_percent))
+            row.append(cell(one.worst_frame_flicker_percent if pulsing else one.worst_contrast_percent))
     sizes = [max(len(row[column]) for row in [heads, *rows]) for column in range(len(heads))]
 
     def line(cells: Sequence[str]) -> str:
         return "  ".join(f"{cell:{'<' if i == 0 else '>'}{sizes[i]}}" for i, cell in enumerate(cells))
 
     yield "  " + paint.faint(f"{line(heads)}  what you see")
+    for row, words in zip(rows, seen_words(predictions, camera), strict=True):
+        yield f"  {line(row)}  {words}"
+
+
+def seen_words(predictions: Sequence[Prediction], camera: Camera) -> list[str]:
+    """Tell for a row of a table what each shows; bands and their roll only where they are not all alike."""
     alike = len(_movements(predictions, camera)) == 1
-    for row, one in zip(rows, predictions, strict=True):
+    rows = []
+    for one in predictions:
         words = one.visibility if alike or not one.visible else f"{one.visibility}: {bands_and_roll(one, camera)}"
         if one.worst_visibility != one.visibility:
             words += f", {one.worst_visibility} where the frequency is off"
-        yield f"  {line(row)}  {words}"
+        rows.append(words)
+    return rows
 
 
 def _movements(predictions: Sequence[Prediction], camera: Camera) -> set[str]:
@@ -243,7 +252,8 @@ def colour_words(one: Prediction) -> Iterable[str]:
     yield f"{names}; the ratio of two colours swings by {percent(colours.chroma_contrast_percent)}"
 
 
-def _frames(light: Light, camera: Camera, predictions: Sequence[Prediction]) -> Iterable[str]:
+def frames_words(light: Light, camera: Camera, predictions: Sequence[Prediction]) -> Iterable[str]:
+    """Name the frame rates at which the bands stand still."""
     if light.frequency is None or camera.frame_rate is None or not any(one.visible for one in predictions):
         return
     rates = standing_frame_rates(light.frequency, camera.frame_rate)
@@ -280,7 +290,7 @@ def _nearest(answer: Answer, shown: Sequence[Setting]) -> Iterable[str]:
         if nearest and nearest.exposure_s not in named and one.worst_contrast_percent > 100 * answer.limit:
             named.add(nearest.exposure_s)
             words = f"{_left(nearest, answer.tolerance or 0.0)}{_window(nearest, explain=False)}"
-            yield f"nearest to {_name(one, answer.camera)}: {nearest.label}, {words}"
+            yield f"nearest to {name_of(one, answer.camera)}: {nearest.label}, {words}"
 
 
 def _left(one: Setting, tolerance: float) -> str:
@@ -322,7 +332,8 @@ def _what_would_help(frequency: float, answer: Answer) -> Iterable[str]:
     yield f"What would help: {'; '.join(help_)}."
 
 
-def _notes(answer: Answer) -> Iterable[str]:
+def notes_of(answer: Answer) -> Iterable[str]:
+    """Say what does not fit, what was taken as exact, and what is unknown; `!` begins a warning, `i` the rest."""
     predictions = answer.predictions
     yield from _misfits(answer)
     if answer.tolerance is None and answer.light.frequency is not None:
@@ -346,7 +357,8 @@ def _misfits(answer: Answer) -> Iterable[str]:
     for one in answer.predictions:
         total = sum(one.exposure_s) if isinstance(one.exposure_s, tuple) else one.exposure_s
         if total * rate > 1 + 1e-6:
-            yield f"! {_name(one, answer.camera)} does not fit into a frame of {frame}: check exposure and frame rate."
+            name = name_of(one, answer.camera)
+            yield f"! {name} does not fit into a frame of {frame}: check exposure and frame rate."
     if answer.camera.shutter == "rolling" and readout is not None and readout * rate > 1 + 1e-6:
         yield (
             f"! Reading all lines takes {quantity(readout, 's', 3)}, longer than a frame of {frame}: "

@@ -21,7 +21,7 @@ def markup(*contents: Content) -> Markup:
     return Markup("".join(one if isinstance(one, Markup) else escape(str(one)) for one in contents if one is not None))
 
 
-def element(name: str, *contents: Content, **attributes: object) -> Markup:
+def element(name: str, /, *contents: Content, **attributes: object) -> Markup:
     """
     Make an element.
 

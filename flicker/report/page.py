@@ -14,6 +14,9 @@ from flicker.report.markup import Markup, element, markup
 
 _HERE = Path(__file__).parent
 
+_ALWAYS = ("style.css", "page.js")
+_WHERE_NEEDED = {'class="desk"': ("bench.css", "bench.js", "bench_desk.js"), 'class="card"': ("card.css",)}
+
 Make = Callable[[Any], Markup | None]
 
 
@@ -23,7 +26,7 @@ class Section:
     A part of the page as the registry knows it.
 
     `of` says what it is made from: `channel` (`flicker.report.sheets.ChannelSheet`), `capture` (`CaptureReport`),
-    `sweep`, `map`, `film`, or `record`, which closes the page.
+    `sweep`, `map`, `film`, `bands` (`Answer`), `plan` (`Plan`), or `record`, which closes the page.
     """
 
     name: str
@@ -89,11 +92,13 @@ def page(title: str, parts: Iterable[Markup]) -> str:
     str
         One HTML file that needs no other and may ask for none; write it with `flicker.files.write_text`.
     """
-    frame = Template((_HERE / "page.html").read_text(encoding="utf-8"))
-    return frame.substitute(
+    shown = markup(*parts)
+    files = [*_ALWAYS, *(name for needed, names in _WHERE_NEEDED.items() if needed in shown for name in names)]
+    texts = {name: (_HERE / name).read_text(encoding="utf-8") for name in ("page.html", *files)}
+    return Template(texts["page.html"]).substitute(
         title=markup(title),
         version=markup(__version__),
-        style=(_HERE / "style.css").read_text(encoding="utf-8"),
-        script=(_HERE / "page.js").read_text(encoding="utf-8"),
-        parts=markup(*parts),
+        style="".join(text for name, text in texts.items() if name.endswith(".css")),
+        script="".join(text for name, text in texts.items() if name.endswith(".js")),
+        parts=shown,
     )

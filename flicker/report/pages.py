@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Iterable, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from flicker.report.bands import light_words
 from flicker.report.captures import Measured
-from flicker.report.markup import Markup
+from flicker.report.markup import Markup, element, markup
 from flicker.report.overview import OverviewEntry, overview_entries
 from flicker.report.page import page, sections
 from flicker.report.sheets import Statement, Sweep, article, capture_article
@@ -15,6 +17,8 @@ from flicker.report.verdicts import RULES
 
 if TYPE_CHECKING:
     from flicker.analysis import Report
+    from flicker.camera.answer import Answer
+    from flicker.camera.plan import Plan
     from flicker.camera.screen import ScreenMap
     from flicker.filmed import FilmReport
 
@@ -124,8 +128,43 @@ def film_page(report: FilmReport, command_line: str) -> str:
     return page(title_of([report.path]), [shown, _record(command_line, report.path, report.stripes.footage.sha256)])
 
 
+def bands_page(answer: Answer, command_line: str, capture: str | None = None, source: str = "") -> str:
+    """
+    Make the page of a prediction, with the camera bench.
+
+    Parameters
+    ----------
+    answer : Answer
+        From `flicker.camera.answer.predict_all`.
+    command_line : str
+        With which the program was called.
+    capture : str, optional
+        Path of the capture that the light comes from.
+    source : str
+        How the light was read from it, if that needs saying.
+    """
+    name = light_words(answer.light) if capture is None else Path(capture).name
+    read = element("p", f"The light was read from {source}.", class_="reason") if source else markup()
+    captures = [] if capture is None else [(capture, _digest(capture))]
+    closing = _closing(Statement.measured(command_line, captures))
+    return page(f"{name}, flicker", [article(name, sections("bands", answer), read), closing])
+
+
+def plan_page(plan: Plan, path: str, command_line: str) -> str:
+    """Make the shoot card of a plan: one sheet to print."""
+    name = Path(path).name
+    made = element("p", f"Made by {command_line}", class_="reason")
+    return page(f"{name}, flicker", [element("div", article(f"Shoot card: {name}", sections("plan", plan), made),
+                                             class_="card")])  # fmt: skip
+
+
 def _record(command_line: str, path: str, sha256: str | None) -> Markup:
     return _closing(Statement.measured(command_line, [(path, sha256 or "not a file")]))
+
+
+def _digest(path: str) -> str:
+    with Path(path).open("rb") as file:
+        return hashlib.file_digest(file, "sha256").hexdigest()
 
 
 def _closing(statement: Statement) -> Markup:

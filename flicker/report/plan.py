@@ -24,19 +24,7 @@ _SEEN = 0.1  # contrast below which nobody sees whether a band stands [%]
 def plan_words(plan: Plan, *, width: int = 100, colour: bool = False) -> str:
     """Put a plan into words for a terminal or one page of paper; `width` is that of a line."""
     paint = Paint(colour=colour)
-    within = (
-        "with the lights' frequencies taken as exact"
-        if plan.tolerance is None
-        else f"with the lights' frequencies up to {quantity(100 * plan.tolerance, '%', 3)} off"
-    )
-    head = (
-        f"{_count(len(plan.lights), 'light')}, {_count(len(plan.cameras), 'camera')}, "
-        f"{_count(len(plan.settings), 'setting')}; clean up to {quantity(100 * plan.limit, '%', 3)}, {within}"
-    )
-    blocks = [[paint.bold(line) for line in wrap(head, width, "")]]
-    if plan.impossible:
-        left_out = _count(plan.impossible, "combination")
-        blocks[0].append(f"{left_out} left out: the exposure or the readout does not fit into the frame")
+    blocks = [[*(paint.bold(line) for line in wrap(head_words(plan), width, "")), *left_out_words(plan)]]
     if not plan.settings:
         return "\n".join(blocks[0])
     blocks.append(list(_answers(plan, width, paint)))
@@ -44,12 +32,36 @@ def plan_words(plan: Plan, *, width: int = 100, colour: bool = False) -> str:
     return "\n\n".join("\n".join(block) for block in blocks)
 
 
+def head_words(plan: Plan) -> str:
+    """Say what was planned, up to which contrast a setting is clean, and within which tolerance."""
+    within = (
+        "with the lights' frequencies taken as exact"
+        if plan.tolerance is None
+        else f"with the lights' frequencies up to {quantity(100 * plan.tolerance, '%', 3)} off"
+    )
+    return (
+        f"{_count(len(plan.lights), 'light')}, {_count(len(plan.cameras), 'camera')}, "
+        f"{_count(len(plan.settings), 'setting')}; clean up to {quantity(100 * plan.limit, '%', 3)}, {within}"
+    )
+
+
+def left_out_words(plan: Plan) -> Iterable[str]:
+    """Count what does not fit into a frame."""
+    if plan.impossible:
+        left_out = _count(plan.impossible, "combination")
+        yield f"{left_out} left out: the exposure or the readout does not fit into the frame"
+
+
 def _count(number: int, what: str) -> str:
     return f"{number} {what}{'' if number == 1 else 's'}"
 
 
 def _answers(plan: Plan, width: int, paint: Paint) -> Iterable[str]:
-    texts = {"Best": list(_best(plan)), "Together": list(_together(plan)), "Spoilt by": list(_spoilers(plan))}
+    texts = {
+        "Best": list(best_words(plan)),
+        "Together": list(together_words(plan)),
+        "Spoilt by": list(spoiler_words(plan)),
+    }
     for label, sentences in texts.items():
         for number, sentence in enumerate(sentences):
             first, *rest = wrap(sentence, width - _LABEL - 4, "")
@@ -58,7 +70,8 @@ def _answers(plan: Plan, width: int, paint: Paint) -> Iterable[str]:
             yield from (f"  {'':<{_LABEL + 2}}{line}" for line in rest)
 
 
-def _best(plan: Plan) -> Iterable[str]:
+def best_words(plan: Plan) -> Iterable[str]:
+    """Name the best setting of each camera."""
     for camera in plan.cameras:
         best = plan.best_of(camera)
         if best is None:
@@ -76,7 +89,8 @@ def _best(plan: Plan) -> Iterable[str]:
         yield words
 
 
-def _together(plan: Plan) -> Iterable[str]:
+def together_words(plan: Plan) -> Iterable[str]:
+    """Name the best setting that all cameras have."""
     if not plan.shared:
         if len(plan.cameras) > 1:
             yield "no frame rate and exposure is common to all cameras"
@@ -89,7 +103,7 @@ def _together(plan: Plan) -> Iterable[str]:
     )
 
 
-def _spoilers(plan: Plan) -> Iterable[str]:
+def spoiler_words(plan: Plan) -> Iterable[str]:
     """Name the lights that make settings unclean, and what is gained without each."""
     spoilt = [one for one in plan.settings if not one.clean]
     if not spoilt or len(plan.lights) < 2:
@@ -102,7 +116,7 @@ def _spoilers(plan: Plan) -> Iterable[str]:
 
 
 @dataclass(frozen=True)
-class _Column:
+class Column:
     """One exposure of one camera, with the frame rates at which it leaves the same of every light."""
 
     setting: PlanSetting
@@ -115,18 +129,18 @@ class _Column:
         return shown if len(self.frame_rates) < 3 else f"{shown}+{len(self.frame_rates) - 2}"
 
 
-def _chosen(plan: Plan, fitting: int) -> list[_Column]:
+def chosen_columns(plan: Plan, fitting: int) -> list[Column]:
     """Columns of the table: the best of each camera, then the next best, in the order of cameras."""
-    each: dict[str, list[_Column]] = {camera: [] for camera in plan.cameras}
+    each: dict[str, list[Column]] = {camera: [] for camera in plan.cameras}
     for one in plan.settings:
         columns = each[one.camera]
         for number, column in enumerate(columns):
             same = column.setting
             if same.exposure_s == one.exposure_s and same.contrast_percent == one.contrast_percent:
-                columns[number] = _Column(same, (*column.frame_rates, one.frame_rate_hz))
+                columns[number] = Column(same, (*column.frame_rates, one.frame_rate_hz))
                 break
         else:
-            columns.append(_Column(one, (one.frame_rate_hz,)))
+            columns.append(Column(one, (one.frame_rate_hz,)))
     chosen: list[tuple[int, int]] = []
     for rank in range(max(len(columns) for columns in each.values())):
         chosen += [(number, rank) for number, camera in enumerate(plan.cameras) if rank < len(each[camera])]
@@ -136,8 +150,8 @@ def _chosen(plan: Plan, fitting: int) -> list[_Column]:
 def _table(plan: Plan, width: int, paint: Paint) -> Iterable[str]:
     names = ["exposure, s", "without worst", *map(_short, plan.lights)]
     size = max(len(name) for name in names)
-    columns = _chosen(plan, max(1, (width - size - 2) // (_CELL + 2)))
-    letters = {camera: _letter(number) for number, camera in enumerate(plan.cameras)}
+    columns = chosen_columns(plan, max(1, (width - size - 2) // (_CELL + 2)))
+    letters = {camera: letter_of(number) for number, camera in enumerate(plan.cameras)}
     rule = "  " + "-" * (size + (_CELL + 2) * len(columns))
 
     def line(name: str, cells: Iterable[str]) -> str:
@@ -149,17 +163,18 @@ def _table(plan: Plan, width: int, paint: Paint) -> Iterable[str]:
     yield paint.faint(line("frames/s", [column.rates for column in columns]))
     yield rule
     for light in plan.lights:
-        yield line(_short(light), [_cell(one.contrast_percent[light], plan.limit) for one in settings])
+        yield line(_short(light), [cell(one.contrast_percent[light], plan.limit) for one in settings])
     yield rule
     yield paint.bold(line("all lights", ["clean " if one.clean else "NOT " for one in settings]))
     if len(plan.lights) > 1:
-        yield line("without worst", [_cell(one.without_worst_light_percent, plan.limit) for one in settings])
+        yield line("without worst", [cell(one.without_worst_light_percent, plan.limit) for one in settings])
     yield ""
     yield from wrap("; ".join(f"{letter}: {camera}" for camera, letter in letters.items()), width, "  ")
     yield "  deepest bands in % of light, over the tolerance; ! is above the limit; --json lists every setting"
 
 
-def _letter(number: int) -> str:
+def letter_of(number: int) -> str:
+    """Letter of a camera in the table."""
     return chr(ord("A") + number) if number < 26 else str(number + 1)
 
 
@@ -167,7 +182,8 @@ def _short(name: str) -> str:
     return name if len(name) <= _NAME else name[: _NAME - 1] + "…"
 
 
-def _cell(value: float | None, limit: float) -> str:
+def cell(value: float | None, limit: float) -> str:
+    """Give a contrast [%] for the table, with ! above the limit."""
     if value is None:
         return "–"
     digits = 2 if value < 9.995 else 1 if value < 99.95 else 0
