@@ -19,7 +19,7 @@ _HOMES = {
     "Light": "flicker.light",
     "Measure": "flicker.results",
     "NotMeasurable": "flicker.errors",
-    "Report": "flicker.analysis",
+    "Report": "flicker.reports",
     "Trace": "flicker.trace",
     "UnreadableFileError": "flicker.errors",
     "check": "flicker.analysis",

@@ -3,21 +3,22 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
-from flicker import __version__, readers
+from flicker import readers
 from flicker.aliases import SameLight, Seen, settle
-from flicker.along import Along, measure_along
+from flicker.along import measure_along
 from flicker.conditioning import condition
 from flicker.conditioning.detector import undo_detector
 from flicker.conditioning.frames import ALIASING, aliasing, exposure_undone
 from flicker.errors import InputError
-from flicker.light import ChannelLight, Light
-from flicker.limits import Conditions, Limit, RiskRegion, Verdict, chosen_limits, judge, risk_region
+from flicker.light import Light
+from flicker.limits import Conditions, Limit, chosen_limits, judge, risk_region
 from flicker.metrics import Observation, evaluate
-from flicker.results import Component, Family, Measure, Note
+from flicker.reports import CaptureReport, ChannelReport, Report
+from flicker.results import Measure
 from flicker.trace import Capture, Trace
 
 _CONDITIONS = ("dark_level", "dark_capture", "mean", "dc_coupled", "inverted", "start", "duration", "coupling_corner")
@@ -258,103 +259,3 @@ def check(
         return replace(channel, verdicts=tuple(judge(row, *found, decision, conditions) for row in rows))
 
     return Report(tuple(replace(capture, channels=tuple(map(judged, capture.channels))) for capture in report.captures))
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class ChannelReport:
-    """What was found in one channel; `observation` keeps the trace, the cycle and the spectrum for pictures."""
-
-    observation: Observation
-    measures: dict[str, Measure]
-    notes: tuple[Note, ...]
-    components: tuple[Component, ...]
-    families: tuple[Family, ...]
-    risk_region: RiskRegion | None
-    verdicts: tuple[Verdict, ...] = ()
-    along: Along | None = None
-
-    @property
-    def trace(self) -> Trace:
-        """The trace that was measured."""
-        return self.observation.trace
-
-    @property
-    def light(self) -> ChannelLight:
-        """The light for prediction: its lines relative to the mean."""
-        return self.observation.light
-
-    def to_dict(self) -> dict[str, Any]:
-        """Give the JSON form of `docs/json.md`."""
-        trace = self.trace
-        return {
-            "name": trace.name,
-            "level": {
-                "mean": self.observation.mean if trace.mean_known else None,
-                "unit": trace.unit,
-                "dark": trace.dark_level or 0.0,
-                "mean_known": trace.mean_known,
-            },
-            "notes": [note.to_dict() for note in self.notes],
-            "measures": {name: measure.to_dict() for name, measure in self.measures.items()},
-            "components": [component.to_dict() for component in self.components],
-            "families": [family.to_dict() for family in self.families],
-            "risk_region": self.risk_region.to_dict() if self.risk_region else None,
-            "verdicts": [verdict.to_dict() for verdict in self.verdicts],
-            "history": list(trace.history),
-            **({"along": self.along.to_dict()} if self.along else {}),
-        }
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class CaptureReport:
-    """What was found in one capture, or the error that kept it from being read."""
-
-    path: str | None
-    capture: Capture | None
-    channels: tuple[ChannelReport, ...] = ()
-    error: str = ""
-
-    @property
-    def light(self) -> Light:
-        """The light of all channels, for prediction."""
-        return Light(tuple(channel.light for channel in self.channels))
-
-    def to_dict(self) -> dict[str, Any]:
-        """Give the JSON form of `docs/json.md`."""
-        if self.capture is None:
-            return {"capture": {"path": self.path}, "error": self.error}
-        first = self.capture.traces[0]
-        return {
-            "capture": {
-                "path": self.path,
-                "kind": self.capture.kind,
-                "sha256": self.capture.sha256,
-                "sample_rate_hz": first.sample_rate,
-                "samples": first.samples,
-                "duration_s": first.duration,
-                "start_s": first.start,
-                **self.capture.details,
-            },
-            "channels": [channel.to_dict() for channel in self.channels],
-        }
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Report:
-    """The JSON of `flicker measure` and `flicker check` as objects."""
-
-    captures: tuple[CaptureReport, ...]
-
-    @property
-    def light(self) -> Light:
-        """The light of the first capture, for prediction."""
-        return self.captures[0].light
-
-    def to_dict(self) -> dict[str, Any]:
-        """Give the JSON form of `docs/json.md`."""
-        return {
-            "format": "flicker-report",
-            "version": 1,
-            "program": __version__,
-            "captures": [capture.to_dict() for capture in self.captures],
-        }

@@ -19,7 +19,7 @@ from flicker.trace import FloatArray
 from flicker.waveforms import pwm
 
 if TYPE_CHECKING:
-    from flicker.analysis import ChannelReport
+    from flicker.reports import ChannelReport
 
 _MATTERS = 5e-3  # share of the strongest line below which a line crosses an edge unnoticed
 _SLOW = 200.0  # up to which lines count for the short-term severity [Hz]

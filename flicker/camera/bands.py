@@ -16,6 +16,7 @@ from flicker.camera.exposed import Family, Windows, families_of, windows
 from flicker.camera.sensor import Camera, unknown
 from flicker.errors import InputError
 from flicker.light import Light
+from flicker.markup import element, items, markup, table
 from flicker.trace import FloatArray
 
 ASSUMED_LINES = 1024  # of a picture of which only the readout time is known
@@ -63,6 +64,44 @@ class Prediction:
         if self.reasons:
             entry["reason"] = "; ".join(dict.fromkeys(self.reasons.values()))
         return entry
+
+    def rows(self) -> list[dict[str, Any]]:
+        """
+        List what each channel shows, one row each: what `pandas.DataFrame` and its like take.
+
+        Returns
+        -------
+        list of dict
+            Keys `exposure_s`, `channel`, `contrast_percent`, `frame_flicker_percent`, and those of the JSON that all
+            channels share.
+        """
+        return [
+            {
+                "exposure_s": self.exposure_s,
+                "channel": name,
+                "contrast_percent": contrast,
+                "frame_flicker_percent": self.frame_flicker_percent.get(name),
+                "worst_contrast_percent": self.worst_contrast_percent,
+                "band_period_lines": self.band_period_lines,
+                "drift_lines_per_frame": self.drift_lines_per_frame,
+                "visibility": self.visibility,
+            }
+            for name, contrast in self.contrast_percent.items()
+        ]
+
+    def _repr_html_(self) -> str:
+        """Show the prediction in a notebook."""
+        rows = self.rows()
+        shown = [[_shown(value) for name, value in row.items() if name != "exposure_s"] for row in rows]
+        head = [name.replace("_percent", " (%)").replace("_", " ") for name in rows[0] if name != "exposure_s"]
+        lengths = self.exposure_s if isinstance(self.exposure_s, tuple) else (self.exposure_s,)
+        title = " + ".join(f"{1e3 * one:.4g} ms" for one in lengths)
+        said = element("p", element("strong", title), f": {self.visibility}")
+        return markup(said, table(head, shown), items(dict.fromkeys(self.reasons.values())))
+
+
+def _shown(value: object) -> object:
+    return "\N{EN DASH}" if value is None else f"{value:.4g}" if isinstance(value, float) else value
 
 
 @dataclass(frozen=True, slots=True)

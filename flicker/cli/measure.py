@@ -76,9 +76,9 @@ def command(
     """
     from functools import partial
 
-    from flicker.analysis import Report
     from flicker.report.captures import Task, measure_capture
     from flicker.report.words import closing_words, same_light_words
+    from flicker.reports import Report
     from flicker.sweep.manifest import Step, read_manifest
     from flicker.workers import side_by_side
 

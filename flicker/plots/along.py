@@ -11,7 +11,7 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
     from flicker.along import Along
-    from flicker.analysis import ChannelReport
+    from flicker.reports import ChannelReport
 
 _PANELS = {
     "fundamental_frequency": "frequency (Hz)",

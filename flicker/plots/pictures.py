@@ -17,7 +17,7 @@ from flicker.plots.waveform import draw_waveform
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-    from flicker.analysis import CaptureReport, ChannelReport
+    from flicker.reports import CaptureReport, ChannelReport
 
 PICTURES: dict[str, tuple[str, Callable[[ChannelReport, str], Figure]]] = {
     "waveform": ("light over time, and its mean cycle", draw_waveform),

@@ -23,8 +23,8 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-    from flicker.analysis import ChannelReport
     from flicker.limits import Curve, RiskRegion
+    from flicker.reports import ChannelReport
 
 _FREQUENCIES = (1.0, 10_000.0)  # [Hz]
 _MODULATIONS = (0.05, 250.0)  # [%]

@@ -11,7 +11,7 @@ from flicker.plots.style import FAINT, INK, LIGHT, MARK, new_figure, plain_logar
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-    from flicker.analysis import ChannelReport
+    from flicker.reports import ChannelReport
     from flicker.trace import FloatArray
 
 _NAMED = 3  # lines that get their numbers written

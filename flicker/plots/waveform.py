@@ -13,7 +13,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-    from flicker.analysis import ChannelReport
+    from flicker.reports import ChannelReport
 
 _CYCLES_SHOWN = 5
 _SAMPLES_SHOWN = 4000

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
-from flicker.report.figures import measure_name, quantity
+from flicker.figures import measure_name, quantity
 
 if TYPE_CHECKING:
     from flicker.along import Along, Throughout

@@ -5,12 +5,12 @@ from __future__ import annotations
 from collections.abc import Iterable
 from typing import TYPE_CHECKING
 
+from flicker.figures import quantity, round_up
 from flicker.limits.region import STANDARD
-from flicker.report.figures import quantity, round_up
 
 if TYPE_CHECKING:
-    from flicker.analysis import ChannelReport
     from flicker.limits import RiskRegion
+    from flicker.reports import ChannelReport
     from flicker.results import Measure, Note
 
 REGION_WORDS = {

@@ -7,7 +7,7 @@ from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING
 
 from flicker.camera.shutter import Setting, exposure_label, standing_frame_rates
-from flicker.report.figures import quantity
+from flicker.figures import quantity
 from flicker.report.typesetting import Paint, wrap
 
 if TYPE_CHECKING:

@@ -12,8 +12,8 @@ from flicker.report.overview import OverviewEntry
 
 if TYPE_CHECKING:
     from flicker.aliases import Seen
-    from flicker.analysis import CaptureReport
-    from flicker.report.markup import Markup
+    from flicker.markup import Markup
+    from flicker.reports import CaptureReport
     from flicker.sweep.manifest import Step
 
 
@@ -60,9 +60,10 @@ def measure_capture(item: tuple[Step, str], task: Task) -> Measured:
     Measured
         Plain data that travels between processes.
     """
-    from flicker.analysis import CaptureReport, measure, read, seen_in
+    from flicker.analysis import measure, read, seen_in
     from flicker.report.overview import overview_entries
     from flicker.report.words import capture_words
+    from flicker.reports import CaptureReport
 
     step, name = item
     reading = dict(task.reading)

@@ -10,7 +10,7 @@ from typing import Any
 
 from flicker import __version__
 from flicker.limits import Limit, Outcome, Verdict, overall
-from flicker.report.markup import Markup
+from flicker.markup import Markup
 from flicker.report.record import record_words
 from flicker.report.results import Spool, table_head, table_rows, table_text
 from flicker.report.sheets import Statement, Sweep

@@ -6,8 +6,8 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from flicker.camera.frequencies import CleanFrequencies
+from flicker.figures import quantity, round_down, round_up
 from flicker.limits import Margin
-from flicker.report.figures import quantity, round_down, round_up
 from flicker.report.typesetting import wrap
 from flicker.report.verdicts import OUTCOME_WORDS
 

@@ -7,13 +7,13 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from flicker.figures import quantity
 from flicker.limits.region import STANDARD
 from flicker.report.answer import REGION_MARKS, REGION_WORDS, risk, severity
-from flicker.report.figures import quantity
 from flicker.report.typesetting import Paint, wrap
 
 if TYPE_CHECKING:
-    from flicker.analysis import CaptureReport, ChannelReport
+    from flicker.reports import CaptureReport, ChannelReport
 
 HEAD = ("capture", "frequency", "flicker", "index", f"risk ({STANDARD})")
 _LESSER_COLUMNS = (3, 1)  # left out first where the terminal is narrow

@@ -9,8 +9,8 @@ from string import Template
 from typing import Any
 
 from flicker import __version__
+from flicker.markup import Markup, element, markup
 from flicker.registry import Registry
-from flicker.report.markup import Markup, element, markup
 
 _HERE = Path(__file__).parent
 

@@ -7,20 +7,20 @@ from collections.abc import Iterable, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from flicker.markup import Markup, element, markup
 from flicker.report.bands import light_words
 from flicker.report.captures import Measured
-from flicker.report.markup import Markup, element, markup
 from flicker.report.overview import OverviewEntry, overview_entries
 from flicker.report.page import page, sections
 from flicker.report.sheets import Statement, Sweep, article, capture_article
 from flicker.report.verdicts import RULES
 
 if TYPE_CHECKING:
-    from flicker.analysis import Report
     from flicker.camera.answer import Answer
     from flicker.camera.plan import Plan
     from flicker.camera.screen import ScreenMap
     from flicker.filmed import FilmReport
+    from flicker.reports import Report
 
 
 def report_page(report: Report) -> str:

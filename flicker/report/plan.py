@@ -8,8 +8,8 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from flicker.camera.shutter import exposure_label
+from flicker.figures import quantity
 from flicker.report.bands import percent
-from flicker.report.figures import quantity
 from flicker.report.typesetting import Paint, wrap
 
 if TYPE_CHECKING:

@@ -7,13 +7,13 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from flicker.report.markup import Markup, element, markup
+from flicker.markup import Markup, element, markup
 from flicker.report.overview import channel_title
 from flicker.report.page import sections
 from flicker.report.verdicts import cures
 
 if TYPE_CHECKING:
-    from flicker.analysis import CaptureReport, ChannelReport
+    from flicker.reports import CaptureReport, ChannelReport
     from flicker.sweep.course import Change, Course, Point
 
 

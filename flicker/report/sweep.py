@@ -6,9 +6,9 @@ from collections import Counter
 from collections.abc import Sequence
 from pathlib import Path
 
+from flicker.figures import quantity
 from flicker.limits import OUTCOMES
 from flicker.report.answer import REGION_WORDS
-from flicker.report.figures import quantity
 from flicker.report.typesetting import wrap
 from flicker.report.verdicts import OUTCOME_WORDS, margin_in_words
 from flicker.sweep.course import Change, Course, Point, weight

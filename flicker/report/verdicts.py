@@ -6,8 +6,8 @@ import math
 from collections.abc import Mapping, Sequence
 from typing import Any
 
+from flicker.figures import measure_name, measured, quantity, round_up
 from flicker.limits import OUTCOMES, Curve, Limit, Verdict, overall
-from flicker.report.figures import measure_name, measured, quantity, round_up
 from flicker.report.typesetting import wrap
 from flicker.results import Measure
 

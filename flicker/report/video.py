@@ -6,8 +6,8 @@ import textwrap
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from flicker.figures import measure_name, measured, quantity
 from flicker.report.answer import REGION_MARKS, REGION_WORDS
-from flicker.report.figures import measure_name, measured, quantity
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence

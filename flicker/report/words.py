@@ -5,15 +5,15 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING
 
+from flicker.figures import measure_name, measured, quantity
 from flicker.report.along import along_words, severity_words
 from flicker.report.answer import caution, depth, next_step, risk, short_reason, what
-from flicker.report.figures import measure_name, measured, quantity
 from flicker.report.overview import OverviewEntry, channel_title, overview, overview_entries
 from flicker.report.typesetting import Paint, wrap
 
 if TYPE_CHECKING:
     from flicker.aliases import SameLight
-    from flicker.analysis import CaptureReport, ChannelReport, Report
+    from flicker.reports import CaptureReport, ChannelReport, Report
     from flicker.results import Note
 
 _INDENT = "  "

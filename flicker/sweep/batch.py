@@ -18,7 +18,7 @@ from flicker.sweep.manifest import Step
 from flicker.workers import side_by_side
 
 if TYPE_CHECKING:
-    from flicker.analysis import CaptureReport, ChannelReport
+    from flicker.reports import CaptureReport, ChannelReport
 
 _CURES = ("least_frequency_hz", "most_percent_flicker", "ripple_factor", "ripple_db", "reason")
 

@@ -4,7 +4,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from flicker.report.figures import measure_name, measured, quantity
+from flicker.figures import measure_name, measured, quantity
 from flicker.results import Measure
 
 FACTORS = {"": 1.0, "G": 1e9, "M": 1e6, "k": 1e3, "m": 1e-3, "µ": 1e-6, "n": 1e-9}

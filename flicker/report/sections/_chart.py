@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from flicker.report.markup import Markup, element, markup
+from flicker.markup import Markup, element, markup
 from flicker.trace import FloatArray
 
 WIDTH, HEIGHT = 460, 290

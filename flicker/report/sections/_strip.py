@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from flicker.report.markup import Markup, element, markup
+from flicker.markup import Markup, element, markup
 from flicker.trace import FloatArray
 
 _CYCLES = 4  # few, for fine stripes are unpleasant to look at

@@ -5,18 +5,18 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from flicker.errors import NotMeasurable
+from flicker.figures import quantity
 from flicker.limits.region import STANDARD
+from flicker.markup import Content, Markup, element, markup, pairs
 from flicker.report.answer import REGION_WORDS, caution, depth, next_step, risk, what
-from flicker.report.figures import quantity
-from flicker.report.markup import Content, Markup, element, markup, pairs
 from flicker.report.page import section
 from flicker.report.sections._chart import SHAPES
 from flicker.report.sections._strip import light_strip
 from flicker.report.verdicts import headline
 
 if TYPE_CHECKING:
-    from flicker.analysis import ChannelReport
     from flicker.report.sheets import ChannelSheet
+    from flicker.reports import ChannelReport
 
 REGION_SHAPES = {"no-observable-effect": "circle", "low-risk": "diamond", "above-low-risk": "triangle"}
 

@@ -5,6 +5,8 @@ from __future__ import annotations
 import re
 from typing import TYPE_CHECKING
 
+from flicker.figures import quantity
+from flicker.markup import Content, Markup, element, items, markup, pairs, table
 from flicker.report.bands import (
     camera_words,
     cell,
@@ -18,8 +20,6 @@ from flicker.report.bands import (
     seen_words,
     why,
 )
-from flicker.report.figures import quantity
-from flicker.report.markup import Content, Markup, element, markup, pairs, table
 from flicker.report.page import section
 
 if TYPE_CHECKING:
@@ -79,12 +79,11 @@ def _deepest_frame(one: Prediction) -> str:
 @section(of="bands", title="Dial in", order=40)
 def bands_advice(answer: Answer) -> Markup | None:
     """Name the exposures that cure it."""
-    sentences = [re.sub(" {2,}", ": ", words) for words in dial_in(answer)]
-    return element("ul", *(element("li", words) for words in sentences)) if sentences else None
+    return items(re.sub(" {2,}", ": ", words) for words in dial_in(answer))
 
 
 @section(of="bands", title="Notes", order=50)
 def bands_notes(answer: Answer) -> Markup:
     """Say what does not fit and what is unknown, and what the page does not judge."""
-    notes = [element("li", note.removeprefix("! ").removeprefix("i ")) for note in notes_of(answer)]
-    return markup(element("ul", *notes) if notes else None, element("p", _CAUTION, class_="reason"))
+    notes = items(note.removeprefix("! ").removeprefix("i ") for note in notes_of(answer))
+    return markup(notes, element("p", _CAUTION, class_="reason"))

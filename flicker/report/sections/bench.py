@@ -10,15 +10,15 @@ from flicker.camera.exposed import families_of
 from flicker.camera.sensor import Camera
 from flicker.camera.shutter import ANGLES, CONTRAST_LIMIT, FRACTIONS
 from flicker.camera.visibility import band_threshold
+from flicker.figures import quantity
+from flicker.markup import Markup, element, markup
 from flicker.report.bands import light_words, percent
-from flicker.report.figures import quantity
-from flicker.report.markup import Markup, element, markup
 from flicker.report.page import section
 
 if TYPE_CHECKING:
-    from flicker.analysis import CaptureReport
     from flicker.camera.answer import Answer
     from flicker.light import ChannelLight, Light
+    from flicker.reports import CaptureReport
 
 # A camera to begin with where none is stated; the page marks each of these as an example
 _EXAMPLE = {"frame_rate": 25.0, "line_time": 15e-6, "lines": 1080}

@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from typing import TYPE_CHECKING
 
+from flicker.figures import measure_name, measured
+from flicker.markup import Markup, element, markup, pairs, table
 from flicker.report.answer import short_reason
-from flicker.report.figures import measure_name, measured
-from flicker.report.markup import Markup, element, markup, pairs, table
 from flicker.report.page import section
 
 if TYPE_CHECKING:

@@ -6,9 +6,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from flicker.figures import measured, quantity
+from flicker.markup import Content, Markup, element, markup, pairs, table
 from flicker.report.answer import REGION_WORDS
-from flicker.report.figures import measured, quantity
-from flicker.report.markup import Content, Markup, element, markup, pairs, table
 from flicker.report.page import section
 from flicker.report.sections._chart import Chart
 from flicker.report.sections.answer import region_sign

@@ -7,8 +7,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from flicker.report.figures import quantity
-from flicker.report.markup import Markup, element, markup, pairs, table
+from flicker.figures import quantity
+from flicker.markup import Markup, element, markup, pairs, table
 from flicker.report.page import section
 from flicker.report.sections._chart import WIDTH, figure
 from flicker.report.sections.notes import note_list

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from flicker.figures import measure_name, quantity
+from flicker.markup import Markup, element, markup, table
 from flicker.metrics import METRICS
-from flicker.report.figures import measure_name, quantity
-from flicker.report.markup import Markup, element, markup, table
 from flicker.report.page import section
 
 if TYPE_CHECKING:
-    from flicker.analysis import CaptureReport
+    from flicker.reports import CaptureReport
 
 
 @section(of="capture", title="Method", order=80)

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from typing import TYPE_CHECKING
 
-from flicker.report.markup import Markup, element, markup
+from flicker.markup import Markup, element, markup
 from flicker.report.page import section
 
 if TYPE_CHECKING:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from pathlib import Path
 
-from flicker.report.markup import Markup, element, markup, table
+from flicker.markup import Markup, element, items, markup, table
 from flicker.report.overview import HEAD, OverviewEntry, riskiest
 from flicker.report.page import section
 
@@ -26,4 +26,4 @@ def not_read(errors: Sequence[tuple[str, str]]) -> Markup | None:
     """Name the captures that could not be read, each with the reason."""
     if not errors:
         return None
-    return element("ul", *(element("li", f"not read: {Path(path).name}: {reason}") for path, reason in errors))
+    return items(f"not read: {Path(path).name}: {reason}" for path, reason in errors)

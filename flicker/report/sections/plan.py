@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from flicker.camera.shutter import exposure_label
-from flicker.report.markup import Markup, element, markup, table
+from flicker.markup import Markup, element, items, markup, table
 from flicker.report.page import section
 from flicker.report.plan import (
     best_words,
@@ -96,5 +96,4 @@ def plan_notes(plan: Plan) -> Markup:
 
 
 def _list(sentences: Iterable[str]) -> Markup | None:
-    items = [element("li", words.replace(" %", "\N{NO-BREAK SPACE}%")) for words in sentences]
-    return element("ul", *items) if items else None
+    return items(words.replace(" %", "\N{NO-BREAK SPACE}%") for words in sentences)

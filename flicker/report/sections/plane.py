@@ -6,11 +6,11 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from flicker.figures import quantity
 from flicker.limits import Curve, risk_curves
 from flicker.limits.region import READING, STANDARD
+from flicker.markup import Markup, element
 from flicker.report.answer import REGION_WORDS, risk
-from flicker.report.figures import quantity
-from flicker.report.markup import Markup, element
 from flicker.report.page import section
 from flicker.report.sections._chart import Chart
 from flicker.report.sections.answer import REGION_SHAPES

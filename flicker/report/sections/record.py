@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from flicker.report.markup import Content, Markup, element, markup, pairs
+from flicker.markup import Content, Markup, element, markup, pairs
 from flicker.report.page import section
 from flicker.report.record import CAUTION, record_entries
 

@@ -7,9 +7,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from flicker.figures import quantity
+from flicker.markup import Markup, element, markup, table
 from flicker.plots.spectrum import envelope
-from flicker.report.figures import quantity
-from flicker.report.markup import Markup, element, markup, table
 from flicker.report.page import section
 from flicker.report.sections._chart import Chart
 

@@ -8,10 +8,10 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from flicker.figures import measure_name, quantity
 from flicker.limits import overall
+from flicker.markup import Markup, element, items, markup, pairs, table
 from flicker.metrics import METRICS
-from flicker.report.figures import measure_name, quantity
-from flicker.report.markup import Markup, element, markup, pairs, table
 from flicker.report.page import section
 from flicker.report.sections._chart import SHAPES, Chart
 from flicker.report.sections.overview import not_read
@@ -51,7 +51,7 @@ def sweep_answer(swept: Sweep) -> Markup:
     courses = [
         markup(
             element("h4", course_title(course)),
-            element("ul", *(element("li", sentence) for sentence in course_sentences(course))),
+            items(course_sentences(course)),
         )
         for course in _worst(swept.courses)
     ]
@@ -113,7 +113,7 @@ def sweep_table(swept: Sweep) -> Markup | None:
     return markup(
         cut,
         table(head, rows, numbers=[place for place, name in enumerate(head) if name in NUMBERS]),
-        element("ul", *(element("li", reason) for reason in reasons)) if reasons else None,
+        items(reasons),
     )
 
 

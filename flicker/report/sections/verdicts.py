@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from flicker.limits import OUTCOMES
-from flicker.report.markup import Markup, element, markup, table
+from flicker.markup import Markup, element, items, markup, table
 from flicker.report.page import section
 from flicker.report.sections._chart import SHAPES
 from flicker.report.verdicts import OUTCOME_WORDS, RULES, bound_words, headline, margin_in_words, value_words
@@ -36,7 +36,7 @@ def verdicts(sheet: ChannelSheet) -> Markup | None:
     head = ("verdict", "limit and clause", "value (95 % interval)", "bound", "margin")
     return markup(
         element("p", headline(found)),
-        element("ul", *(element("li", sentence) for sentence in sheet.advice)) if sheet.advice else None,
+        items(sheet.advice),
         table(head, rows, numbers=(3, 4), kind="stacked"),
         element("p", f"Decision rule, {RULES[found[0].decision]}.", class_="reason"),
     )

@@ -8,15 +8,15 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from flicker.errors import NotMeasurable
+from flicker.figures import quantity
 from flicker.limits.verdict import COVERAGE
-from flicker.report.figures import quantity
-from flicker.report.markup import Markup, element
+from flicker.markup import Markup, element
 from flicker.report.page import section
 from flicker.report.sections._chart import Chart, extent
 
 if TYPE_CHECKING:
-    from flicker.analysis import ChannelReport
     from flicker.report.sheets import ChannelSheet
+    from flicker.reports import ChannelReport
     from flicker.trace import FloatArray, Trace
 
 _CYCLES_SHOWN = 4

@@ -82,6 +82,12 @@ def table(
     return element("div", made, class_=f"wide {kind}".strip(), tabindex=0, role="region", aria_label="table")
 
 
+def items(contents: Iterable[Content]) -> Markup | None:
+    """Make a list with points; None where there is nothing to list."""
+    made = [element("li", one) for one in contents]
+    return element("ul", *made) if made else None
+
+
 def pairs(entries: Iterable[tuple[str, Content]], **attributes: object) -> Markup:
     """Make a list of labels, each with what it stands for."""
     made = [part for label, text in entries for part in (element("dt", label), element("dd", text))]

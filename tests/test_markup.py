@@ -5,7 +5,7 @@ from html.parser import HTMLParser
 from hypothesis import given
 from hypothesis import strategies as st
 
-from flicker.report.markup import Markup, element, markup, pairs, table
+from flicker.markup import Markup, element, markup, pairs, table
 
 
 class Reader(HTMLParser):
