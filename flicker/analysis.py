@@ -20,6 +20,7 @@ from flicker.metrics import Observation, evaluate
 from flicker.reports import CaptureReport, ChannelReport, Report
 from flicker.results import Measure
 from flicker.trace import Capture, Trace
+from flicker.workers import in_threads
 
 _CONDITIONS = ("dark_level", "dark_capture", "mean", "dc_coupled", "inverted", "start", "duration", "coupling_corner")
 
@@ -51,7 +52,8 @@ def read(path: str | Path, **options: Any) -> Capture:
     if isinstance(conditions.get("dark_capture"), str | Path):
         conditions["dark_capture"] = readers.read(conditions["dark_capture"], **options)
     bandwidth = options.pop("detector_bandwidth", None)
-    capture = condition(readers.read(path, **options), **conditions)
+    part = {name: conditions[name] for name in ("start", "duration") if name in conditions}
+    capture = condition(readers.read(path, **options, **part), **conditions)
     if bandwidth is None:
         return capture
     return replace(capture, traces=tuple(undo_detector(trace, bandwidth) for trace in capture.traces))
@@ -84,12 +86,14 @@ def measure(
     InputError
         If no window of that length fits, or it holds too few samples.
     """
+
+    def measured(trace: Trace) -> ChannelReport:
+        return _measure_trace(trace, clock_ppm, dark_uncertainty, window)
+
     return Report(
         tuple(
             CaptureReport(
-                str(capture.path) if capture.path else None,
-                capture,
-                tuple(_measure_trace(trace, clock_ppm, dark_uncertainty, window) for trace in capture.traces),
+                str(capture.path) if capture.path else None, capture, tuple(in_threads(measured, capture.traces))
             )
             for capture in captures
         )

@@ -81,15 +81,17 @@ class CaptureReport:
         if self.capture is None:
             return {"capture": {"path": self.path}, "error": self.error}
         first = self.capture.traces[0]
+        recorded = first.whole or first
         return {
             "capture": {
                 "path": self.path,
                 "kind": self.capture.kind,
                 "sha256": self.capture.sha256,
                 "sample_rate_hz": first.sample_rate,
-                "samples": first.samples,
-                "duration_s": first.duration,
-                "start_s": first.start,
+                "samples": recorded.samples,
+                "duration_s": recorded.duration,
+                "start_s": first.whole.first_part if first.whole else first.start,
+                **({"excerpt": {"start_s": first.start, "duration_s": first.duration}} if first.whole else {}),
                 **self.capture.details,
             },
             "channels": [channel.to_dict() for channel in self.channels],

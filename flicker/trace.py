@@ -17,12 +17,46 @@ from flicker.results import Note
 FloatArray = npt.NDArray[np.float64]
 
 
+def sample_at(moment: float, sample_rate: float, samples: int) -> int:
+    """Give the number of the first of `samples` that is not before a moment [s] after the first one."""
+    return int(min(max(math.ceil(min(moment * sample_rate - 1e-6, 1e18)), 0), samples))
+
+
 @dataclass(frozen=True, slots=True)
 class Segment:
     """A run of evenly spaced samples: index of its first sample, and that sample's time [s]."""
 
     first: int
     start: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Whole:
+    """
+    A recording too long to be kept, of which a trace holds an excerpt.
+
+    It holds slow light, for what the eye sees, and the extremes of each part, for whether the light stayed the same.
+    """
+
+    samples: int  # that were recorded
+    duration: float  # [s]
+    light: npt.NDArray[np.float32]  # readings up to 80 Hz, shape (m,)
+    sample_rate: float  # of `light` [Hz]
+    start: float  # time of its first value [s]
+    lowest: FloatArray  # reading of each part, shape (p,)
+    highest: FloatArray  # shape (p,)
+    mean: FloatArray  # shape (p,)
+    part: float  # length of each part [s]
+    first_part: float  # time at which the first part begins [s]
+
+    def negated(self) -> Whole:
+        """Give the same with all readings negated."""
+        return dataclasses.replace(self, light=-self.light, lowest=-self.highest, highest=-self.lowest, mean=-self.mean)
+
+    def shifted(self, by: float) -> Whole:
+        """Give the same with all readings raised."""
+        raised = {name: getattr(self, name) + by for name in ("lowest", "highest", "mean")}
+        return dataclasses.replace(self, light=self.light + np.float32(by), **raised)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -47,6 +81,7 @@ class Trace:
     mean_known: bool = True  # False: AC coupling has lost the mean level
     exposure: float = 0.0  # time each sample averages over; 0 for a photodiode [s]
     segments: tuple[Segment, ...] = (Segment(0, 0.0),)  # at least one, in order of time
+    whole: Whole | None = None  # of a recording so long that `light` is an excerpt of it
     notes: tuple[Note, ...] = ()  # doubts found so far
     history: tuple[str, ...] = ()  # what was done so far, oldest first
 

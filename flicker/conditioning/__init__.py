@@ -9,9 +9,10 @@ import numpy as np
 
 from flicker.conditioning._coupling import fitted_corner, with_mean, without_droop
 from flicker.conditioning._doubts import with_coupling_judged, with_level_judged
+from flicker.conditioning._excerpt import with_excerpt_judged
 from flicker.conditioning._instrument import with_drift, with_flat_tops, with_resolution
 from flicker.errors import InputError
-from flicker.trace import Capture, Segment, Trace
+from flicker.trace import Capture, Segment, Trace, sample_at
 
 __all__ = ["condition"]
 
@@ -88,7 +89,7 @@ def condition(
         if corner is not None:
             trace = without_droop(trace, corner, fitted=coupling_corner is None)
         trace = with_level_judged(trace, sound, dc_coupled, inverted) if mean is None else with_mean(trace, mean)
-        traces.append(with_drift(with_resolution(trace)))
+        traces.append(with_drift(with_resolution(with_excerpt_judged(trace))))
     return dataclasses.replace(capture, traces=tuple(traces))
 
 
@@ -103,7 +104,7 @@ def _part(trace: Trace, start: float | None, duration: float | None) -> Trace:
     pieces, segments, kept = [], [], 0
     for here, after in zip(trace.segments, (*trace.segments[1:], None), strict=True):
         light = trace.light[here.first : after.first if after else None]
-        first, last = (_index(moment - here.start, trace.sample_rate, len(light)) for moment in (begin, end))
+        first, last = (sample_at(moment - here.start, trace.sample_rate, len(light)) for moment in (begin, end))
         if first < last:
             pieces.append(light[first:last])
             segments.append(Segment(kept, here.start + first / trace.sample_rate))
@@ -115,6 +116,8 @@ def _part(trace: Trace, start: float | None, duration: float | None) -> Trace:
             f"no sample lies in the part asked for, the capture runs from {trace.start:.6g} s to {finish:.6g} s: "
             "check --start and --duration"
         )
+    if kept == trace.samples:
+        return trace
     light = pieces[0] if len(pieces) == 1 else np.concatenate(pieces)
     gone = {"gap", "segments"} if len(segments) == 1 else set()
     if light.max() < trace.light.max() and light.min() > trace.light.min():
@@ -122,11 +125,6 @@ def _part(trace: Trace, start: float | None, duration: float | None) -> Trace:
     notes = tuple(note for note in trace.notes if note.code not in gone)
     done = f"used {kept} of {trace.samples} samples, from {segments[0].start:.6g} s on"
     return trace.replace(light=light, segments=tuple(segments), notes=notes, done=done)
-
-
-def _index(after_start: float, sample_rate: float, samples: int) -> int:
-    """Number of the first sample that is not before a moment."""
-    return int(min(max(math.ceil(min(after_start * sample_rate - 1e-6, 1e18)), 0), samples))
 
 
 def _dark_of(dark: Capture, number: int, capture: Capture) -> float:
@@ -150,4 +148,7 @@ def _dark_of(dark: Capture, number: int, capture: Capture) -> float:
 
 def _negated(trace: Trace) -> Trace:
     dark = None if trace.dark_level is None else -trace.dark_level
-    return trace.replace(light=-trace.light, dark_level=dark, done="negated, as more light reads lower (--inverted)")
+    whole = trace.whole.negated() if trace.whole else None
+    return trace.replace(
+        light=-trace.light, whole=whole, dark_level=dark, done="negated, as more light reads lower (--inverted)"
+    )

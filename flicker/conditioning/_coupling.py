@@ -17,7 +17,8 @@ _MOST_DROOP = 2.0  # in a cycle; more leaves no plateau
 def with_mean(trace: Trace, mean: float) -> Trace:
     """Shift the readings so that their mean above dark is the stated one."""
     shape = Shape.of(trace)
-    light = trace.light - (smooth_mean(trace.light) - mean)
+    by = mean - smooth_mean(trace.light)
+    light, whole = trace.light + by, trace.whole.shifted(by) if trace.whole else None
     note = None
     if not shape.about_zero:
         note = Note(
@@ -28,7 +29,7 @@ def with_mean(trace: Trace, mean: float) -> Trace:
         )
     notes = tuple(one for one in trace.notes if one.code != "ac-coupled") + ((note,) if note else ())
     done = f"mean level above dark set to {with_unit(mean, trace)}, as stated by --mean"
-    return trace.replace(light=light, dark_level=0.0, mean_known=True, notes=notes, done=done)
+    return trace.replace(light=light, whole=whole, dark_level=0.0, mean_known=True, notes=notes, done=done)
 
 
 def without_droop(trace: Trace, corner: float, *, fitted: bool) -> Trace:
@@ -48,7 +49,9 @@ def without_droop(trace: Trace, corner: float, *, fitted: bool) -> Trace:
         restored = coupled + 2 * np.pi * corner / trace.sample_rate * (np.cumsum(coupled) - 0.5 * coupled)
         light[part] = _without_line(restored)
     source = "fitted to the plateaus" if fitted else "as stated"
-    return trace.replace(light=light, done=f"droop of a first-order AC coupling at {corner:.3g} Hz undone ({source})")
+    return trace.replace(
+        light=light, whole=None, done=f"droop of a first-order AC coupling at {corner:.3g} Hz undone ({source})"
+    )
 
 
 def _without_line(light: FloatArray) -> FloatArray:

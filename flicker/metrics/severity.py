@@ -6,6 +6,7 @@ import math
 from itertools import pairwise
 
 import numpy as np
+import numpy.typing as npt
 
 from flicker.errors import NotMeasurable
 from flicker.metrics import Observation, metric
@@ -17,6 +18,7 @@ from flicker.trace import FloatArray, Trace
 _WINDOW = 180.0  # [s]
 _ALMOST = 0.999  # a rate read from time stamps may miss the window by so much
 _SETTLING = 20.0  # dropped where the capture is long enough [s]
+_Floats = npt.NDArray[np.floating]
 _SLOWEST = 1000.0  # [Hz]
 _BLOCKS = 12  # of a window, for its spread
 _QUIET = (45.0, 95.0)  # where the noise is read, beside the lines of the mains [Hz]
@@ -57,13 +59,19 @@ def pst_lm(trace: Trace, observation: Observation) -> Measure:
     end of the interval (two lights together never read more than the sum of what each reads). Light that was sampled
     without a filter against aliases may show a beat that is not there.
     """
-    light, begin = _one_run(trace)
-    felt, rate, mean, noise = _sensation(light, trace.sample_rate, observation.level, float(trace.dark_level or 0.0))
-    windows = _windows(felt.size, rate)
-    series = [severity.severity_of(felt[first:last]) for first, last in windows]
+    light, begin, sampled = _one_run(trace)
+    light, rate = severity.decimated(np.subtract(light, trace.dark_level or 0.0, dtype=light.dtype), sampled)
+    mean = float(light.mean())
+    if not mean > 0:
+        level = f"{observation.level:g}"
+        raise NotMeasurable(f"the mean level is not above dark over the longest stretch, but {level} over all of it")
+    noise = _noise_of(light, mean, rate)
+    windows = _windows(light.size, rate)
+    series = [severity.severity_of(_sensation(light, mean, rate, *window)) for window in windows]
     value = max(series)
     first, last = windows[series.index(value)]
-    half = math.hypot(_half_width(felt[first:last]), 1.96 * value * observation.dark_uncertainty / mean)
+    worst = _half_width(_sensation(light, mean, rate, first, last))
+    half = math.hypot(worst, 1.96 * value * observation.dark_uncertainty / mean)
     low = max(value - half - noise, 0.0)
     method = f"IEC TR 61547-1, {(last - first) / rate:.0f} s at {rate:.0f} Hz; noise alone would read {noise:.2g}"
     if len(series) > 1:
@@ -72,8 +80,10 @@ def pst_lm(trace: Trace, observation: Observation) -> Measure:
     return Measure(value, "1", low, value + half, method, series=along if len(along) > 1 else ())
 
 
-def _one_run(trace: Trace) -> tuple[FloatArray, float]:
-    """Give the longest stretch without a gap and its start [s], if it can carry the measure."""
+def _one_run(trace: Trace) -> tuple[_Floats, float, float]:
+    """Give the longest stretch without a gap, its start [s] and its sample rate [Hz], if it can carry the measure."""
+    if trace.whole is not None and trace.whole.duration >= _ALMOST * _WINDOW:
+        return trace.whole.light, trace.whole.start, trace.whole.sample_rate
     if trace.sample_rate < _SLOWEST:
         raise NotMeasurable(
             f"light up to 80 Hz counts and nothing may fold back into it, and the rate is {trace.sample_rate:.6g} Hz: "
@@ -86,24 +96,24 @@ def _one_run(trace: Trace) -> tuple[FloatArray, float]:
         without = " without a gap" if len(trace.segments) > 1 else ""
         raise NotMeasurable(f"at least 180 s{without} are needed, and the capture has {seconds:.3g} s: record longer")
     begin = next(segment.start for segment in trace.segments if segment.first == first)
-    return trace.light[first:last], begin
+    return trace.light[first:last], begin, trace.sample_rate
 
 
-def _sensation(
-    readings: FloatArray, sample_rate: float, level: float, dark: float
-) -> tuple[FloatArray, float, float, float]:
-    """Sensation over time, its sample rate [Hz], the mean above dark, and the severity that noise alone would read."""
-    light, rate = severity.decimated(readings - dark, sample_rate)
-    mean = float(light.mean())
-    if not mean > 0:
-        raise NotMeasurable(f"the mean level is not above dark over the longest stretch, but {level:g} over all of it")
-    light = light / mean
-    window = np.hanning(light.size)
-    power = np.abs(np.fft.rfft((light - 1.0) * window)) ** 2 / float(np.sum(window**2))
-    quiet = slice(*(int(edge * light.size / rate) for edge in _QUIET))
+def _noise_of(light: _Floats, mean: float, rate: float) -> float:
+    """Severity that the noise alone would read."""
+    heard = light[: round(_WINDOW * rate)] / mean - 1.0
+    window = np.hanning(heard.size)
+    power = np.abs(np.fft.rfft(heard * window)) ** 2 / float(np.sum(window**2))
+    quiet = slice(*(int(edge * heard.size / rate) for edge in _QUIET))
     variance = float(np.median(power[quiet])) / math.log(2.0)
-    noise = _NOISE_SHAPE * math.sqrt(0.5096 * variance * severity.noise_reading(rate))
-    return severity.weighted_sensation(light, rate), rate, mean, noise
+    return _NOISE_SHAPE * math.sqrt(0.5096 * variance * severity.noise_reading(rate))
+
+
+def _sensation(light: _Floats, mean: float, rate: float, first: int, last: int) -> FloatArray:
+    """Sensation in one window, with the light before it for the filters to settle on."""
+    begin = max(first - round(_SETTLING * rate), 0)
+    over_mean = np.divide(light[begin:last], mean, dtype=np.float64)
+    return severity.weighted_sensation(over_mean, rate)[first - begin :]
 
 
 def _windows(samples: int, rate: float) -> list[tuple[int, int]]:

@@ -31,6 +31,8 @@ class ReadOptions:
     time_column: str | None = None  # by name or by number from 1
     channels: tuple[int, ...] = ()  # of a sound file, from 1
     frame_rate: float | None = None  # at which a video was really shot [Hz]
+    start: float | None = None  # of the part that is wanted; a reader may leave out the rest [s]
+    duration: float | None = None  # [s]
     others: Mapping[str, Any] = field(default_factory=dict)
 
 
@@ -84,6 +86,8 @@ def read(
     time_column: str | int | None = None,
     channels: Sequence[int] = (),
     frame_rate: float | None = None,
+    start: float | None = None,
+    duration: float | None = None,
     **others: Any,
 ) -> Capture:
     """
@@ -103,6 +107,8 @@ def read(
         Channels of a sound file, from 1; all if empty.
     frame_rate : float, optional
         Frame rate at which a video was really shot. [Hz]
+    start, duration : float, optional
+        Part that is wanted: of a sound file only that is read. `flicker.conditioning.condition` cuts exactly. [s]
     **others
         What only one reader knows, such as the options for video.
 
@@ -126,6 +132,8 @@ def read(
         None if time_column is None else str(time_column),
         tuple(channels),
         frame_rate,
+        start,
+        duration,
         others,
     )
     mine = next((entry for entry in _in_order() if entry.recognises(head)), None)

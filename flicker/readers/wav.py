@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator, Sequence
 from contextlib import ExitStack, contextmanager
 from dataclasses import dataclass
@@ -14,12 +15,13 @@ import numpy.typing as npt
 from flicker.errors import InputError, UnreadableFileError
 from flicker.readers import ReadOptions, reader
 from flicker.readers._riff import PatchedFile, patches_for
-from flicker.trace import Capture, FloatArray, Trace
+from flicker.trace import Capture, FloatArray, Segment, Trace, Whole, sample_at
 
 if TYPE_CHECKING:
     import soundfile
 
 _BLOCK = 1 << 18  # frames
+_MOST_KEPT = 1 << 25  # samples of all channels together; of longer recordings an excerpt is kept
 _MOST_A_BYTE = 20_000  # frames that the best packing of silence puts into a byte
 _SUBTYPES = {
     "PCM_S8": "8-bit",
@@ -93,6 +95,8 @@ def blocks(
     *,
     channels: Sequence[int] = (),
     frames: int = _BLOCK,
+    first: int = 0,
+    after: int | None = None,
     dtype: Literal["float32", "float64"] = "float64",
 ) -> Iterator[npt.NDArray[Any]]:
     """
@@ -106,6 +110,8 @@ def blocks(
         Channels from 1; all if empty.
     frames : int
         Length of a block; the last one may be shorter.
+    first, after : int
+        Number of the first frame, and of that after the last one; all of the file if left out.
     dtype : {"float64", "float32"}
         Of the blocks; float32 holds up to 24 bits exactly and reads faster.
 
@@ -125,11 +131,13 @@ def blocks(
     with _opened(path) as sound:
         chosen = _chosen(path, channels, sound.channels)
         everything = chosen == list(range(sound.channels))
-        missing = sound.frames
+        if first:
+            sound.seek(first)
+        missing = (sound.frames if after is None else after) - first
         while missing > 0:
             block = sound.read(min(frames, missing), dtype=dtype, always_2d=True)
             if len(block) == 0:
-                raise _cut_short(path, sound.frames, sound.frames - missing)
+                raise _cut_short(path, sound.frames, sound.tell())
             missing -= len(block)
             yield block if everything else block[:, chosen]
 
@@ -156,28 +164,63 @@ def read_wav(path: Path, options: ReadOptions) -> Capture:
             f"{path}: its head promises {known.frames} samples, more than {size} bytes can hold; copy it again"
         )
     chosen = _chosen(path, options.channels, known.channels)
-    light = _all_samples(path, chosen, known)
+    first, after = _part(known, options)
+    long = (after - first) * len(chosen) > _MOST_KEPT
+    found = (_excerpts if long else _all_samples)(path, chosen, known, first, after)
     read_as = f"{known.sample_format} samples, full scale is 1, {known.sample_rate:g} Hz from the file's head"
+    used = (
+        [f"used {after - first} of them, from {first / known.sample_rate:.6g} s on"]
+        if after - first < known.frames
+        else []
+    )
     traces = tuple(
         Trace(
-            readings,
+            light,
             known.sample_rate,
             name=f"channel {number + 1}",
-            history=(f"channel {number + 1} of {known.channels}: {known.frames} {read_as}",),
+            segments=(Segment(0, begin / known.sample_rate),),
+            whole=whole,
+            history=(f"channel {number + 1} of {known.channels}: {known.frames} {read_as}", *used),
         )
-        for number, readings in zip(chosen, light, strict=True)
+        for number, (light, begin, whole) in zip(chosen, found, strict=True)
     )
     return Capture(traces, kind="wav")
 
 
-def _all_samples(path: Path, chosen: list[int], known: SoundFacts) -> list[FloatArray]:
-    light = [np.empty(known.frames) for _ in chosen]
-    first = 0
-    for block in blocks(path, channels=[number + 1 for number in chosen]):
-        after = first + len(block)
+_Found = list[tuple[FloatArray, int, Whole | None]]  # light, number of its first sample, and of what it is an excerpt
+
+
+def _part(known: SoundFacts, options: ReadOptions) -> tuple[int, int]:
+    """Give number of the first frame that is wanted, and of that after the last one; of none that is there, all."""
+    begin = options.start or 0.0
+    end = math.inf if options.duration is None else begin + options.duration
+    first, after = (sample_at(moment, known.sample_rate, known.frames) for moment in (begin, end))
+    return (first, after) if first < after else (0, known.frames)
+
+
+def _all_samples(path: Path, chosen: list[int], known: SoundFacts, first: int, after: int) -> _Found:
+    light = [np.empty(after - first) for _ in chosen]
+    done = 0
+    for block in blocks(path, channels=[number + 1 for number in chosen], first=first, after=after):
         for readings, column in zip(light, block.T, strict=True):
-            readings[first:after] = column
-        first = after
+            readings[done : done + len(block)] = column
+        done += len(block)
     if not all(np.isfinite(readings.sum()) or np.isfinite(readings).all() for readings in light):
-        raise UnreadableFileError(f"{path}: holds samples that are no numbers; record or export it again")
-    return light
+        raise _no_numbers(path)
+    return [(readings, first, None) for readings in light]
+
+
+def _excerpts(path: Path, chosen: list[int], known: SoundFacts, first: int, after: int) -> _Found:
+    from flicker.readers._long import NotFinite, block_frames, read_long
+
+    numbers, rate = [number + 1 for number in chosen], known.sample_rate
+    stream = blocks(path, channels=numbers, frames=block_frames(rate), first=first, after=after, dtype="float32")
+    try:
+        found = read_long(stream, after - first, len(chosen), rate, first / rate)
+    except NotFinite:
+        raise _no_numbers(path) from None
+    return [(one.excerpt, first + one.first, one.whole) for one in found]
+
+
+def _no_numbers(path: Path) -> UnreadableFileError:
+    return UnreadableFileError(f"{path}: holds samples that are no numbers; record or export it again")

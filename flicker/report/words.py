@@ -104,7 +104,10 @@ def _channel_block(
 
 def _recording(channel: ChannelReport) -> str:
     trace = channel.trace
-    words = f"{quantity(trace.duration, 's')} at {quantity(trace.sample_rate, 'Hz')}, {trace.samples} samples"
+    recorded = trace.whole or trace
+    words = f"{quantity(recorded.duration, 's')} at {quantity(trace.sample_rate, 'Hz')}, {recorded.samples} samples"
+    if trace.whole:
+        words += f", {quantity(trace.duration, 's')} of it measured, from {trace.start:.6g} s on"
     if not trace.mean_known:
         return f"{words}; the mean level is lost"
     dark = "zero taken as dark" if trace.dark_level is None else f"dark level {quantity(trace.dark_level, trace.unit)}"

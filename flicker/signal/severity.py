@@ -52,19 +52,33 @@ def decimated(light: FloatArray, sample_rate: float) -> tuple[FloatArray, float]
 
     Notes
     -----
-    Polyphase (`scipy.signal.upfirdn`), Kaiser window for 100 dB (Kaiser 1974; `scipy.signal.kaiserord`). Only what
-    the filter sees whole is given: some milliseconds are lost at both ends.
+    Polyphase (`scipy.signal.upfirdn`) with the filter of `decimation`. Only what the filter sees whole is given: some
+    milliseconds are lost at both ends.
+    """
+    factor, kernel = decimation(sample_rate)
+    if factor < 2:
+        return light, sample_rate
+    from scipy.signal import upfirdn
+
+    lost = -(-kernel.size // factor)
+    return np.asarray(upfirdn(kernel, light, down=factor)[lost : light.size // factor]), sample_rate / factor
+
+
+@cache
+def decimation(sample_rate: float) -> tuple[int, FloatArray]:
+    """
+    Design the decimation: by how much, and the filter before it, shape (t,), symmetric, t odd.
+
+    Kaiser window for 100 dB (Kaiser 1974; `scipy.signal.kaiserord`).
     """
     factor = int(sample_rate // _LOWEST_RATE)
     if factor < 2:
-        return light, sample_rate
-    from scipy.signal import firwin, kaiserord, upfirdn
+        return 1, np.ones(1)
+    from scipy.signal import firwin, kaiserord
 
     rate = sample_rate / factor
     taps, beta = kaiserord(_STOPPED, (rate - 2 * _TOP) / (0.5 * sample_rate))
-    kernel = firwin(taps | 1, 0.5 * rate, window=("kaiser", beta), fs=sample_rate)
-    lost = -(-kernel.size // factor)
-    return np.asarray(upfirdn(kernel, light, down=factor)[lost : light.size // factor]), rate
+    return factor, np.asarray(firwin(taps | 1, 0.5 * rate, window=("kaiser", beta), fs=sample_rate))
 
 
 @cache
@@ -127,8 +141,9 @@ def _lead_in(deviation: FloatArray, sample_rate: float) -> FloatArray:
     """
     Give what may have come before the first sample: the light that led up to the second most like the first one.
 
-    For periodic light that is its own past, in the right phase.
+    For periodic light that is its own past, in the right phase. It is looked for in the first 200 s.
     """
+    deviation = deviation[: int(10 * _LEAD_IN * sample_rate)]
     before, alike = int(_LEAD_IN * sample_rate), int(_ALIKE * sample_rate)
     last = deviation.size - alike
     if last < before:
