@@ -6,7 +6,7 @@ import itertools
 import re
 from collections import Counter
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -73,6 +73,8 @@ class TableShape:
     beside: tuple[bytes, ...]  # cells of columns that hold no numbers, beside the first rows, as lines
     values: Mapping[int, FloatArray]  # numbers of the first rows, by column
     clock: int | None = None  # a column of times of day, from 0
+    units: Mapping[int, str] = field(default_factory=dict)  # of columns whose cells carry them
+    units_beside: tuple[int, ...] = ()  # those of them whose units fill the next column
 
 
 def find_dialect(lines: Sequence[bytes]) -> Dialect | None:

@@ -53,7 +53,7 @@ _READING_UNITS = {
     "cd/m^2": "cd/m²",
     "percent": "%",
 }
-_SYMBOL = re.compile(r"[numkµμ]?(?:V|A|lx|W|cd/m²|W/m²|Ohm|Ω)|%|a\.?u\.?|arb\.?|dB|FS")
+_SYMBOL = re.compile(r"[numkMµμ]?(?:V|A|lx|W|cd/m²|W/m²|Ohm|Ω)|%|a\.?u\.?|arb\.?|dB|FS")
 _INTERVAL = re.compile(
     r"(?:sampl\w*|time|hor\w*|x)?[ _.-]*(?:interval|increment|incr?|step|delta|spacing|resolution)"
     r"|dt|delta[ _]?t|sampl\w* (?:period|time)|hres|x[ _-]?incr?|tstep|t ?sample|period"
@@ -149,6 +149,7 @@ def read_head(shape: TableShape) -> Head:
         _take(head, key, value)
     rows = [cells for cells in (_names_of(line, shape) for line in lines[-4:]) if cells]
     _take_names(head, rows, shape)
+    head.units.update(shape.units)
     return head
 
 

@@ -12,6 +12,7 @@ from flicker.readers._csv_dialect import TableShape
 from flicker.readers._csv_numbers import Bytes, Integers
 from flicker.readers._csv_rows import LINE_END, Kinds, Line, RowReader
 from flicker.readers._csv_text import TextFile, as_words
+from flicker.readers._csv_units import UnitReader
 from flicker.trace import FloatArray
 
 _TOLERATED = 0.05  # share of damaged rows
@@ -104,7 +105,7 @@ def read_table(text: TextFile, shape: TableShape, wanted: tuple[int, ...]) -> Ta
     UnreadableFileError
         If there is no row, or many cannot be read.
     """
-    reader = RowReader(shape.dialect, wanted, shape.clock)
+    reader = UnitReader(shape, wanted) if shape.units else RowReader(shape.dialect, wanted, shape.clock)
     table, remarks = Table(), _Remarks()
     columns: _Columns | None = None
     skip = lines = len(shape.head)

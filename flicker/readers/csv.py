@@ -8,7 +8,7 @@ from pathlib import Path
 
 import numpy as np
 
-from flicker.errors import InputError, UnreadableFileError
+from flicker.errors import FlickerError, InputError, UnreadableFileError
 from flicker.readers import HEAD, ReadOptions, reader
 from flicker.readers._csv_clock import past_midnight
 from flicker.readers._csv_dialect import TableShape, find_shape
@@ -16,6 +16,7 @@ from flicker.readers._csv_head import Head, is_time_unit, read_head
 from flicker.readers._csv_numbers import OVERLOAD
 from flicker.readers._csv_table import Table, read_table
 from flicker.readers._csv_text import TextFile, is_text
+from flicker.readers._csv_units import OddUnit, find_shape_with_units, is_no_light, strange_cell
 from flicker.readers._timebase import Evenly, evenly, longest_part
 from flicker.registry import did_you_mean
 from flicker.results import DEPTH_MEASURES, Note
@@ -41,9 +42,12 @@ def read_csv(path: Path, options: ReadOptions) -> Capture:
         text = TextFile.opened(path, file.read(HEAD))
     shape = _shape(text, options)
     head = read_head(shape)
-    columns = _Columns.chosen(path, shape, head, options)
-    table = read_table(text, shape, columns.every)
-    return Capture(_traces(path, table, shape, head, columns, options), kind="csv")
+    try:
+        columns = _Columns.chosen(path, shape, head, options)
+        table = read_table(text, shape, columns.every)
+        return Capture(_traces(path, table, shape, head, columns, options), kind="csv")
+    except _Lacking as lacking:
+        raise _explained(text, lacking.error) from None
 
 
 def _shape(text: TextFile, options: ReadOptions) -> TableShape:
@@ -54,11 +58,32 @@ def _shape(text: TextFile, options: ReadOptions) -> TableShape:
         later = [*text.sample(size // 2, _LATER_LINES), *text.sample(size - _LATER_LINES, _LATER_LINES)]
     wanted = [int(one) - 1 for one in (*options.columns, options.time_column or "") if one.isdecimal() and int(one) > 0]
     shape = find_shape(first, later, wanted)
+    try:
+        shape = find_shape_with_units(first, later, wanted, shape)
+    except OddUnit as error:
+        raise UnreadableFileError(f"{text.path}: {error}") from error
     if shape is None:
-        raise UnreadableFileError(
-            f"{text.path}: no table of numbers is in it; export the capture as rows of time and reading"
+        raise _explained(
+            text,
+            UnreadableFileError(
+                f"{text.path}: no table of numbers is in it; export the capture as rows of time and reading"
+            ),
         )
     return shape
+
+
+class _Lacking(Exception):
+    """Times or readings were not found."""
+
+    def __init__(self, error: FlickerError) -> None:
+        super().__init__(error)
+        self.error = error
+
+
+def _explained(text: TextFile, error: FlickerError) -> FlickerError:
+    """Blame units that are not known, if cells carry some, for what was not found."""
+    why = strange_cell(text.sample(text.begin, _LATER_LINES))
+    return UnreadableFileError(f"{text.path}: {why}") if why else error
 
 
 # which column is what
@@ -95,13 +120,28 @@ class _Columns:
         if not readings and index is not None and time is None:
             readings, index = (index,), None
         if not readings:
-            raise UnreadableFileError(f"{path}: holds times but no column of readings; export the light as well")
+            raise _Lacking(
+                UnreadableFileError(f"{path}: holds times but no column of readings; export the light as well")
+            )
+        readings = _light(path, readings, head, chosen=bool(named))
         if not named and len(readings) > _MOST_CHANNELS > len(shape.values[readings[0]]):
             raise InputError(
                 f"{path}: has {len(readings)} columns of numbers in few rows; export a row for every sample, or choose "
                 "columns with --column"
             )
         return cls(time, tuple(column for column in dict.fromkeys(readings) if column != time), index)
+
+
+def _light(path: Path, readings: tuple[int, ...], head: Head, *, chosen: bool) -> tuple[int, ...]:
+    """Leave out columns whose unit is none of light."""
+    kept = tuple(column for column in readings if not is_no_light(head.units.get(column, "")))
+    if kept and (len(kept) == len(readings) or not chosen):
+        return kept
+    column = next(column for column in readings if column not in kept)
+    raise UnreadableFileError(
+        f"{path}: column {column + 1} is in {head.units[column]}, which does not grow in proportion to light; export "
+        "the sensor's voltage or current"
+    )
 
 
 def _named(path: Path, wanted: str, option: str, shape: TableShape, head: Head) -> int:
@@ -172,7 +212,9 @@ def _traces(
         )
     else:
         base = _counted(path, table, head, columns, options, notes)
-    common = (f"a table with {shape.dialect}", *_remarks(table), *base.history)
+    united = ", ".join(str(column + 1) for column in sorted(shape.units))
+    in_cells = [f"units stand in the cells of column{'s' * (len(shape.units) > 1)} {united}"] if united else []
+    common = (f"a table with {shape.dialect}", *in_cells, *_remarks(table), *base.history)
     traces = []
     for column, light, overload in zip(columns.readings, base.readings, overloads, strict=True):
         name = head.names.get(column, "") or (f"column {column + 1}" if len(columns.readings) > 1 else "light")
@@ -270,7 +312,9 @@ def _counted(
         source = f"from first and last time in the head ('{head.last.words}')"
     else:
         counts = f"column {columns.index + 1} only counts the rows, and " if columns.index is not None else ""
-        raise InputError(f"{path}: {counts}neither a time column nor a sample rate is in it; state --sample-rate")
+        raise _Lacking(
+            InputError(f"{path}: {counts}neither a time column nor a sample rate is in it; state --sample-rate")
+        )
     if table.breaks:
         readings = longest_part(table.columns, table.breaks, notes)
         base = evenly(start + np.arange(len(readings[0])) / rate, readings, rate)
