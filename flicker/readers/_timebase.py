@@ -64,6 +64,8 @@ def evenly(
         return Evenly(readings, stated_rate, (Segment(0, float(times[0])),), notes, history)
     resolution = _resolution(times)
     times, readings, step, first = _parts(times, readings, resolution, notes)
+    if step <= 0:
+        raise InputError("most rows share their time with others; export the times with more digits")
     deviation = max(_deviation(times[a:b], step) for a, b in _ranges(first, len(times)))
     if deviation > max(0.1 * step, 1.05 * resolution):
         return _resampled(times, readings, step, first, deviation, notes, history)

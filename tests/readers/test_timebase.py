@@ -7,6 +7,7 @@ import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
+from flicker.errors import InputError
 from flicker.readers._timebase import evenly
 
 RATES = st.floats(1.5, 7.5).map(lambda power: 10.0**power)
@@ -90,3 +91,9 @@ def test_a_rate_stated_by_the_user_stretches_the_times():
     assert even.sample_rate == 2000.0
     assert even.segments[1].start == pytest.approx(0.1)
     assert "rate-disagrees" in [note.code for note in even.notes]
+
+
+def test_times_that_stand_still_and_leap_are_refused():
+    times = np.repeat([0.0, 0.5, 7.0, 9.2], 100)
+    with pytest.raises(InputError, match="most rows share their time with others"):
+        evenly(times, [np.ones(400)], None)
