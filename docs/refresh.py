@@ -163,8 +163,9 @@ def draw_pictures() -> None:
     from flicker.camera import Camera
     from flicker.camera.answer import predict_all
     from flicker.light import pwm_light
-    from flicker.plots.frame import save_frames
+    from flicker.plots.frame import draw_exposures, save_frames
     from flicker.plots.pictures import write_pictures
+    from flicker.plots.style import save_figure
 
     name = "bridge-display-night"
     report = flicker.measure(flicker.read(ROOT / "fixtures" / f"{name}.csv", dark_level=0.012))
@@ -172,6 +173,8 @@ def draw_pictures() -> None:
     light = pwm_light(frequency=240.0, duty=0.3, decay=(8.5e-3, 0.0, 0.0))
     camera = Camera.load(ROOT / "fixtures" / "dock-camera.toml")
     save_frames(predict_all(light, camera, exposures=(1 / 100,)), ROOT / "docs" / "pictures")
+    night = predict_all(report.light, camera, exposures=(1 / 50, 1 / 60, 1 / 250))
+    save_figure(draw_exposures(night), ROOT / "docs" / "pictures" / "night-on-the-dock-camera.png")
 
 
 def main(arguments: list[str]) -> int:
