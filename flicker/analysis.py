@@ -13,6 +13,7 @@ from flicker.along import measure_along
 from flicker.conditioning import condition
 from flicker.conditioning.detector import undo_detector
 from flicker.conditioning.frames import ALIASING, aliasing, exposure_undone
+from flicker.doubts import doubts
 from flicker.errors import InputError
 from flicker.light import Light
 from flicker.limits import Conditions, Limit, chosen_limits, judge, risk_region
@@ -114,7 +115,7 @@ def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float, wind
         families = tuple(replace(family, percent_flicker=Measure.missing("%", reason)) for family in families)
     seen = measures["fundamental_frequency"].value
     measures = _with_exposure_undone(observation, measures)
-    notes = trace.notes
+    notes = trace.notes + doubts(observation)
     if seen is not None and any(note.code == ALIASING for note in notes):
         doubt = aliasing(seen, trace.sample_rate)
         notes = tuple(doubt if note.code == ALIASING else note for note in notes)

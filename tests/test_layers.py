@@ -20,7 +20,7 @@ FLOORS = (
     ("sweep",),
     ("tunable", "validation"),
     ("analysis",),
-    ("filmed", "reports", "aliases"),
+    ("filmed", "reports", "aliases", "doubts"),
     ("along",),
     ("readers", "camera", "limits", "metrics", "conditioning"),
     ("signal",),

@@ -1,4 +1,4 @@
-"""The page on captures lists the notes of the readers and of conditioning, all and no others."""
+"""The page on captures lists the notes of the readers, of conditioning and of measuring, all and no others."""
 
 import ast
 import re
@@ -18,6 +18,7 @@ def codes_in(file):
 
 def test_every_note_is_explained():
     readers = [file for file in (PACKAGE / "readers").glob("*.py") if "video" not in file.name]
-    in_code = {code for file in [*readers, *(PACKAGE / "conditioning").glob("*.py")] for code in codes_in(file)}
+    others = [*(PACKAGE / "conditioning").glob("*.py"), PACKAGE / "doubts.py"]
+    in_code = {code for file in [*readers, *others] for code in codes_in(file)}
     explained = set(re.findall(r"^\| `([a-z-]+)` \|", PAGE.read_text(encoding="utf-8"), re.MULTILINE))
     assert explained == in_code
