@@ -76,7 +76,7 @@ def find_pauses(series: Series, fit: HarmonicFit) -> Pauses | None:
 def _noise(series: Series) -> float:
     """Standard deviation of the noise, from neighbouring samples, which light between its edges hardly moves."""
     steps = np.abs(np.diff(series.values[:_ENOUGH]))
-    return float(np.median(steps)) / (0.6745 * 2.0**0.5)
+    return float(np.median(steps) / (0.6745 * np.sqrt(2.0)))
 
 
 def _quietest(fit: HarmonicFit) -> float:
