@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import io
 import struct
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
@@ -39,23 +40,31 @@ class PatchedFile(io.FileIO):
         return bytes(buffer[: self.readinto(buffer)])
 
 
-def patches_for(path: Path) -> dict[int, bytes]:
+@dataclass(frozen=True, slots=True)
+class Head:
+    """What must be changed in the head of a sound file to make it true, and how much of the file is there."""
+
+    patches: dict[int, bytes] = field(default_factory=dict)  # by offset
+    share: float = 1.0  # of the bytes that the head promises; less than 1 if the file was cut short
+
+
+def inspect(path: Path) -> Head:
     """
-    Give what must be changed in a WAV head to make it true, by offset; nothing for a sound one and for other files.
+    Look at the head of a sound file.
 
     Raises
     ------
     UnreadableFileError
-        If the head promises more samples than there are: the file was cut short.
+        If the file ends before its samples begin.
     """
     total = path.stat().st_size
     with path.open("rb") as file:
         form = file.read(12)
         if form[:4] not in _WAVES or form[8:] != b"WAVE":
+            if form[:4] == b"caff":
+                return _core_audio(path, file, total)
             promised = _promised(form + file.read(12))
-            if promised > total:
-                raise _cut_short(path, promised, total)
-            return {}
+            return Head(share=total / promised if promised > total else 1.0)
         patches = {0: b"RF64"} if form[:4] == b"BW64" else {}
         long_size, long_place = None, 0
         offset = 12
@@ -65,26 +74,45 @@ def patches_for(path: Path) -> dict[int, bytes]:
                 body = file.read(16)
                 long_size, long_place = struct.unpack("<Q", body[8:])[0] if len(body) == 16 else None, offset + 16
             if head[:4] == b"data":
-                return patches | _data_patch(path, file, offset, size, long_size, long_place, total)
+                return _wave(patches, file, offset, size, long_size, long_place, total)
             offset += 8 + size + size % 2
             if offset >= total:
                 break
             file.seek(offset)
-    raise UnreadableFileError(f"{path}: ends before its samples begin; copy or record it again")
+    raise _too_short(path)
 
 
-def _data_patch(
-    path: Path, file: Any, offset: int, size: int, long_size: int | None, long_place: int, total: int
-) -> dict[int, bytes]:
+def _wave(
+    patches: dict[int, bytes], file: Any, offset: int, size: int, long_size: int | None, long_place: int, total: int
+) -> Head:
     available = total - offset - 8
     promised = long_size if long_size is not None and size == _UNKNOWN else size
     if promised == 0 and available and not _is_chunk(file.read(8), available):
         if long_size is not None:
-            return {long_place: struct.pack("<Q", available)}
-        return {offset + 4: struct.pack("<I", min(available, _UNKNOWN))}
-    if promised > available and promised != _UNKNOWN:
-        raise _cut_short(path, promised, available)
-    return {}
+            return Head(patches | {long_place: struct.pack("<Q", available)})
+        return Head(patches | {offset + 4: struct.pack("<I", min(available, _UNKNOWN))})
+    cut = promised > available and promised != _UNKNOWN
+    return Head(patches, available / promised if cut else 1.0)
+
+
+def _core_audio(path: Path, file: Any, total: int) -> Head:
+    """Make the size of the samples in a CAF true: the sound library refuses one that is too large."""
+    offset = 8
+    while offset < total:
+        file.seek(offset)
+        head = file.read(12)
+        if len(head) < 12:
+            break
+        size = struct.unpack(">q", head[4:])[0]
+        available = total - offset - 12
+        if head[:4] == b"data":
+            if size <= available:
+                return Head()
+            return Head({offset + 4: struct.pack(">q", available)}, available / size)
+        if size < 0:
+            break
+        offset += 12 + size
+    raise _too_short(path)
 
 
 def _promised(head: bytes) -> int:
@@ -99,8 +127,8 @@ def _promised(head: bytes) -> int:
     return 0
 
 
-def _cut_short(path: Path, promised: int, found: int) -> UnreadableFileError:
-    return UnreadableFileError(f"{path}: its head promises {promised} bytes, but it ends after {found}; copy it again")
+def _too_short(path: Path) -> UnreadableFileError:
+    return UnreadableFileError(f"{path}: ends before its samples begin; copy or record it again")
 
 
 def _is_chunk(head: bytes, available: int) -> bool:

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Sequence
-from contextlib import ExitStack, contextmanager
-from dataclasses import dataclass
+from contextlib import ExitStack, contextmanager, suppress
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Literal
 
@@ -14,7 +14,8 @@ import numpy.typing as npt
 
 from flicker.errors import InputError, UnreadableFileError
 from flicker.readers import ReadOptions, reader
-from flicker.readers._riff import PatchedFile, patches_for
+from flicker.readers._riff import PatchedFile, inspect
+from flicker.results import Note
 from flicker.trace import Capture, FloatArray, Segment, Trace, Whole, sample_at
 
 if TYPE_CHECKING:
@@ -23,6 +24,7 @@ if TYPE_CHECKING:
 _BLOCK = 1 << 18  # frames
 _MOST_KEPT = 1 << 25  # samples of all channels together; of longer recordings an excerpt is kept
 _MOST_A_BYTE = 20_000  # frames that the best packing of silence puts into a byte
+_UNSTATED = 1 << 62  # frames of a FLAC whose head was never finished
 _SUBTYPES = {
     "PCM_S8": "8-bit",
     "PCM_U8": "8-bit",
@@ -58,15 +60,16 @@ class SoundFacts:
 def _opened(path: Path) -> Iterator[soundfile.SoundFile]:
     import soundfile
 
-    patches = patches_for(path)
+    patches = inspect(path).patches
     try:
         with ExitStack() as opened:
             source = opened.enter_context(PatchedFile(path, patches)) if patches else str(path)
             yield opened.enter_context(soundfile.SoundFile(source))
     except soundfile.LibsndfileError as error:
-        reason = str(error.error_string).strip().rstrip(".")
+        reason = str(error.error_string).removeprefix("Error : ").strip().rstrip(".")
         raise UnreadableFileError(
-            f"{path}: is no sound file that can be read ({reason}); record or copy it again"
+            f"{path}: is no sound file that can be read: damaged, cut short or of an unknown kind ({reason}); copy it "
+            "again, or export it as WAV"
         ) from error
 
 
@@ -158,15 +161,18 @@ def read_wav(path: Path, options: ReadOptions) -> Capture:
     known = facts(path)
     if known.frames == 0:
         raise UnreadableFileError(f"{path}: holds no samples; record it again")
-    size = path.stat().st_size
-    if known.frames > _MOST_A_BYTE * size:
-        raise UnreadableFileError(
-            f"{path}: its head promises {known.frames} samples, more than {size} bytes can hold; copy it again"
-        )
     chosen = _chosen(path, options.channels, known.channels)
-    first, after = _part(known, options)
-    long = (after - first) * len(chosen) > _MOST_KEPT
-    found = (_excerpts if long else _all_samples)(path, chosen, known, first, after)
+    share = inspect(path).share
+    if known.frames > _MOST_A_BYTE * path.stat().st_size:
+        known, share = _readable(path, known)
+    try:
+        first, after, found = _samples(path, chosen, known, options)
+    except UnreadableFileError:
+        shorter, share = _readable(path, known)
+        if shorter.frames == known.frames:
+            raise
+        known = shorter
+        first, after, found = _samples(path, chosen, known, options)
     read_as = f"{known.sample_format} samples, full scale is 1, {known.sample_rate:g} Hz from the file's head"
     used = (
         [f"used {after - first} of them, from {first / known.sample_rate:.6g} s on"]
@@ -179,12 +185,46 @@ def read_wav(path: Path, options: ReadOptions) -> Capture:
             known.sample_rate,
             name=f"channel {number + 1}",
             segments=(Segment(0, begin / known.sample_rate),),
+            notes=() if share == 1 else (_cut(known, share),),
             whole=whole,
             history=(f"channel {number + 1} of {known.channels}: {known.frames} {read_as}", *used),
         )
         for number, (light, begin, whole) in zip(chosen, found, strict=True)
     )
     return Capture(traces, kind="wav")
+
+
+def _readable(path: Path, known: SoundFacts) -> tuple[SoundFacts, float]:
+    """Go through a file whose head or samples are damaged; give what can be read, and the share that it is."""
+    frames, step = 0, _BLOCK
+    while step:
+        frames = _read_on(path, frames, step)
+        step //= 8
+    if frames == 0:
+        raise UnreadableFileError(
+            f"{path}: is damaged or cut short, and none of its samples can be read; copy it again, or export it as WAV"
+        )
+    return replace(known, frames=frames), frames / known.frames if known.frames < _UNSTATED else 1.0
+
+
+def _read_on(path: Path, frames: int, step: int) -> int:
+    """Read step by step from a frame on, as far as the sound library comes; give the frame where it fails."""
+    import soundfile
+
+    with _opened(path) as sound, suppress(soundfile.LibsndfileError):
+        sound.seek(frames)
+        while length := len(sound.read(step, dtype="float32")):
+            frames += length
+    return frames
+
+
+def _cut(known: SoundFacts, share: float) -> Note:
+    return Note(
+        "cut-short",
+        "warning",
+        f"the file is cut short or damaged: only its first {known.frames / known.sample_rate:.4g} s, "
+        f"{100 * share:.3g} % of what its head promises, could be read; copy it again, or export it as WAV",
+    )
 
 
 _Found = list[tuple[FloatArray, int, Whole | None]]  # light, number of its first sample, and of what it is an excerpt
@@ -196,6 +236,13 @@ def _part(known: SoundFacts, options: ReadOptions) -> tuple[int, int]:
     end = math.inf if options.duration is None else begin + options.duration
     first, after = (sample_at(moment, known.sample_rate, known.frames) for moment in (begin, end))
     return (first, after) if first < after else (0, known.frames)
+
+
+def _samples(path: Path, chosen: list[int], known: SoundFacts, options: ReadOptions) -> tuple[int, int, _Found]:
+    """Read the wanted part; give its first frame too, and the one after its last."""
+    first, after = _part(known, options)
+    long = (after - first) * len(chosen) > _MOST_KEPT
+    return first, after, (_excerpts if long else _all_samples)(path, chosen, known, first, after)
 
 
 def _all_samples(path: Path, chosen: list[int], known: SoundFacts, first: int, after: int) -> _Found:

@@ -1,5 +1,6 @@
 """Sound files: every sample format, heads that recorders leave unfinished, and files cut short."""
 
+import re
 import struct
 
 import numpy as np
@@ -103,20 +104,99 @@ def test_other_sound_files_are_told_by_their_content(tmp_path, kind):
     assert trace.light == pytest.approx(LIGHT, abs=1e-4)
 
 
-@pytest.mark.parametrize("kind", ["FLAC", "AIFF", "W64", "AU", "RF64"])
-def test_other_sound_files_cut_short_are_refused(tmp_path, kind):
+NOISE = np.round(np.random.default_rng(1).normal(0, 0.1, 40_000) * 2**15) / 2**15
+KINDS = ["FLAC", "AIFF", "CAF", "W64", "AU", "RF64", "WAV"]
+
+
+def encoded(path, kind):
+    soundfile.write(path, NOISE, RATE, format=kind, subtype="PCM_16")
+    return path.read_bytes()
+
+
+def assert_first_part(path, at_least, at_most, tolerance=0.1):
+    (trace,) = read(path).traces
+    assert at_least <= trace.samples <= at_most
+    assert np.array_equal(trace.light, NOISE[: trace.samples])
+    (note,) = trace.notes
+    assert note.code == "cut-short"
+    stated = float(re.search(r"s, (\S+) % of", note.message)[1])
+    assert stated == pytest.approx(100 * trace.samples / len(NOISE), abs=tolerance)
+    assert f"only its first {trace.samples / RATE:.4g} s, " in note.message
+    assert f"{trace.samples} 16-bit samples" in trace.history[0]
+
+
+@pytest.mark.parametrize("kind", KINDS)
+@pytest.mark.parametrize("share", [0.3, 0.6, 0.95])
+def test_of_a_file_cut_short_the_first_part_is_read_and_a_note_says_so(tmp_path, kind, share):
     path = tmp_path / "night.wav"
-    noise = np.random.default_rng(1).normal(0, 0.1, 20_000)
-    soundfile.write(path, noise, RATE, format=kind, subtype="PCM_16")
-    path.write_bytes(path.read_bytes()[:-20_000])
-    with pytest.raises(UnreadableFileError, match="copy it again"):
+    whole = encoded(path, kind)
+    path.write_bytes(whole[: int(share * len(whole)) // 2 * 2 + 1])
+    lost = 8192 if kind == "FLAC" else 2100  # two blocks of 4096; a CAF has 4096 bytes in front of its samples
+    assert_first_part(path, share * len(NOISE) - lost, share * len(NOISE))
+
+
+@pytest.mark.parametrize("damage", ["bytes changed", "bytes lost", "bytes blanked", "length overstated"])
+def test_of_a_damaged_flac_the_part_before_the_damage_is_read(tmp_path, damage):
+    path = tmp_path / "night.flac"
+    whole = encoded(path, "FLAC")
+    middle = len(whole) // 2
+    path.write_bytes(
+        {
+            "bytes changed": whole[:middle] + bytes(byte ^ 90 for byte in whole[middle:]),
+            "bytes lost": whole[:middle] + whole[middle + 3001 :],
+            "bytes blanked": whole[:middle] + bytes(9000) + whole[middle + 9000 :],
+            "length overstated": whole[:22] + struct.pack(">I", 2 * len(NOISE)) + whole[26:],  # STREAMINFO
+        }[damage]
+    )
+    if damage == "length overstated":
+        (trace,) = read(path).traces
+        assert np.array_equal(trace.light, NOISE[:-1])  # the sound library cannot go behind the last one
+        assert "50 % of what its head promises" in trace.notes[0].message
+    else:
+        assert_first_part(path, 12_000, 20_000)
+
+
+def test_a_flac_whose_head_was_never_finished_is_read_whole(tmp_path):
+    path = tmp_path / "night.flac"
+    whole = encoded(path, "FLAC")
+    # total samples: 0 means unknown, RFC 9639, section 8.2 (from memory)
+    path.write_bytes(whole[:22] + bytes(4) + whole[26:])
+    (trace,) = read(path).traces
+    assert np.array_equal(trace.light, NOISE[:-1])
+    assert not trace.notes
+
+
+@pytest.mark.parametrize("kind", KINDS)
+@pytest.mark.parametrize("length", [16, 20, 30])
+def test_of_a_file_cut_in_its_head_nothing_is_read(tmp_path, kind, length):
+    path = tmp_path / "night.wav"
+    path.write_bytes(encoded(path, kind)[: min(length, 24 if kind == "AU" else length)])
+    with pytest.raises(UnreadableFileError, match=r"copy (it|or record it) again|no samples|of no kind") as caught:
         read(path)
+    assert str(path) in str(caught.value)
+    assert "\n" not in str(caught.value)
+
+
+def test_of_a_flac_cut_in_its_first_block_nothing_is_read(tmp_path):
+    path = tmp_path / "night.flac"
+    path.write_bytes(encoded(path, "FLAC")[:5000])
+    with pytest.raises(
+        UnreadableFileError, match="none of its samples can be read; copy it again, or export it as WAV"
+    ):
+        read(path)
+
+
+@pytest.mark.parametrize("lost", [1, 2, 701])
+def test_a_wav_file_cut_short_is_read_as_far_as_it_goes(tmp_path, lost):
+    path = tmp_path / "night.wav"
+    path.write_bytes(WHOLE[:-lost])
+    (trace,) = read(path).traces
+    assert trace.light == pytest.approx(LIGHT[: COUNT - (lost + 1) // 2], abs=1e-9)
+    assert [note.code for note in trace.notes] == ["cut-short"]
 
 
 WHOLE = HEALTHY["16-bit"]
 BROKEN = {
-    "half the samples": (WHOLE[:-700], "promises 2002 bytes"),
-    "one byte": (WHOLE[:-1], "promises 2002 bytes"),
     "half the head": (WHOLE[:30], "ends before its samples"),
     "no samples": (riff(form(1, 16), chunk(b"data", b"")), "holds no samples"),
     "no data": (riff(form(1, 16)), "ends before its samples"),
