@@ -17,6 +17,10 @@ import subprocess
 import sys
 from collections.abc import Callable, Iterable
 from pathlib import Path
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from flicker.sweep.course import Course
 
 ROOT = Path(__file__).resolve().parent.parent
 PAGES = [ROOT / "README.md", ROOT / "DEVELOPERS.md", *sorted((ROOT / "docs").rglob("*.md"))]
@@ -166,6 +170,7 @@ def draw_pictures() -> None:
     from flicker.plots.frame import draw_exposures, save_frames
     from flicker.plots.pictures import write_pictures
     from flicker.plots.style import save_figure
+    from flicker.plots.sweep import draw_sweep
 
     name = "bridge-display-night"
     report = flicker.measure(flicker.read(ROOT / "fixtures" / f"{name}.csv", dark_level=0.012))
@@ -175,6 +180,22 @@ def draw_pictures() -> None:
     save_frames(predict_all(light, camera, exposures=(1 / 100,)), ROOT / "docs" / "pictures")
     night = predict_all(report.light, camera, exposures=(1 / 50, 1 / 60, 1 / 250))
     save_figure(draw_exposures(night), ROOT / "docs" / "pictures" / "night-on-the-dock-camera.png")
+    save_figure(draw_sweep(display_sweep()), ROOT / "docs" / "pictures" / "sweep-display-1.png")
+
+
+def display_sweep() -> Course:
+    """Give the display at its three levels, held against the low-risk practice."""
+    from flicker.limits import chosen_limits
+    from flicker.sweep.batch import Task, judge_capture
+    from flicker.sweep.course import courses, points_of
+    from flicker.sweep.manifest import Step
+
+    levels = {"day": 100, "dusk": 45, "night": 5}
+    steps = [Step(str(ROOT / "fixtures" / f"bridge-display-{name}.csv"), "display 1", level, dark_level=0.012)
+             for name, level in levels.items()]  # fmt: skip
+    task = Task(chosen_limits(["ieee1789-low-risk"]))
+    (course,) = courses([point for step in steps for point in points_of(judge_capture(step, task))])
+    return course
 
 
 def main(arguments: list[str]) -> int:
