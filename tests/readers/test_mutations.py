@@ -5,6 +5,7 @@ A few hundred in the default run; `FLICKER_MUTATIONS=20000 pytest tests/readers/
 """
 
 import io
+import json
 import math
 import os
 import time
@@ -12,7 +13,9 @@ import time
 import numpy as np
 import pytest
 import soundfile
+from click.testing import CliRunner
 
+from flicker.cli import program
 from flicker.conditioning import condition
 from flicker.errors import FlickerError
 from flicker.readers import read
@@ -44,11 +47,20 @@ ORIGINALS = [
     table('"Time (s)","a","b"\n', '"{t:.4f}","{y:.3f}","OL"\n').encode("utf-8-sig"),
     table("t y\n", "{t:12.4f} {y:12.5f}\n").encode(),
     table("Record Length,400,,0,0,\n", ",,,{t:015.9f},{y:10.4f},\n").encode(),
+    table("time,light\n", "{t:.4f} s,{y:.4f} V\n").encode(),
+    "".join(
+        f"{t * 1e3:.1f} ms;{y:.3f} V\n" if y > 1 else f"{t * 1e6:.0f} us;{y * 1e3:.0f} mV\n"
+        for t, y in zip(TIMES, LIGHT, strict=True)
+    ).encode(),
+    table("", "{t:.4f},s,{y:.4f},V\n").encode(),
     sound("WAV", "PCM_16"),
     sound("WAV", "FLOAT"),
     sound("RF64", "PCM_24"),
     sound("FLAC", "PCM_16"),
     sound("AIFF", "PCM_16"),
+    sound("CAF", "PCM_24"),
+    sound("W64", "FLOAT"),
+    sound("AU", "PCM_16"),
 ]
 
 
@@ -124,3 +136,24 @@ def test_damaged_files_read_or_are_refused_in_a_sentence(tmp_path, share):
                 assert all("\n" not in note.message and "nan" not in note.message for note in trace.notes), seed
         assert time.monotonic() - began < SLOWEST, seed
     assert read_well > 0.1 * COUNT / SHARES
+
+
+def test_the_command_leaves_status_0_or_2_and_numbers_in_its_json(tmp_path):
+    path = tmp_path / "damaged"
+    measured = 0
+    for seed in range(3, COUNT, max(COUNT // 50, 8)):
+        rng = np.random.default_rng(seed)
+        path.write_bytes(mutated(rng))
+        began = time.monotonic()
+        dark = ["--dark-level", "0"] if rng.random() < 0.5 else []
+        done = CliRunner().invoke(program, ["measure", str(path), "--json", "-", "--quiet", *dark])
+        assert time.monotonic() - began < SLOWEST * 2, seed
+        assert done.exit_code in (0, 2), (seed, done.exception)
+        assert "Traceback" not in done.stderr, seed
+        if done.exit_code == 2:
+            assert done.stderr.startswith("flicker: "), seed
+            assert done.stderr.count("\n") <= 3, (seed, done.stderr)
+            continue
+        measured += 1
+        json.loads(done.stdout, parse_constant=lambda word: pytest.fail(f"seed {seed}: {word} in JSON"))
+    assert measured > 5
