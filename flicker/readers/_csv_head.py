@@ -44,16 +44,18 @@ _READING_UNITS = {
     "amp": "A",
     "amps": "A",
     "lux": "lx",
+    "klux": "klx",
+    "fc": "fc",
+    "footcandle": "fc",
+    "footcandles": "fc",
     "counts": "counts",
     "count": "counts",
     "adu": "counts",
     "nit": "cd/m²",
     "nits": "cd/m²",
-    "cd/m2": "cd/m²",
-    "cd/m^2": "cd/m²",
     "percent": "%",
 }
-_SYMBOL = re.compile(r"[numkMµμ]?(?:V|A|lx|W|cd/m²|W/m²|Ohm|Ω)|%|a\.?u\.?|arb\.?|dB|FS")
+_SYMBOL = re.compile(r"[numkMµμ]?(?:V|A|lx|lm|W|cd|cd/m²|W/m²|W/cm²|Ohm|Ω)|%|a\.?u\.?|arb\.?|dB|FS")
 _INTERVAL = re.compile(
     r"(?:sampl\w*|time|hor\w*|x)?[ _.-]*(?:interval|increment|incr?|step|delta|spacing|resolution)"
     r"|dt|delta[ _]?t|sampl\w* (?:period|time)|hres|x[ _-]?incr?|tstep|t ?sample|period"
@@ -106,14 +108,15 @@ def known_unit(text: str) -> str:
 
     Examples
     --------
-    >>> [known_unit(text) for text in ("(µs)", "Volts", "in mV", "lux", "lamp")]
-    ['us', 'V', 'mV', 'lx', '']
+    >>> [known_unit(text) for text in ("(µs)", "Volts", "in mV", "mVDC", "lux", "uW/cm2", "lamp")]
+    ['us', 'V', 'mV', 'mV', 'lx', 'uW/cm²', '']
     """
     text = text.strip().strip("()[]{}<>").strip().removeprefix("in ").strip()
     if text in _TIME_UNITS or text.lower() in _TIME_UNITS:
         return _TIME_UNITS.get(text, _TIME_UNITS.get(text.lower(), ""))
     if text.lower() in _READING_UNITS:
         return _READING_UNITS[text.lower()]
+    text = re.sub(r"(?<=/m)\^?2$|(?<=/cm)\^?2$", "²", re.sub(r"(?i)(?<=V) ?DC$", "", text))
     return text.replace("μ", "µ") if _SYMBOL.fullmatch(text) else ""
 
 

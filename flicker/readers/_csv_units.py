@@ -38,7 +38,7 @@ _PREFIXES = {
     "k": Fraction(10**3),
     "M": Fraction(10**6),
 }
-_PREFIXED = re.compile(r"([numkMµ]?)(V|A|lx|W|cd/m²|W/m²|Ohm|Ω)")
+_PREFIXED = re.compile(r"([numkMµ]?)(V|A|lx|lm|W|cd|cd/m²|W/m²|W/cm²|Ohm|Ω)")
 _NO_LIGHT = ("Ohm", "Ω", "dB")
 _STRANGE = re.compile(rb"[ \t\"']*[-+]?[\d.,]*\d[ \t]*([A-Za-z\x80-\xff%][^\s\d,;|\"']*)[ \t\"'\r]*")
 
