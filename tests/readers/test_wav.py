@@ -8,7 +8,7 @@ import pytest
 import soundfile
 
 from flicker.errors import InputError, UnreadableFileError
-from flicker.readers import read
+from flicker.readers import _long, read, wav
 from flicker.readers.wav import blocks, facts
 
 RATE = 48_000
@@ -244,3 +244,19 @@ def test_blocks_give_the_same_samples_piece_by_piece(tmp_path, dtype):
     assert second.shape == (COUNT, 1)
     known = facts(path)
     assert (known.sample_rate, known.frames, known.channels, known.sample_format) == (RATE, COUNT, 2, "24-bit")
+
+
+def test_of_a_damaged_recording_larger_than_memory_an_excerpt_of_the_part_before_the_damage_is_read(
+    tmp_path, monkeypatch
+):
+    monkeypatch.setattr(wav, "_MOST_KEPT", 1 << 13)
+    monkeypatch.setattr(_long, "EXCERPT", 1 << 12)
+    monkeypatch.setattr(_long, "_FRAMES", 3000)
+    path = tmp_path / "night.flac"
+    whole = encoded(path, "FLAC")
+    path.write_bytes(whole[: int(0.7 * len(whole))])
+    (trace,) = read(path).traces
+    first = round(trace.start * RATE)
+    assert np.array_equal(trace.light, NOISE[first : first + (1 << 12)])
+    assert 0.5 * len(NOISE) < trace.whole.samples <= 0.7 * len(NOISE)
+    assert [note.code for note in trace.notes] == ["cut-short"]
