@@ -9,6 +9,7 @@ import json
 import math
 import os
 import time
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -61,6 +62,7 @@ ORIGINALS = [
     sound("CAF", "PCM_24"),
     sound("W64", "FLOAT"),
     sound("AU", "PCM_16"),
+    (Path(__file__).parents[2] / "fixtures" / "generator-1003hz.mp4").read_bytes(),
 ]
 
 
