@@ -12,7 +12,7 @@ from flicker.trace import FloatArray
 DAY = 86_400.0  # [s]
 _CLOCK = re.compile(
     rb"[ \t\"']*(?:(?:\d{4}-\d\d?-\d\d?|\d\d?[./-]\d\d?[./-]\d{2,4})[ T,]\s*)?"
-    rb"(\d\d?):(\d\d):(\d\d)(?:[.,:](\d{1,9}))?Z?[ \t\"'\r]*"
+    rb"(\d\d?):(\d\d):(\d\d)(?:[.,:](\d{1,9}))?(?: ?([AaPp])\.?[Mm]\.?| ?Z| ?[-+]\d\d:?\d\d)?[ \t\"'\r]*"
 )
 
 
@@ -22,14 +22,15 @@ def time_of_day(cell: bytes) -> float | None:
 
     Examples
     --------
-    >>> time_of_day(b"2026-12-01 22:00:30.250"), time_of_day(b"07:30"), time_of_day(b"12.5")
-    (79230.25, None, None)
+    >>> time_of_day(b"2026-12-01 22:00:30.250+01:00"), time_of_day(b"1:00:00 PM"), time_of_day(b"07:30")
+    (79230.25, 46800.0, None)
     """
     found = _CLOCK.fullmatch(cell)
     if found is None:
         return None
-    hours, minutes, seconds, decimals = found.groups()
-    return 3600.0 * int(hours) + 60.0 * int(minutes) + float(seconds + b"." + (decimals or b"0"))
+    hours, minutes, seconds, decimals, half = found.groups()
+    hour = int(hours) if half is None else int(hours) % 12 + 12 * (half in b"pP")
+    return 3600.0 * hour + 60.0 * int(minutes) + float(seconds + b"." + (decimals or b"0"))
 
 
 def times_of_day(text: Bytes, starts: Integers, stops: Integers) -> tuple[FloatArray, Bools]:

@@ -354,6 +354,8 @@ def test_times_since_1970_count_from_the_first_row(written, unit, scale):
         "{day:02d}.12.2026 {clock};{y:.6f}",
         "2026-12-{day:02d} {clock} {y:.6f}",
         '"2026-12-{day:02d}T{clock}Z","{y:.6f}"',
+        "2026-12-{day:02d}T{clock}+01:00,{y:.6f}",
+        "12/{day:02d}/2026 {twelve},{y:.6f}",
     ],
 )
 def test_times_of_day_go_on_past_midnight(written, line):
@@ -363,7 +365,8 @@ def test_times_of_day_go_on_past_midnight(written, line):
         day, rest = 1 + tick // 86_400_000_000, tick % 86_400_000_000
         second, micro = divmod(rest, 1_000_000)
         clock = f"{second // 3600:02d}:{second // 60 % 60:02d}:{second % 60:02d}.{micro:06d}"
-        lines.append(line.format(clock=clock, day=day, y=y))
+        twelve = f"{(second // 3600 + 11) % 12 + 1}{clock[2:]} {'AM' if second < 43_200 else 'PM'}"
+        lines.append(line.format(clock=clock, twelve=twelve, day=day, y=y))
     (trace,) = read(written(joined(lines))).traces
     assert trace.sample_rate == pytest.approx(RATE, rel=1e-6)
     assert trace.light == pytest.approx(LIGHT, abs=1e-6)
