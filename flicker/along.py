@@ -18,7 +18,7 @@ _RARE = 1e-3  # chance, over all measures, that light that is the same throughou
 _WIDEST = 1.96  # half of a 95 % interval over its standard error (normal distribution)
 _BY_ONE_SAMPLE = {"duty_cycle": 0.5, "flicker_index": 0.5}  # error over the share of a cycle that one sample takes
 _BY_ONE_SAMPLE_RELATIVE = {"rms_modulation": 2.0, "svm": 1.0}  # the same, over the value
-_UNTESTED = ("display_flicker_level", "display_flicker_contrast")  # their intervals do not carry a test
+_UNTESTED = ("display_flicker_contrast",)  # its interval does not carry a test
 _UNCERTAIN = 1.25  # standard errors of short windows are themselves uncertain by about so much (computed)
 
 

@@ -192,8 +192,8 @@ class Observation:
         for fit in self.search.families:
             number = np.arange(1, fit.amplitudes.size + 1)
             turned = fit.amplitudes * np.exp(-2j * np.pi * number * fit.frequency * fit.centre) / mean
-            error = fit.amplitude_error / mean
-            threshold = error * np.sqrt(power_threshold(fit.amplitudes.size, 1e-2))
+            error = float(np.hypot(fit.amplitude_error, 0.5 * fit.folded)) / mean
+            threshold = fit.amplitude_error / mean * np.sqrt(power_threshold(fit.amplitudes.size, 1e-2))
             for k, amplitude in zip(number.tolist(), turned.tolist(), strict=True):
                 frequency = k * fit.frequency
                 if frequency < self.trace.sample_rate / 2 and abs(amplitude) > threshold:

@@ -55,7 +55,8 @@ def display_flicker_level(observation: Observation) -> Measure:
     strongest = max(observation.components, key=_weighted)
     height, error = abs(strongest.amplitude), strongest.standard_error
     by_dark = observation.dark_uncertainty / observation.level
-    spread = 1.96 * math.hypot(error / height, by_dark)
+    by_mean = math.hypot(*(fit.mean_error for fit in observation.search.families)) / observation.level
+    spread = 1.96 * math.hypot(error / height, by_dark, by_mean)
     value = _weighted(strongest)
     low, high = (value + 20 * math.log10(max(1 + sign * spread, 1e-6)) for sign in (-1, 1))
     weight = display_weight(strongest.frequency)

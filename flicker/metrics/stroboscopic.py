@@ -73,7 +73,8 @@ def svm(trace: Trace, observation: Observation) -> Measure:
         unseen = observation.search.floor / level / float(sine_threshold(BAND[0]))
         return Measure(0.0, "1", 0.0, unseen, "no line from 80 Hz to 2 kHz rises above the noise")
     by_dark = 1.96 * value * observation.dark_uncertainty / level
-    half = math.hypot(_half_width(observation, lines), by_dark)
+    by_mean = 1.96 * value * math.hypot(*(fit.mean_error for fit in observation.search.families)) / level
+    half = math.hypot(_half_width(observation, lines), lines.fold, by_dark, by_mean)
     low = min(lines.only(~lines.doubtful).visibility, value) if lines.doubtful.any() else value
     method = f"{lines.frequencies.size} fitted lines from 80 Hz to 2 kHz, threshold of IEC TR 63158"
     if lines.doubtful.any():
@@ -103,10 +104,12 @@ class _Lines:
     frequencies: FloatArray
     amplitudes: FloatArray
     errors: FloatArray
+    folded: FloatArray  # what harmonics beyond the samples may add
     doubtful: BoolArray  # on an end of the band to within the uncertainty
 
     def only(self, which: BoolArray) -> _Lines:
-        return _Lines(self.frequencies[which], self.amplitudes[which], self.errors[which], self.doubtful[which])
+        columns = (self.frequencies, self.amplitudes, self.errors, self.folded, self.doubtful)
+        return _Lines(*(column[which] for column in columns))
 
     @property
     def visibility(self) -> float:
@@ -131,6 +134,11 @@ class _Lines:
         relative = self.errors / np.maximum(self.amplitudes, 1e-300)
         return self.visibility * float(np.sqrt(np.sum((relative * self.shares) ** 2)))
 
+    @property
+    def fold(self) -> float:
+        """What folded harmonics may change of the figure, a bound."""
+        return self.visibility * float(np.sum(self.folded * self.shares / np.maximum(self.amplitudes, 1e-300)))
+
 
 def _lines(observation: Observation) -> _Lines:
     found = []
@@ -142,9 +150,11 @@ def _lines(observation: Observation) -> _Lines:
         doubtful = np.minimum(np.abs(frequencies - BAND[0]), np.abs(frequencies - BAND[1])) <= reach
         kept = np.sinc(frequencies * observation.trace.exposure) * fit.mean
         error = np.full(number.size, fit.amplitude_error)
-        found.append((frequencies, np.abs(fit.amplitudes) / kept, error / kept, doubtful, inside))
+        folded = np.full(number.size, fit.folded)
+        heights = np.abs(fit.amplitudes)
+        found.append((frequencies, heights / kept, error / kept, folded / kept, doubtful, inside))
     if not found:
-        return _Lines(np.zeros(0), np.zeros(0), np.zeros(0), np.zeros(0, dtype=bool))
+        return _Lines(*(np.zeros(0) for _ in range(4)), np.zeros(0, dtype=bool))
     *columns, inside = (np.concatenate(column) for column in zip(*found, strict=True))
     return _Lines(*columns).only(inside)
 

@@ -169,6 +169,30 @@ class HarmonicFit:
             return 0.0
         return float(np.sqrt(np.mean(np.abs(self.amplitudes[-(self.amplitudes.size // 4) :]) ** 2)))
 
+    @property
+    def folded(self) -> float:
+        """
+        Amplitude that harmonics too high to be told apart may add to a low one, a bound.
+
+        Where samples fall on few phases of the cycle, those of the n-th harmonic are those of a low one when n is near
+        the number of phases. How high it is follows from how the harmonics below it decay, octave by octave.
+        """
+        told = 1.0 / max(self.longest_gap, 1.0 / _BINS)
+        highest = min(self.amplitudes.size, int(told / 2))
+        if highest < 8 and (highest < 2 or self.amplitudes.size < int(told / 2) - 1):
+            return 0.0  # so few of them because no more rise above the noise
+        power = np.maximum(np.abs(self.amplitudes[:highest]) ** 2 - 2 * self.amplitude_error**2, 0.0)
+        upper = float(np.mean(power[highest // 2 :])) ** 0.5
+        lower = float(np.mean(power[highest // 4 : highest // 2])) ** 0.5 if highest >= 4 else upper
+        slope = float(np.clip(np.log2(max(lower, 1e-300) / max(upper, 1e-300)), 1.0, 4.0))
+        summed = sum(number**-slope for number in (1, 2, 3))
+        return 2.0 * upper * (0.75 * highest / told) ** slope * summed
+
+    @property
+    def mean_error(self) -> float:
+        """Standard error of the mean, of noise and of folded harmonics."""
+        return float(np.hypot(self.noise / np.sqrt(self.samples), 0.5 * self.folded))
+
     def at(self, times: FloatArray) -> FloatArray:
         """Evaluate the fit at times, shape (n,), through a table of its cycle."""
         table = self.table(_BINS)
