@@ -23,6 +23,7 @@ from flicker.results import Measure
 from flicker.trace import Capture, Trace
 from flicker.workers import in_threads
 
+_UNSEEN = 3.0  # percent flicker [%]
 _CONDITIONS = ("dark_level", "dark_capture", "mean", "dc_coupled", "inverted", "start", "duration", "coupling_corner")
 
 
@@ -121,9 +122,14 @@ def _measure_trace(trace: Trace, clock_ppm: float, dark_uncertainty: float, wind
         notes = tuple(doubt if note.code == ALIASING else note for note in notes)
         components = ()  # no line of them need be a line of the light
         families = tuple(replace(one, percent_flicker=Measure.missing("%", doubt.message)) for one in families)
-    region = risk_region(components, families) if depth_known else None
+    region = risk_region(components, families) if depth_known and not _hidden(measures["percent_flicker"]) else None
     along = measure_along(trace, window, lambda part: _all_measures(observed(part))) if window else None
     return ChannelReport(observation, measures, notes, components, families, region, along=along)
+
+
+def _hidden(depth: Measure) -> bool:
+    """Whether a light without flicker could have as much as no observable effect allows at 100 Hz, unseen."""
+    return depth.value == 0.0 and (depth.high or 0.0) > _UNSEEN
 
 
 def _all_measures(observation: Observation) -> dict[str, Measure]:

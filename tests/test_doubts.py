@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from flicker import measure
+from flicker.report.answer import next_step, risk
 from flicker.trace import Capture, Segment, Trace
 
 RATE = 20_000.0
@@ -137,3 +138,33 @@ def test_slow_pulsing_for_a_while_says_when():
     words = found["slow-pulsing"].message.split(", from ")[1].split(":")[0]
     begin, end = (float(word.split()[0]) for word in words.split(" s to "))
     assert abs(begin - 3) < 0.3 and abs(end - 6) < 0.3
+
+
+def channel_of(light, rate=RATE):
+    return measure(Capture((Trace(light, rate, dark_level=0.0),))).captures[0].channels[0]
+
+
+def test_less_than_two_pulses_are_no_frequency_and_no_all_clear():
+    light = noisy(pulses(seconds(0.003), 239.7, 0.08, 0.0, 0.7), 0.002)
+    channel = channel_of(light)
+    assert channel.measures["fundamental_frequency"].value is None
+    assert channel.measures["percent_flicker"].value is None
+    assert channel.risk_region is None
+
+
+def test_noise_that_could_hide_flicker_gives_no_region():
+    channel = channel_of(noisy(np.ones(2000), 0.5))
+    assert channel.measures["percent_flicker"].value == 0.0
+    assert channel.measures["percent_flicker"].high > 3.0
+    assert channel.risk_region is None
+    assert "noise would hide a flicker of" in risk(channel)
+    assert "record longer" in next_step(channel)
+    assert channel_of(noisy(np.ones(20_000), 0.002)).risk_region.region == "no-observable-effect"
+
+
+def test_cycles_without_any_light_give_reasons_and_no_error():
+    light = np.zeros(139)
+    light[100:] = 0.4 + 0.3 * np.sin(2 * np.pi * 97 * np.arange(39) / 2000)
+    measures = channel_of(light, 2000.0).measures
+    assert all((one.value is None) == bool(one.reason) for one in measures.values())
+    assert "no light above dark" in measures["flicker_index"].reason

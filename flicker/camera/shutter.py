@@ -81,13 +81,14 @@ def _angle(exposure: float, frame_rate: float) -> str:
 
 def offered(camera: Camera, frequency: float | None = None, wanted: Sequence[float] = ()) -> tuple[float, ...]:
     """
-    Exposures that can be dialled in [s]: the camera's own, or those in use that fit into a frame.
+    Exposures that can be dialled in [s]: the camera's own and those wanted, or those in use that fit into a frame.
 
     In the second case the exact nulls of a light of `frequency` [Hz] that lie nearest to the wanted exposures and to
     half a frame are among them, for cameras whose shutter is set freely.
     """
     if camera.exposures:
-        found: Iterable[float] = camera.exposures
+        fits = [one for one in wanted if camera.frame_rate is None or one * camera.frame_rate <= 1.0 + 1e-9]
+        found: Iterable[float] = [*camera.exposures, *fits]
     else:
         found = [1.0 / number for number in FRACTIONS]
         if camera.frame_rate is not None:

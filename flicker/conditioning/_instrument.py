@@ -9,6 +9,7 @@ from flicker.conditioning._shape import ENOUGH, with_unit
 from flicker.results import DEPTH_MEASURES, Note
 from flicker.trace import FloatArray, Trace
 
+_SPREAD = 6  # values that readings on a plateau take where the noise moves the converter
 _BLOCKS = 32  # of time, for the drift
 
 
@@ -25,7 +26,8 @@ def with_flat_tops(trace: Trace, full_scale: float | None) -> Trace:
             continue
         if full_scale and abs(rail) >= 0.99 * full_scale:
             return trace.replace(note=_clipped_at_full_scale(count))
-        if rail != (trace.dark_level or 0.0) and count > 1e-3 * light.size and _others_move(light, at_rail):
+        alone = _others_move(light, at_rail) or _cut_flat(light, rail)
+        if rail != (trace.dark_level or 0.0) and count > 1e-3 * light.size and alone:
             flat += count
     return trace.replace(note=_perhaps_clipped(flat, light.size)) if flat else trace
 
@@ -42,6 +44,17 @@ def _others_move(light: FloatArray, at_rail: npt.NDArray[np.bool_]) -> bool:
     still = int(np.count_nonzero(away & (light[1:] == light[:-1])))
     total = int(np.count_nonzero(away))
     return total > 16 and still < 0.02 * total
+
+
+def _cut_flat(light: FloatArray, rail: float) -> bool:
+    """Whether the half of the readings near the top rail are one value while those near the bottom spread over many."""
+    light = light[:ENOUGH]
+    low, high = float(light.min()), float(light.max())
+    if rail != high or high <= low:
+        return False
+    bright, dark = light[light > 0.5 * (low + high)], light[light <= 0.5 * (low + high)]
+    equal = float(np.mean(bright == rail))
+    return equal > 0.95 and dark.size > 16 and np.unique(dark).size >= _SPREAD and float(np.mean(dark == low)) < 0.5
 
 
 def _clipped_at_full_scale(count: int) -> Note:

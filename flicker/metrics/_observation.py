@@ -20,6 +20,7 @@ from flicker.trace import FloatArray, Trace
 
 _MOST_COMPONENTS = 400
 _BLOCKS = 32  # of time, for slow movement
+_TOO_NOISY = 0.5  # of the mean: a floor that hides any flicker
 _MOVED = 0.01  # of the mean: slower movement than this counts as drift of a steady light
 _NO_MEAN = (
     "the capture has lost the mean level (AC coupling), so that no depth can be told: "
@@ -118,14 +119,21 @@ class Observation:
         noise = float(np.std(np.diff(values))) / np.sqrt(2 * size) if values.size > 1 else 0.0
         moved = float(np.ptp(blocks))
         if moved > _MOVED * abs(self.mean) and moved > 8 * noise:
+            share = _two_digits(100 * moved / abs(self.mean))
             raise NotMeasurable(
-                f"the level moves by {100 * moved / abs(self.mean):.2g} % within {self.series.span:.3g} s without "
+                f"the level moves by {share} % within {self.series.span:.3g} s without "
                 "repeating: slow flicker and drift cannot be told apart, record at least two cycles, better ten"
             )
+        if self.search.floor > _TOO_NOISY * abs(self.mean):
+            raise NotMeasurable(self._steady_reason())
         return True
 
     def _steady_reason(self) -> str:
-        floor = f" of {100 * self.search.floor / self.mean:.2g} %" if self.trace.mean_known and self.mean > 0 else ""
+        floor = (
+            f" of {_two_digits(100 * self.search.floor / self.mean)} %"
+            if self.trace.mean_known and self.mean > 0
+            else ""
+        )
         return (
             f"no periodic modulation rises above the noise{floor} between {1.5 / self.series.span:.3g} Hz and "
             f"{self.trace.sample_rate / 2:.4g} Hz: the light is steady, or record longer or with more light"
@@ -268,6 +276,10 @@ def percent_between(ends: Extremes, mean: float, dark_uncertainty: float = 0.0) 
     beyond = max(value - 100.0, 0.0)  # a darkest level below dark by its error
     value, lowest, highest = (float(np.clip(x - beyond, 0.0, 100.0)) for x in (value, lowest, highest))
     return Measure(value, "%", lowest, highest, "extremes of the mean cycle, read on the other half of the cycles")
+
+
+def _two_digits(value: float) -> str:
+    return f"{value:.2g}" if value < 99.5 else f"{value:.0f}"
 
 
 def _rectangular(levels: FloatArray) -> bool:

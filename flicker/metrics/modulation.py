@@ -7,6 +7,7 @@ from collections.abc import Callable
 
 import numpy as np
 
+from flicker.errors import NotMeasurable
 from flicker.metrics import Observation, metric
 from flicker.metrics._observation import percent_between
 from flicker.results import Measure
@@ -122,7 +123,7 @@ def rms_modulation(observation: Observation) -> Measure:
 
         def rms(levels: FloatArray, cycle: Cycle = cycle, noise: float = noise) -> float:
             levels, shares = cycle.distribution(levels)
-            mean = float(shares @ levels)
+            mean = _lit(float(shares @ levels))
             return 100 * math.sqrt(max(float(shares @ (levels - mean) ** 2) - noise, 0.0)) / mean
 
         value, half = cycle.interval(rms)
@@ -142,7 +143,13 @@ def _of_cycle(observation: Observation, figure: Callable[[Cycle, FloatArray], fl
     return Measure(value, unit, max(value - half, 0.0), value + half, "mean cycle, spread between groups of cycles")
 
 
+def _lit(mean: float) -> float:
+    if not mean > 0:
+        raise NotMeasurable("some cycles hold no light above dark: measure a part without them, with --start")
+    return mean
+
+
 def _index(cycle: Cycle, levels: FloatArray) -> float:
     levels, shares = cycle.distribution(levels)
-    mean = float(shares @ levels)
+    mean = _lit(float(shares @ levels))
     return float(shares @ np.maximum(levels - mean, 0.0)) / mean

@@ -108,8 +108,13 @@ class _Lines:
     doubtful: BoolArray  # on an end of the band to within the uncertainty
 
     def only(self, which: BoolArray) -> _Lines:
-        columns = (self.frequencies, self.amplitudes, self.errors, self.folded, self.doubtful)
-        return _Lines(*(column[which] for column in columns))
+        return _Lines(
+            self.frequencies[which],
+            self.amplitudes[which],
+            self.errors[which],
+            self.folded[which],
+            self.doubtful[which],
+        )
 
     @property
     def visibility(self) -> float:
@@ -154,7 +159,7 @@ def _lines(observation: Observation) -> _Lines:
         heights = np.abs(fit.amplitudes)
         found.append((frequencies, heights / kept, error / kept, folded / kept, doubtful, inside))
     if not found:
-        return _Lines(*(np.zeros(0) for _ in range(4)), np.zeros(0, dtype=bool))
+        return _Lines(np.zeros(0), np.zeros(0), np.zeros(0), np.zeros(0), np.zeros(0, dtype=bool))
     *columns, inside = (np.concatenate(column) for column in zip(*found, strict=True))
     return _Lines(*columns).only(inside)
 

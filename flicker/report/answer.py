@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from typing import TYPE_CHECKING
 
+from flicker.conditioning.frames import ALIASING
 from flicker.figures import quantity, round_up
 from flicker.limits.region import STANDARD
 
@@ -30,6 +31,8 @@ def what(channel: ChannelReport) -> str:
     if frequency.value is None:
         return f"no frequency: {short_reason(frequency, channel.notes)}"
     words = quantity(frequency.value, "Hz", 6)
+    if _perhaps_an_alias(channel):
+        return f"{words} as the frames show it: a faster light may look like this, see {ALIASING} below"
     origin = channel.families[0].origin if channel.families else ""
     words += f", {origin}" if origin else ""
     duty = channel.measures.get("duty_cycle")
@@ -60,7 +63,10 @@ def short_reason(measure: Measure, notes: Iterable[Note]) -> str:
 def risk(channel: ChannelReport) -> str:
     """Tell the risk region and the number that decides it beside its bound."""
     place = channel.risk_region
-    if place is None and channel.measures["percent_flicker"].value is not None:
+    depth = channel.measures["percent_flicker"]
+    if place is None and depth.value == 0:
+        return f"not known: the noise would hide a flicker of {quantity(depth.high or 0.0, '%', 2)}"
+    if place is None and depth.value is not None:
         return "not known: faster lights look the same at this frame rate"
     if place is None:
         return "not known without the depth"
@@ -87,6 +93,8 @@ def next_step(channel: ChannelReport) -> str:
     place = channel.risk_region
     if place is None:
         unknown = channel.measures["percent_flicker"]
+        if unknown.value == 0:
+            return "record longer, or with more light"
         if unknown.value is not None:
             return "read the light with flicker stripes, or film it at another rate too and add --same-light"
         doubt = next((note.code for note in channel.notes if note.message == unknown.reason), "what hides the depth")
@@ -104,10 +112,14 @@ def caution(channel: ChannelReport) -> str:
         frequency, depth = family.fundamental.value, family.percent_flicker.value
         if frequency is not None and _SEIZURES[0] <= frequency <= _SEIZURES[1] and (depth is None or depth > _SLIGHT):
             return (
-                "flicker between 3 and 70 Hz can provoke seizures in photosensitive people: do not stare into this "
-                "light, warn those nearby"
+                f"{'if the light is really this slow: ' if _perhaps_an_alias(channel) else ''}flicker between 3 and 70 "
+                "Hz can provoke seizures in photosensitive people: do not stare into this light, warn those nearby"
             )
     return ""
+
+
+def _perhaps_an_alias(channel: ChannelReport) -> bool:
+    return any(note.code == ALIASING for note in channel.notes)
 
 
 def severity(channel: ChannelReport) -> tuple[int, float]:

@@ -86,7 +86,12 @@ class Answer:
         for course in self.courses:
             yield course_words(course, width=width)
         if before:
-            yield change_words(self.changes(before), width=width)
+            matched = self.changes(before)
+            yield change_words(matched, width=width)
+            alone = len(before) - len({id(change.before) for change in matched})
+            alone += len(self.points) - len(matched)
+            if matched and alone:
+                yield f"{alone} of one sweep only, by specimen, channel or level: not compared"
         if self._terms.record:
             yield record_words(self._statement(), self._hashes, width=width)
 

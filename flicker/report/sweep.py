@@ -58,8 +58,13 @@ def sweep_words(points: Sequence[Point], errors: Sequence[tuple[str, str]], *, w
         lines += [""] if reasons else []
         lines += [line for reason in reasons for line in wrap(reason, width, "  ", 2)]
     for path, reason in errors:
-        lines += wrap(f"not read: {Path(path).name}: {reason}", width, "  ", 2)
+        lines += wrap(unread_words(path, reason), width, "  ", 2)
     return "\n".join(lines)
+
+
+def unread_words(path: str, reason: str) -> str:
+    """Name a capture that could not be read, and why; most reasons begin with its path."""
+    return f"not read: {Path(path).name}: {reason.removeprefix(f'{path}: ')}"
 
 
 def undecided_reasons(points: Sequence[Point]) -> list[str]:
@@ -78,11 +83,14 @@ def sweep_headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -
     """Say how many captures keep the limits."""
     counts = Counter(point.verdict for point in points)
     judged = len({point.capture for point in points})
-    what = "captures" if judged == len(points) else f"channels of {judged} capture{'s' if judged > 1 else ''}"
+    captures = "capture" if judged == 1 else "captures"
+    what = captures if judged == len(points) else f"channels of {judged} {captures}"
     parts = [f"{counts[outcome]} {_KEEP[outcome][counts[outcome] > 1]}" for outcome in OUTCOMES if counts[outcome]]
     if errors:
         parts.append(f"{len(errors)} more could not be read")
     answer = next((OUTCOME_WORDS[outcome].upper() for outcome in OUTCOMES if counts[outcome]), "NOTHING JUDGED")
+    if errors and not counts.keys() - {"pass"}:
+        answer = "INCOMPLETE"
     return f"{answer}: of {len(points)} {what}, {', '.join(parts)}"
 
 

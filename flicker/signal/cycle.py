@@ -107,9 +107,14 @@ class Cycle:
         return levels, shares
 
     def part(self, groups: slice) -> Cycle:
-        """Cycle of some of the groups; every second one, say."""
-        sums, counts = self.fine_sums[groups], self.fine_counts[groups]
-        return replace(self, fine_sums=sums, fine_counts=counts, sums=self.sums[groups], counts=self.counts[groups])
+        """Cycle of some of the groups; every second one, say. A bin that they did not see borrows one mean sample."""
+        sums, counts = self.sums[groups], self.counts[groups]
+        unseen = counts.sum(axis=0) == 0
+        if unseen.any():
+            sums, counts = sums.copy(), counts.copy()
+            sums[0, unseen], counts[0, unseen] = self.levels[unseen], 1.0
+        fine_sums, fine_counts = self.fine_sums[groups], self.fine_counts[groups]
+        return replace(self, fine_sums=fine_sums, fine_counts=fine_counts, sums=sums, counts=counts)
 
     def interval(self, figure: Callable[[FloatArray], float]) -> tuple[float, float]:
         """

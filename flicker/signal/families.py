@@ -23,7 +23,8 @@ _ROUNDS = 2  # in which each family is fitted beside the others
 _RULERS = (4, 16, 64)  # harmonics that refine a track, one after the other
 _ALIKE = 1.4  # noise that a fundamental may leave, over what its harmonic alone leaves: gaps may allow fewer lines
 _CLEARLY = 0.8  # of the noise that a steady frequency leaves
-_FEWEST_CYCLES = 1.5
+_SLOWEST = 1.5  # cycles of a line that is looked at
+_FEWEST_CYCLES = 1.9  # of a light; a single pulse passes for 1.8
 _FEWEST_CYCLES_BELOW = 3.0  # of a fundamental below the strongest line: fewer could be drift
 
 
@@ -64,7 +65,7 @@ def find_families(series: Series) -> Search:
     """
     whole = _longest_run(series)
     first = spectrum(whole, series.sample_rate)
-    lowest = _FEWEST_CYCLES * first.resolution
+    lowest = _SLOWEST * first.resolution
     families: list[HarmonicFit] = []
     left, now = series, first
     for _ in range(_MOST_FAMILIES):

@@ -186,7 +186,7 @@ class HarmonicFit:
         lower = float(np.mean(power[highest // 4 : highest // 2])) ** 0.5 if highest >= 4 else upper
         slope = float(np.clip(np.log2(max(lower, 1e-300) / max(upper, 1e-300)), 1.0, 4.0))
         summed = sum(number**-slope for number in (1, 2, 3))
-        return 2.0 * upper * (0.75 * highest / told) ** slope * summed
+        return float(2.0 * upper * (0.75 * highest / told) ** slope * summed)
 
     @property
     def mean_error(self) -> float:

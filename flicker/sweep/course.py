@@ -265,12 +265,14 @@ def changes(before: Sequence[Point], after: Sequence[Point]) -> tuple[Change, ..
     """
     Lay two sweeps side by side: points of the same specimen, channel and level.
 
-    Where either sweep has one specimen only, its name does not matter: a driver that was swapped has another.
+    Where either sweep has one specimen only, its name does not matter: a driver that was swapped has another. Nor does
+    the name of the channel where every capture has one only: another recorder gives it another name.
     """
     by_unit = min(len({point.unit for point in sweep}) for sweep in (before, after)) > 1
+    by_channel = any(len({point.capture for point in sweep}) < len(sweep) for sweep in (before, after))
 
     def key(point: Point) -> tuple[str, str, float | None]:
-        return (point.unit if by_unit else "", point.channel, point.level)
+        return (point.unit if by_unit else "", point.channel if by_channel else "", point.level)
 
     earlier = {key(point): point for point in reversed(before)}
     return tuple(Change(earlier[key(point)], point) for point in after if key(point) in earlier)

@@ -326,3 +326,15 @@ def test_options_that_cannot_be_right_are_refused(options, words):
 def test_history_tells_what_was_done_in_order():
     trace = conditioned(display(), start=0.1, dark_level=-0.2, inverted=True)
     assert [line.split()[0] for line in trace.history] == ["used", "dark", "negated,"]
+
+
+def test_a_pulse_cut_flat_beside_a_noisy_dark_plateau_is_noted():
+    """An 8-bit oscilloscope that was driven beyond its range: the tops are one value, the dark ones are not."""
+    times = np.arange(5000) / 20_000.0
+    rng = np.random.default_rng(8)
+    light = 0.2 + 0.8 * (times * 239.7 % 1 < 0.45) + rng.normal(0, 0.01, times.size)
+    coarse = np.round(light / 0.004) * 0.004
+    assert "clipped" not in codes(conditioned(Trace(coarse, 20_000.0)))
+    assert "clipped" in codes(conditioned(Trace(np.minimum(coarse, 0.6), 20_000.0)))
+    quiet = np.round((0.2 + 0.8 * (times * 239.7 % 1 < 0.45) + rng.normal(0, 0.0005, times.size)) / 0.004) * 0.004
+    assert "clipped" not in codes(conditioned(Trace(quiet, 20_000.0))), "steps wider than the noise are no clipping"

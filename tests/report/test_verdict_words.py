@@ -4,7 +4,7 @@ from flicker.light import pwm_light
 from flicker.limits import Limit, Verdict, all_rows, known_limits, margin
 from flicker.report.margin import column_notes, margin_words
 from flicker.report.results import Spool, table_head, table_rows, table_text
-from flicker.report.sweep import sweep_words
+from flicker.report.sweep import sweep_headline, sweep_words
 from flicker.report.verdicts import allowance_words, cures, limits_words, verdict_words
 from flicker.sweep.course import Point
 from flicker.tunable import TunableLight
@@ -89,7 +89,7 @@ def test_of_very_many_captures_the_worst_are_shown():
     assert lines[0] == "FAIL: of 100 captures, 1 breaks a limit, 99 keep every limit, 1 more could not be read"
     assert "the 60 worst of 100" in lines[1]
     assert "77.csv" in lines[4]
-    assert lines[-1] == "  not read: torn.csv: torn.csv: is empty"
+    assert lines[-1] == "  not read: torn.csv: is empty"
 
 
 def test_results_are_one_object_however_many_come():
@@ -114,3 +114,11 @@ def test_a_row_of_the_table_has_a_field_for_every_column():
     (row,) = table_rows(torn, ["x"], [])
     assert len(row) == len(head)
     assert table_text(head, [row]).splitlines()[1].endswith('"torn.csv: is empty, it seems"')
+
+
+def test_a_pass_beside_a_capture_that_cannot_be_read_is_no_pass():
+    assert sweep_headline([], [("torn.csv", "is empty")]).startswith("NOTHING JUDGED")
+    points = [Point("lamp.csv", "light", "", None, 1.0, 120.0, 5.0, None, "low-risk", "pass", 1.0, "x")]
+    assert sweep_headline(points, []) == "PASS: of 1 capture, 1 keeps every limit"
+    incomplete = "INCOMPLETE: of 1 capture, 1 keeps every limit, 1 more could not be read"
+    assert sweep_headline(points, [("torn.csv", "torn.csv: is empty")]) == incomplete

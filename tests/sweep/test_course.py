@@ -116,3 +116,15 @@ def test_the_limit_that_decides_is_the_worst_one():
     (found,) = points_of(capture)
     assert (found.verdict, found.limit, found.margin, found.level) == ("fail", "c", -9.0, 5.0)
     assert found.frequency == pytest.approx(240.0)
+
+
+def test_another_recorder_names_its_only_channel_otherwise_and_is_compared():
+    before = [point(80, 0.8), point(5, 0.05, verdict="fail")]
+    after = [point(80, 0.8, channel="channel 1"), point(5, 0.05, channel="channel 1")]
+    assert [change.kind for change in changes(before, after)] == ["same", "better"]
+
+
+def test_of_two_channels_each_is_compared_with_its_own():
+    before = [point(80, 0.8), point(80, 0.8, channel="other", verdict="fail")]
+    after = [point(80, 0.8, verdict="fail"), point(80, 0.8, channel="other")]
+    assert [change.kind for change in changes(before, after)] == ["worse", "better"]

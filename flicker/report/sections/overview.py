@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from pathlib import Path
 
 from flicker.markup import Markup, element, items, markup, table
 from flicker.report.overview import HEAD, OverviewEntry, riskiest
 from flicker.report.page import section
+from flicker.report.sweep import unread_words
 
 
 @section(of="overview", title="All captures", order=10)
@@ -26,4 +26,4 @@ def not_read(errors: Sequence[tuple[str, str]]) -> Markup | None:
     """Name the captures that could not be read, each with the reason."""
     if not errors:
         return None
-    return items(f"not read: {Path(path).name}: {reason}" for path, reason in errors)
+    return items(unread_words(path, reason) for path, reason in errors)
