@@ -89,7 +89,7 @@ def sweep_headline(points: Sequence[Point], errors: Sequence[tuple[str, str]]) -
     if errors:
         parts.append(f"{len(errors)} more could not be read")
     answer = next((OUTCOME_WORDS[outcome].upper() for outcome in OUTCOMES if counts[outcome]), "NOTHING JUDGED")
-    if errors and not counts.keys() - {"pass"}:
+    if errors and answer == OUTCOME_WORDS["pass"].upper():
         answer = "INCOMPLETE"
     return f"{answer}: of {len(points)} {what}, {', '.join(parts)}"
 

@@ -45,7 +45,8 @@ _WIDE_RANGE = 20.0  # largest over smallest value from which the axis is logarit
 @section(of="sweep", title="Answer", order=10)
 def sweep_answer(swept: Sweep) -> Markup:
     """Say how many captures keep the limits, then what happens over each dimming range."""
-    outcome = overall(point.verdict for point in swept.points)
+    unread: list[Outcome] = ["undecided"] if swept.errors else []
+    outcome = overall([*(point.verdict for point in swept.points), *unread])
     sign = element("svg", element("path", d=SHAPES[OUTCOME_SHAPES[outcome]]), viewBox="-8 -8 16 16",
                    class_="sign", aria_hidden="true")  # fmt: skip
     courses = [
