@@ -20,7 +20,7 @@ _FINER_DUTIES = np.concatenate(
 )
 _NEAR = 25.0  # chi-square above the least one up to which a duty cycle is looked at more finely
 _MOST_DUTIES = 1000
-_PHASES = 2048
+_FINE, _COARSE = 128, 32  # phases for each cycle of the highest harmonic
 _MUCH_WORSE = 4.0  # reduced chi-square above which no rectangle is believed
 
 
@@ -94,21 +94,22 @@ class _Profile:
     free_losses: FloatArray  # with shares outside 0 to 1 as well
 
     @classmethod
-    def of(cls, seen: Harmonics, exposure: float, duties: FloatArray) -> _Profile:
+    def of(cls, seen: Harmonics, exposure: float, duties: FloatArray, fineness: int = _FINE) -> _Profile:
+        phases = 1 << int(fineness * seen.numbers.max()).bit_length()
         kernels = 2.0 * np.sinc(np.outer(duties, seen.numbers)) * (seen.left_by(exposure) / seen.variances)
-        spectrum = np.zeros((duties.size, _PHASES // 2 + 1), dtype=complex)
+        spectrum = np.zeros((duties.size, phases // 2 + 1), dtype=complex)
         spectrum[:, seen.numbers.astype(int)] = kernels * seen.amplitudes
-        match = scipy.fft.irfft(spectrum, _PHASES, axis=1) * (_PHASES / 2)
+        match = scipy.fft.irfft(spectrum, phases, axis=1) * (phases / 2)
         strength = np.maximum((kernels**2 * seen.variances).sum(axis=1), 1e-30)
         place, each = match.argmax(axis=1), np.arange(duties.size)
-        before, best, after = (match[each, (place + step) % _PHASES] for step in (-1, 0, 1))
+        before, best, after = (match[each, (place + step) % phases] for step in (-1, 0, 1))
         bend = before - 2 * best + after
         offset = np.where(bend < 0, 0.5 * (before - after) / np.where(bend < 0, bend, 1.0), 0.0)
         best = best - 0.25 * (before - after) * offset
         shares = best / strength
         used = np.clip(shares, 0.0, 1.0)
         losses = strength * used**2 - 2 * best * used
-        return cls(duties, shares, 1 / np.sqrt(strength), (place + offset) / _PHASES % 1.0, losses, -best * shares)
+        return cls(duties, shares, 1 / np.sqrt(strength), (place + offset) / phases % 1.0, losses, -best * shares)
 
     def finer(self, seen: Harmonics, exposure: float, scale: float) -> _Profile:
         """Look at the duty cycles that fit nearly as well as the best, eight times as finely."""
@@ -123,7 +124,7 @@ class _Profile:
 
 def pulse_loss(seen: Harmonics, exposure: float) -> float:
     """Chi-square of the best pulse less that of no light, on a coarse grid."""
-    return float(_Profile.of(seen, exposure, _DUTIES).losses.min())
+    return float(_Profile.of(seen, exposure, _DUTIES, _COARSE).losses.min())
 
 
 def fit_pulse(seen: Harmonics, exposure: float, *, rounds: int = 2) -> PulseShape:

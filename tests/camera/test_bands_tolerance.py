@@ -166,3 +166,27 @@ def test_few_lines_limit_what_a_tolerance_can_do(seed):
     )
     assert got == pytest.approx(found, abs=0.05)
     assert got >= max(each) - 1e-9
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_a_line_spectrum_bands_no_deeper_anywhere_within_the_tolerance(seed):
+    rng = np.random.default_rng([9, seed])
+    frame_rate = float(rng.uniform(20, 60))
+    camera = Camera(
+        lines=int(rng.integers(60, 1200)), readout_time=float(rng.uniform(0.3, 1)) / frame_rate, frame_rate=frame_rate
+    )
+    frequency = float(np.exp(rng.uniform(np.log(40), np.log(3000))))
+    number = np.arange(1.0, int(rng.integers(2, 25)))
+    amplitudes = 0.4 / number ** rng.uniform(1, 2) * np.exp(2j * np.pi * rng.uniform(size=number.size))
+    amplitudes *= min(1.0, 0.9 / np.abs(amplitudes).sum())
+    tolerance = float(rng.choice([0.001, 0.01, 0.05]))
+    exposure = float(np.exp(rng.uniform(np.log(1 / 2000), np.log(1 / frame_rate))))
+
+    def light(scale):
+        fundamental = frequency * scale
+        return Light((ChannelLight("all", number * fundamental, amplitudes, fundamentals=(fundamental,)),))
+
+    stated = predict_bands(light(1.0), camera, exposure, tolerance).worst_contrast_percent
+    tried = [*rng.uniform(-tolerance, tolerance, 60), -tolerance, tolerance]
+    found = max(predict_bands(light(1 + off), camera, exposure).contrast_percent["all"] for off in tried)
+    assert stated - 0.05 < found < stated + 0.002
