@@ -11,6 +11,7 @@ from typing import Any
 from flicker.errors import InputError
 from flicker.results import Measure
 from flicker.trace import Segment, Trace
+from flicker.workers import counted
 
 _FEWEST_SAMPLES = 16  # of a window
 _MOST_WINDOWS = 5000
@@ -130,7 +131,10 @@ def measure_along(trace: Trace, length: float, measured: Callable[[Trace], Mappi
     periodic flicker and others none, the light was not the same.
     """
     parts = windows_of(trace, length)
-    windows = tuple(Window(part.start, part.duration, part.sample_rate, measured(part)) for part in parts)
+    windows = tuple(
+        Window(part.start, part.duration, part.sample_rate, measured(part))
+        for part in counted(parts, "window", len(parts))
+    )
     names = list(windows[0].measures)
     found = {name: one for name in names if (one := throughout(name, windows, len(names)))}
     return Along(length, windows, found, trace.duration - sum(part.duration for part in parts))

@@ -6,7 +6,7 @@ import os
 import signal
 import threading
 from collections import deque
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import contextmanager
 from typing import TYPE_CHECKING, TypeVar
 
@@ -20,6 +20,32 @@ Result = TypeVar("Result")
 
 _AHEAD = 4  # items that wait for each worker
 _ONE_THREAD = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
+
+
+Watcher = Callable[[str, int, int | None], None]  # is told what, which one, and of how many; 0 at the end
+_watchers: list[Watcher] = []
+
+
+@contextmanager
+def watched_by(watcher: Watcher) -> Iterator[None]:
+    """Tell somebody how far long work has come, for as long as the block runs."""
+    _watchers.append(watcher)
+    try:
+        yield
+    finally:
+        _watchers.remove(watcher)
+
+
+def counted(items: Iterable[Item], what: str, total: int | None = None) -> Iterator[Item]:
+    """Go through items, and tell who watches which one is at work."""
+    try:
+        for number, item in enumerate(items, 1):
+            for watcher in _watchers:
+                watcher(what, number, total)
+            yield item
+    finally:
+        for watcher in _watchers:
+            watcher(what, 0, total)
 
 
 def in_threads(function: Callable[[Item], Result], items: Sequence[Item]) -> list[Result]:

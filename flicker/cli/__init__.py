@@ -11,6 +11,7 @@ from typing import Any, NoReturn
 import click
 
 from flicker import __version__
+from flicker.cli.output import counting
 from flicker.errors import ExitStatus, FlickerError
 from flicker.registry import did_you_mean
 
@@ -50,7 +51,8 @@ class Program(click.Group):
         """Run; what goes wrong becomes one sentence on standard error and its exit status."""
         run: Callable[..., Any] = super().main
         try:
-            answer = run(*args, **{**kwargs, "standalone_mode": False})
+            with counting(quiet="--quiet" in (kwargs.get("args") or (args[0] if args else None) or sys.argv)):
+                answer = run(*args, **{**kwargs, "standalone_mode": False})
         except FlickerError as error:
             _fail(str(error), error.exit_status)
         except click.exceptions.NoArgsIsHelpError as error:

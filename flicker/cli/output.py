@@ -5,7 +5,9 @@ from __future__ import annotations
 import math
 import os
 import sys
+import time
 from collections.abc import Iterable, Iterator, Sequence
+from contextlib import contextmanager
 from pathlib import Path
 from typing import Any, TextIO, TypeVar
 
@@ -125,6 +127,39 @@ def with_progress(items: Sequence[Item], what: str, *, quiet: bool = False) -> I
             yield item
     finally:
         click.echo("\r\x1b[K", nl=False, err=True)
+
+
+class _Counter:
+    """On a terminal, says on standard error how far long work has come, once it takes more than a second."""
+
+    _PATIENCE, _EVERY = 1.0, 0.2  # [s]
+
+    def __init__(self) -> None:
+        self._began = self._told = time.monotonic()
+        self._open = False
+
+    def __call__(self, what: str, number: int, total: int | None) -> None:
+        """Tell the number of what is at work; 0 wipes the line."""
+        now = time.monotonic()
+        if number == 0:
+            if self._open:
+                click.echo("\r\x1b[K", nl=False, err=True)
+            self._open = False
+        elif now - self._began > self._PATIENCE and now - self._told > self._EVERY:
+            self._told, self._open = now, True
+            click.echo(f"\r\x1b[K{what} {number}{f' of {total}' if total else ''}", nl=False, err=True)
+
+
+@contextmanager
+def counting(*, quiet: bool) -> Iterator[None]:
+    """Show how far long work has come, unless asked to be quiet or not on a terminal."""
+    if quiet or not _is_terminal(sys.stderr):
+        yield
+        return
+    from flicker.workers import watched_by
+
+    with watched_by(_Counter()):
+        yield
 
 
 def spare_the_captures(captures: Iterable[str | Path], outputs: Iterable[str | None]) -> None:

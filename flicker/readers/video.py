@@ -22,6 +22,7 @@ from flicker.registry import did_you_mean
 from flicker.results import Note
 from flicker.signal.transfer import transfer_gamma
 from flicker.trace import Capture, Segment, Trace
+from flicker.workers import counted
 
 Region = tuple[int, int, int, int]
 
@@ -130,7 +131,7 @@ class _Film:
         """Give the light of every frame in blocks, shape (c, r, m)."""
         yield from self.first
         self.first = []
-        for number, frame in enumerate(self.rest):
+        for number, frame in enumerate(counted(self.rest, "frame")):
             if frame.width != self.file.details["width"] or frame.height != self.file.details["height"]:
                 raise UnreadableFileError(f"{self.file.path}: the picture changes its size on the way; cut it there")
             if number % _LOOK_AGAIN == 0:

@@ -18,7 +18,7 @@ SAMPLES = 10_000_000
 SMALL = 8_000
 LARGEST = 1_500_000  # bytes of a page
 READY = 1.0  # until the page has loaded [s]
-PANELS = 5  # figures on the page of a small capture
+PANELS = 7  # figures on the page of a small capture
 RATIO = 1.6  # of the time that matplotlib takes for as many empty panels
 
 EMPTY_PANELS = f"""
