@@ -17,7 +17,7 @@ _UPPER = 0.6  # of the Nyquist frequency
 _MOST_ABOVE = 0.1  # share of the modulation's power that may lie above
 _SLOW = (0.5, 30.0)  # [Hz]
 _LEAST_PULSING = 0.1  # peak over mean [%]
-_FLASHING = 3.0  # from here on deep pulsing can harm [Hz]
+_FLASHING, _DEEP = 3.0, 5.0  # from here on pulsing can harm [Hz], [%]; IEEE 1789-2015, practice 3 (from memory)
 _RARE = 0.1  # share of cycles up to which short pauses are missing pulses
 _SHORT = 2  # cycles
 _SHOWN = 3  # times that a note lists
@@ -54,7 +54,7 @@ def doubts(observation: Observation) -> tuple[Note, ...]:
 
 
 def _few_cycles(series: Series, fit: HarmonicFit) -> Iterator[Note]:
-    cycles = series.span * fit.frequency
+    cycles = series.values.size / series.sample_rate * fit.frequency  # gaps hold none
     if cycles < _FEW:
         yield Note(
             "few-cycles",
@@ -137,12 +137,13 @@ def _slow_pulsing(observation: Observation) -> Iterator[Note]:
     depth = 100.0 * float(np.abs(fit.amplitudes).max()) / observation.mean
     if depth < _LEAST_PULSING:
         return
-    harm = ", and deep pulsing from 3 Hz on can harm people with photosensitive epilepsy"
+    harm = ", and it can harm people with photosensitive epilepsy"
+    harmful = depth >= _DEEP and fit.frequency >= _FLASHING
     yield Note(
         "slow-pulsing",
         "warning",
-        f"the light pulses {fit.frequency:.4g} times a second, its strongest line by {depth:.2g} %"
-        f"{_when(observation.series, fit)}: people see it{harm if fit.frequency >= _FLASHING else ''}; look at the "
+        f"the light pulses {fit.frequency:.4g} times a second, its strongest line by {depth:.3g} %"
+        f"{_when(observation.series, fit)}: people may see it{harm if harmful else ''}; look at the "
         "supply and the regulation of the driver",
     )
 
@@ -162,6 +163,6 @@ def _when(series: Series, fit: HarmonicFit) -> str:
         sums[1] += np.bincount(window, minlength=count)
     heights = np.abs(sums[0] / np.maximum(sums[1].real, 1.0))
     strong = np.flatnonzero(heights > 0.5 * heights.max())
-    if strong.size > 0.9 * count:
+    if strong.size > 0.9 * np.count_nonzero(sums[1]):
         return ""
     return f", from {begin + strong[0] * length:.4g} s to {begin + (strong[-1] + 1) * length:.4g} s"

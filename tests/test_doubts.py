@@ -108,9 +108,9 @@ def test_bursts_are_told_with_their_pauses(gate):
     times = seconds(2.0)
     light = pulses(times, 1203.7, 0.5, 0.0) * (times * gate % 1 < 0.6)
     found = notes_of(noisy(light, 0.005))
-    assert "burst" in found or "slow-pulsing" in found
-    if "burst" in found:
-        assert f"{0.4 / gate:.2g}"[:4] in found["burst"].message
+    told = found["burst"].message
+    assert abs(float(told.split("pauses of ")[1].split()[0]) - 0.4 / gate) < 1.5 / 1203.7
+    assert abs(int(told.split("bursts: ")[1].split()[0]) - 2 * gate) <= 1
 
 
 def test_a_lamp_switched_on_late_is_a_pause():
@@ -128,7 +128,21 @@ def test_slow_pulsing_beside_a_pwm_is_named_with_its_rate(slow):
     found = notes_of(noisy(light, 0.002))
     assert set(found) == {"slow-pulsing"}
     assert f"pulses {slow:g} times a second, its strongest line by 3 %:" in found["slow-pulsing"].message
+    assert "epilepsy" not in found["slow-pulsing"].message, "too shallow to harm"
+
+
+@pytest.mark.parametrize("slow", [1.3, 8.8])
+def test_deep_pulsing_from_three_hertz_on_is_called_harmful(slow):
+    times = seconds(4.0)
+    found = notes_of(noisy(pulses(times, 240.3, 0.5) * (1 + 0.2 * np.sin(2 * np.pi * slow * times)), 0.002))
     assert ("epilepsy" in found["slow-pulsing"].message) == (slow >= 3)
+
+
+def test_records_a_day_apart_are_looked_at_in_no_more_memory_than_they_hold():
+    times = np.concatenate([seconds(0.02), 86_400.0 + seconds(0.02)])
+    light = noisy(pulses(times, 240.3, 0.4, 0.0), 0.005)
+    found = notes_of(light, segments=(Segment(0, 0.0), Segment(400, 86_400.0)))
+    assert "only 9.63 cycles" in found["few-cycles"].message
 
 
 def test_slow_pulsing_for_a_while_says_when():

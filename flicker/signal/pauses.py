@@ -88,17 +88,18 @@ def _quietest(fit: HarmonicFit) -> float:
 
 
 def _by_cycle(series: Series, fit: HarmonicFit, first: float) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Number of each cycle from the centre, samples in it, and their variance; all of shape (c,)."""
-    begin = series.segments[0].start
-    lowest = int(np.floor(fit.phase(np.array([begin]))[0] - first)) - 1
-    size = int(np.ceil(series.span * fit.frequency)) + 4
-    sums = np.zeros((3, size))
-    offset = fit.mean
+    """Number of each cycle that holds samples, from the centre, how many, and their variance; all of shape (c,)."""
+    numbers, sums = [], []
     for part, times in series.chunks():
-        cycle = np.floor(fit.phase(times + series.centre) - first).astype(np.intp) - lowest
-        np.clip(cycle, 0, size - 1, out=cycle)
-        values = series.values[part] - offset
-        for row, weights in zip(sums, (None, values, values * values), strict=True):
-            row += np.bincount(cycle, weights, minlength=size)
-    counts = np.maximum(sums[0], 1.0)
-    return lowest + np.arange(size, dtype=float), sums[0], np.maximum(sums[2] / counts - (sums[1] / counts) ** 2, 0.0)
+        cycle = np.floor(fit.phase(times + series.centre) - first)
+        lowest = float(cycle.min())
+        place = (cycle - lowest).astype(np.intp)
+        values = series.values[part] - fit.mean
+        here = np.array([np.bincount(place, weights) for weights in (None, values, values * values)])
+        numbers.append(lowest + np.arange(here.shape[1]))
+        sums.append(here)
+    found, place = np.unique(np.concatenate(numbers), return_inverse=True)
+    whole = np.concatenate(sums, axis=1)
+    count, value, square = (np.asarray(np.bincount(place, row), dtype=float) for row in whole)
+    samples = np.maximum(count, 1.0)
+    return np.asarray(found), count, np.maximum(square / samples - (value / samples) ** 2, 0.0)
