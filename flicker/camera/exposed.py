@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -141,20 +142,20 @@ def deciding_channels(light: Light) -> tuple[tuple[Family, ...], ...]:
     return tuple(families_of(channel) for channel in fastest.values())
 
 
-class Blurred:
+class Blurred(ABC):
     """Deviation from the mean, which is 1, that an exposure collects against the phase at which it starts."""
 
+    @abstractmethod
     def at(self, phases: FloatArray) -> FloatArray:
         """Deviation at any phases, shape as given."""
-        raise NotImplementedError
 
+    @abstractmethod
     def table(self) -> FloatArray:
         """Deviation at evenly spaced phases of a cycle, shape (m,), m a multiple of `COARSE`."""
-        raise NotImplementedError
 
+    @abstractmethod
     def pair(self, lag: float) -> tuple[FloatArray, FloatArray]:
         """Deviation at many phases, and at the same phases plus `lag` cycles, both shape (n,)."""
-        raise NotImplementedError
 
     def extremes(self) -> tuple[float, float]:
         """Smallest and largest deviation over all phases."""

@@ -57,8 +57,13 @@ def display_flicker_level(observation: Observation) -> Measure:
     by_dark = observation.dark_uncertainty / observation.level
     by_mean = math.hypot(*(fit.mean_error for fit in observation.search.families)) / observation.level
     spread = 1.96 * math.hypot(error / height, by_dark, by_mean)
+    if spread >= 1:
+        raise NotMeasurable(
+            "the error of the strongest line is as large as the line, of noise or of harmonics that the samples cannot "
+            "tell from it: record longer, and at a rate that is higher and no multiple of the frequency"
+        )
     value = _weighted(strongest)
-    low, high = (value + 20 * math.log10(max(1 + sign * spread, 1e-6)) for sign in (-1, 1))
+    low, high = (value + 20 * math.log10(1 + sign * spread) for sign in (-1, 1))
     weight = display_weight(strongest.frequency)
     method = f"line at {strongest.frequency:.5g} Hz, weight {weight:.3g} dB, peak amplitude over mean"
     return Measure(value, "dB", low, high, method)

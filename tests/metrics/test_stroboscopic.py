@@ -22,6 +22,17 @@ def exact(waveform):
     return stroboscopic_visibility(harmonics * waveform.frequency, waveform.amplitudes(harmonics.size))
 
 
+@pytest.mark.parametrize("samples", [58, 70, 112, 200])
+def test_a_whole_number_of_samples_a_cycle_folds_harmonics_and_the_interval_holds_that(samples):
+    """Samples of |sin| at so few phases cannot tell its low harmonics from those near a multiple of their number."""
+    light = rectified_sine(52.6)
+    found = measured(light.at, sample_rate=light.frequency * samples, duration=1.5, noise=1e-5)
+    truth = exact(light)
+    assert found.low < truth < found.high
+    assert found.high - found.low < 0.01 * truth
+    assert abs(found.value - truth) > 1e-6, "it folds"
+
+
 THRESHOLDS = [  # frequency [Hz], threshold of IEC TR 63158, threshold of Perz et al. 2018; computed from the formulas
     (80.0, 0.24288, 0.24975),
     (100.0, 0.25628, 0.25992),

@@ -1,5 +1,6 @@
 """A real browser, and pages opened in it that may neither ask for anything nor complain."""
 
+import os
 import shutil
 
 import pytest
@@ -9,6 +10,8 @@ CHROMIUM = shutil.which("chromium") or shutil.which("chromium-browser") or shuti
 
 @pytest.fixture(scope="session")
 def browser():
+    if CHROMIUM is None and "CI" in os.environ:
+        pytest.fail("no Chromium on this machine, which is to have one")
     if CHROMIUM is None:
         pytest.skip("no Chromium on this machine")
     sync_api = pytest.importorskip("playwright.sync_api")

@@ -18,7 +18,7 @@ SAMPLES = 10_000_000
 SMALL = 8_000
 LARGEST = 1_500_000  # bytes of a page
 READY = 1.0  # until the page has loaded [s]
-PANELS = 7  # figures on the page of a small capture
+PANELS = 5  # figures on the page of a small capture
 RATIO = 1.6  # of the time that matplotlib takes for as many empty panels
 
 EMPTY_PANELS = f"""
@@ -74,7 +74,8 @@ def test_a_report_with_its_page_takes_about_as_long_as_empty_panels(tmp_path):
     target = tmp_path / "small.html"
     words = [sys.executable, "-m", "flicker", "measure", str(capture), "--dark-level", "0.01", "--html", str(target)]
     ours = shortest(words)
-    assert target.read_text(encoding="utf-8").count("<figure") == PANELS
+    drawn_by_the_page = 2  # of the camera bench: the frame and the curve, empty until a browser runs them
+    assert target.read_text(encoding="utf-8").count("<figure") == PANELS + drawn_by_the_page
     theirs = shortest([sys.executable, "-c", EMPTY_PANELS])
     print(f"\nreport with its page {ours:.2f} s, {PANELS} empty panels {theirs:.2f} s: {ours / theirs:.2f} times")
     assert ours <= RATIO * theirs
