@@ -27,7 +27,6 @@ from flicker.cli.output import (
     print_words,
     spare_the_captures,
     terminal_width,
-    with_progress,
     write_pieces,
 )
 from flicker.errors import ExitStatus, UnreadableFileError
@@ -130,13 +129,13 @@ def command(
     width = terminal_width()
     terms = Terms(task.limits, decision, command_line(), record)
     with _ends_in_order(), Answer(terms) as answer:
-        for result in _judged(steps, shown, workers, quiet):
+        for result in _judged(steps, shown, workers):
             if "error" in result and len(steps) == 1:
                 raise UnreadableFileError(result["error"])
             answer.add(result)
             for block in answer.verdicts_in_words(result, width) if in_full else ():
                 print_words(block + "\n", json_target)
-        before = [point for result in _judged(earlier, task, workers, quiet) for point in points_of(result)]
+        before = [point for result in _judged(earlier, task, workers) for point in points_of(result)]
         for block in answer.closing_words(before, width):
             print_words(block + "\n", json_target)
         write_pieces(answer.json_pieces(before), json_target)
@@ -152,12 +151,13 @@ def command(
     raise SystemExit(int(status))
 
 
-def _judged(steps: Sequence[Step], task: Task, workers: int, quiet: bool) -> Iterator[dict[str, Any]]:
+def _judged(steps: Sequence[Step], task: Task, workers: int) -> Iterator[dict[str, Any]]:
     """Judge captures with progress; those that cannot be read are named on standard error."""
     from flicker.sweep.batch import judge_captures
+    from flicker.workers import counted
 
     found = judge_captures(steps, task, workers=workers)
-    for _, result in zip(with_progress(steps, "capture", quiet=quiet), found, strict=False):
+    for _, result in zip(counted(steps, "capture", len(steps)), found, strict=False):
         if "error" in result and len(steps) > 1:
             complain(result["error"])
         yield result

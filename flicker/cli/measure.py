@@ -23,7 +23,6 @@ from flicker.cli.output import (
     print_words,
     spare_the_captures,
     terminal_width,
-    with_progress,
     write_json,
 )
 from flicker.errors import ExitStatus, UnreadableFileError
@@ -80,7 +79,7 @@ def command(
     from flicker.report.words import closing_words, same_light_words
     from flicker.reports import Report
     from flicker.sweep.manifest import Step, read_manifest
-    from flicker.workers import side_by_side
+    from flicker.workers import counted, side_by_side
 
     steps = (*(read_manifest(manifest) if manifest else ()), *(Step(capture) for capture in captures))
     if not steps:
@@ -104,7 +103,7 @@ def command(
     task = Task(given(**reading), measuring, width, colour, verbose, folder, camera_file, html_target is not None)
     results = []
     found = side_by_side(partial(measure_capture, task=task), list(zip(steps, names, strict=True)), workers)
-    for _, result in zip(with_progress(paths, "capture", quiet=quiet), found, strict=False):
+    for _, result in zip(counted(paths, "capture", len(paths)), found, strict=False):
         if result.error and len(steps) == 1:
             raise UnreadableFileError(result.error)
         if result.error:

@@ -6,7 +6,7 @@ import math
 import os
 import sys
 import time
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import Any, TextIO, TypeVar
@@ -114,19 +114,6 @@ def _is_terminal(stream: TextIO) -> bool:
         return stream.isatty()
     except ValueError:  # closed
         return False
-
-
-def with_progress(items: Sequence[Item], what: str, *, quiet: bool = False) -> Iterator[Item]:
-    """Go through items; on a terminal, standard error counts them in one line that is wiped at the end."""
-    if quiet or len(items) < 2 or not _is_terminal(sys.stderr):
-        yield from items
-        return
-    try:
-        for number, item in enumerate(items, 1):
-            click.echo(f"\r\x1b[K{what} {number} of {len(items)}", nl=False, err=True)
-            yield item
-    finally:
-        click.echo("\r\x1b[K", nl=False, err=True)
 
 
 class _Counter:

@@ -1,9 +1,25 @@
 """Long work says on a terminal how far it has come, and nowhere else."""
 
+import io
+import itertools
 import sys
+
+import pytest
 
 from flicker.cli import output
 from flicker.workers import counted, watched_by
+
+
+class Terminal(io.StringIO):
+    def isatty(self):
+        return True
+
+
+@pytest.fixture
+def slow(monkeypatch):
+    """Let a second pass whenever somebody looks at the clock."""
+    clock = itertools.count()
+    monkeypatch.setattr(output.time, "monotonic", lambda: float(next(clock)))
 
 
 def test_who_watches_is_told_each_item_and_the_end():
@@ -15,19 +31,21 @@ def test_who_watches_is_told_each_item_and_the_end():
     assert len(told) == 3, "nobody watches any more"
 
 
-def test_only_a_terminal_is_told_and_only_of_long_work(monkeypatch, capsys):
-    clock = iter(range(100))
-    monkeypatch.setattr(output.time, "monotonic", lambda: float(next(clock)))
+@pytest.mark.parametrize("quiet", [False, True])
+def test_progress_goes_to_a_terminal_and_leaves_nothing_there(monkeypatch, capsys, slow, quiet):
+    terminal = Terminal()
+    monkeypatch.setattr(sys, "stderr", terminal)
+    with output.counting(quiet=quiet):
+        assert list(counted("abcd", "capture", 4)) == ["a", "b", "c", "d"]
+    assert ("capture 3 of 4" in terminal.getvalue()) is not quiet
+    assert "capture 1" not in terminal.getvalue(), "work of a second says nothing"
+    assert quiet or terminal.getvalue().endswith("\r\x1b[K")
+    assert capsys.readouterr().out == ""
+
+
+def test_progress_is_silent_away_from_a_terminal(monkeypatch, slow):
+    file = io.StringIO()
+    monkeypatch.setattr(sys, "stderr", file)
     with output.counting(quiet=False):
         list(counted(range(5), "frame"))
-    assert capsys.readouterr().err == ""
-    monkeypatch.setattr(output, "_is_terminal", lambda stream: stream is sys.stderr)
-    with output.counting(quiet=True):
-        list(counted(range(5), "frame"))
-    assert capsys.readouterr().err == ""
-    with output.counting(quiet=False):
-        list(counted(range(5), "frame", 5))
-    said = capsys.readouterr().err
-    assert "frame 4 of 5" in said
-    assert said.endswith("\r"), "the line is wiped"
-    assert "frame 1" not in said, "work of a second says nothing"
+    assert file.getvalue() == ""

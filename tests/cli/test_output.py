@@ -86,23 +86,6 @@ def test_the_width_is_that_of_the_terminal_and_100_in_a_file(monkeypatch):
     assert output.terminal_width(Terminal()) == 40
 
 
-@pytest.mark.parametrize("quiet", [False, True])
-def test_progress_goes_to_a_terminal_and_leaves_nothing_there(monkeypatch, capsys, quiet):
-    terminal = Terminal()
-    monkeypatch.setattr(sys, "stderr", terminal)
-    assert list(output.with_progress("abc", "capture", quiet=quiet)) == ["a", "b", "c"]
-    assert ("capture 2 of 3" in terminal.getvalue()) is not quiet
-    assert quiet or terminal.getvalue().endswith("\r\x1b[K")
-    assert capsys.readouterr().out == ""
-
-
-def test_progress_is_silent_away_from_a_terminal(monkeypatch):
-    file = io.StringIO()
-    monkeypatch.setattr(sys, "stderr", file)
-    assert list(output.with_progress([1, 2], "capture")) == [1, 2]
-    assert file.getvalue() == ""
-
-
 def test_no_answer_is_written_over_a_capture(tmp_path, monkeypatch):
     monkeypatch.chdir(tmp_path)
     (tmp_path / "dock.csv").write_text("1\n")
