@@ -21,6 +21,7 @@ _NULL = 5e-4  # of a cycle: how near to whole cycles an exposure counts as a nul
 _UNCRITICAL = 20.0  # how far off an exposure or a frequency never is [%]
 _SHOWN = 0.05  # frame flicker below which it is not worth a word [%]
 _OPPOSITE = {"down": "up", "up": "down", "left": "right", "right": "left"}
+_SAME = 1e-6  # by so little exposures of one setting differ
 
 
 def percent(value: float) -> str:
@@ -321,7 +322,9 @@ def _what_would_help(frequency: float, answer: Answer) -> Iterable[str]:
     elif all(one.contrast_percent > 100 * limit for one in advice):
         near = max(1, min(cycles, round(0.5 * frequency / camera.frame_rate))) if camera.frame_rate else cycles
         label = exposure_label(near / frequency, camera.frame_rate)
-        help_.append(f"a shutter that can be set freely: {label} lets in {near} whole cycles")
+        if not any(abs(one.exposure_s * frequency / near - 1) < _SAME for one in advice):  # else it was tried
+            cycle = "whole cycle" if near == 1 else "whole cycles"
+            help_.append(f"a shutter that can be set freely: {label} lets in {near} {cycle}")
     elif tolerance:
         help_.append(f"a steadier light: without the tolerance of {quantity(100 * tolerance, '%', 2)} some are clean")
     needed = math.ceil((1 / limit - 1) / 2 - 1e-9) / advice[0].exposure_s

@@ -1,13 +1,19 @@
 import re
+from dataclasses import replace
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 import flicker
+from flicker.camera import Camera
+from flicker.camera.answer import predict_all
 from flicker.conditioning import condition
+from flicker.light import ChannelLight, Light
 from flicker.limits.region import REGIONS
 from flicker.plots.style import REGION_MARKERS
 from flicker.report.answer import REGION_MARKS, REGION_WORDS
+from flicker.report.bands import bands_words
 from flicker.report.words import report_words
 from flicker.trace import Capture
 from flicker.waveforms import pwm, rectified_sine, sampled, sine
@@ -170,3 +176,16 @@ def test_notes_are_sorted_by_weight():
 def test_every_region_has_its_mark_and_its_words():
     assert set(REGION_MARKS) == set(REGION_WORDS) == set(REGION_MARKERS) == set(REGIONS)
     assert len(set(REGION_MARKS.values())) == len(REGIONS)
+
+
+def test_an_exposure_that_was_tried_is_not_offered_as_a_cure():
+    """Two lights at once: a whole cycle of the slow one still bands by the fast one."""
+    frequencies = np.array([31.0, 1203.7])
+    light = Light((ChannelLight("light", frequencies, np.array([0.5, 0.4 + 0j]), (31.0, 1203.7)),))
+    camera = Camera(lines=1080, line_time=15e-6, frame_rate=25.0)
+    words = " ".join(bands_words(predict_all(light, camera, exposures=[0.01], limit=0.001)).split())
+    assert "Nothing that can be dialled in keeps the bands" in words
+    assert "a shutter that can be set freely" not in words
+    offered = replace(camera, exposures=(0.01, 0.02))
+    words = " ".join(bands_words(predict_all(light, offered, limit=0.001)).split())
+    assert "a shutter that can be set freely: 1/31 s, 290.32° lets in 1 whole cycle;" in words
