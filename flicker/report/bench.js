@@ -160,9 +160,13 @@ function deepest(tables, here, lags) {
 function contrastOf(tables, frequencies, delays, most) {
   if (!tables.length || !delays.length) return 0;
   const rows = new Map(); // bins of the lags -> a few of the rows that share them
+  const ideal = tables.map(fromDarkestToBrightest);
+  let nearest = null, least = Infinity; // the row that comes nearest to that way of every light
   for (const delay of delays) {
     for (const sign of [1, -1]) {
       const lags = frequencies.map((frequency) => whole(sign * delay * frequency));
+      const missed = lags.reduce((sum, lag, number) => sum + Math.abs(folded(lag - ideal[number])), 0);
+      if (missed < least) [least, nearest] = [missed, lags];
       const key = lags.map((lag) => Math.round(lag * COARSE) % COARSE).join();
       if (!rows.has(key)) rows.set(key, []);
       const members = rows.get(key);
@@ -188,9 +192,19 @@ function contrastOf(tables, frequencies, delays, most) {
     if (better <= found + 1e-12) break;
     found = better;
   }
-  const rowsTried = order.slice(0, 12).flatMap(([, , key]) => rows.get(key)).slice(0, most);
+  const rowsTried = [nearest, ...order.slice(0, 12).flatMap(([, , key]) => rows.get(key)).slice(0, most)];
   const here = tables.map((table) => table.filter((_, place) => place % (table.length / FINE) === 0));
   return Math.max(...rowsTried.map((lags) => deepest(tables, here, lags)));
+}
+
+// How far in phase a light's brightest exposure lies behind its darkest one. [cycles]
+function fromDarkestToBrightest(table) {
+  let darkest = 0, brightest = 0;
+  table.forEach((value, place) => {
+    if (value < table[darkest]) darkest = place;
+    if (value > table[brightest]) brightest = place;
+  });
+  return (brightest - darkest) / table.length;
 }
 
 function bestOfEachLag(table, found) {

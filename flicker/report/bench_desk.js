@@ -232,6 +232,7 @@ function setUp(bench) {
     for (const exposure of exposuresOf(light, camera)) {
       points.push([exposure, depth(light, camera, exposure)]);
       if (performance.now() - since < 15) continue;
+      find(".settings").textContent = `Looking through all exposures: ${fraction(exposure)} s.`;
       await new Promise((done) => setTimeout(done));
       if (waiting !== mine) return;
       since = performance.now();

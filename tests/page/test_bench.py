@@ -14,7 +14,7 @@ from flicker.cli import program
 from flicker.light import ChannelLight, Light, pwm_light
 from flicker.report.pages import bands_page
 
-SETTINGS = 20  # of every kind of light, 80 in all
+SETTINGS = 20  # of every kind of light, 100 in all
 
 
 def lines_light(rng):
@@ -33,6 +33,15 @@ def light_of(kind, rng):
         return pwm_light(frequency, duty, rng.choice([0.0, rng.uniform(0, 0.8)]))
     if kind == "slow red":
         return pwm_light(frequency, duty, 0.0, (rng.uniform(1e-3, 9e-3), 5e-5, 2e-5))
+    if kind == "bursts":
+        gate = rng.uniform(8, 60)
+        number = np.arange(1.0, 41.0)
+        pauses = 2 * 0.6 * np.sinc(number * 0.6) / 0.6 * np.exp(-2j * np.pi * number * rng.uniform())
+        fast = rng.uniform(700, 3000)
+        carriers = np.array([fast, fast + gate, fast - gate])
+        sizes = np.array([0.5, 0.3, 0.3]) * np.exp(2j * np.pi * rng.uniform(size=3))
+        frequencies = np.concatenate([number * gate, carriers])
+        return Light((ChannelLight("light", frequencies, np.concatenate([pauses, sizes]), (gate, *carriers)),))
     if kind == "nearly nothing":
         return pwm_light(frequency, 0.5, 0.97)
     return lines_light(rng)
@@ -51,7 +60,7 @@ def predicted(light, camera, exposure):
     return predict_bands(light, camera, exposure).to_dict()
 
 
-@pytest.mark.parametrize("kind", ["rectangle", "slow red", "nearly nothing", "two lights"])
+@pytest.mark.parametrize("kind", ["rectangle", "slow red", "nearly nothing", "two lights", "bursts"])
 def test_the_figures_are_those_of_the_prediction(open_file, tmp_path, kind):
     """`flicker bands --json` writes what `predict_bands` gives, so the page is held against that."""
     rng = np.random.default_rng([7, len(kind)])
